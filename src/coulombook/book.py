@@ -1,0 +1,159 @@
+"""The book: everything a tally produced, as plain tables that every output medium shares.
+
+A table is columns of Python or numpy values under heads `quantity / unit`; media (CSV, terminal, frames) only
+show it. pandas is imported when a frame is first asked for.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+from coulombook.findings import Finding
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+Cell = str | float | int | None
+
+# The heads of every table, in the order of the files: the contract with readers of the results.
+LEDGER = (
+    "run", "catalyst", "electrode", "level", "E vs RHE / V", "product", "group", "phase", "electrons",
+    "amount / umol", "FE / %", "u(FE) / %", "j / mA cm^-2", "u(j) / mA cm^-2", "j real / mA cm^-2",
+    "u(j real) / mA cm^-2", "FE limit / %", "status",
+)  # fmt: skip
+SUMMARY = (
+    "run", "catalyst", "electrode", "level", "E vs RHE / V", "u(E vs RHE) / V", "charge / C", "j / mA cm^-2",
+    "total FE / %", "u(total FE) / %", "H2 FE / %", "C1 FE / %", "C2+ FE / %", "u(C2+ FE) / %", "C2+/C1",
+    "u(C2+/C1)", "C2+/C1 molar", "roughness factor", "u(roughness factor)", "CO2 conversion / %", "closure",
+)  # fmt: skip
+INJECTIONS = (
+    "run", "injection", "time / s", "product", "mole fraction / ppm", "outlet flow / umol/s", "current / mA",
+    "FE / %", "u(FE) / %", "used",
+)  # fmt: skip
+SERIES = (
+    "catalyst", "level", "E vs RHE / V", "product", "runs", "FE / %", "s(FE) / %", "u(FE) / %", "j / mA cm^-2",
+    "u(j) / mA cm^-2", "j real / mA cm^-2", "u(j real) / mA cm^-2",
+)  # fmt: skip
+SURFACE = (
+    "electrode", "capacitance / mF", "u(capacitance) / mF", "roughness factor", "u(roughness factor)",
+    "linearity", "exponent",
+)  # fmt: skip
+CALIBRATIONS = (
+    "calibration", "channel", "analyte", "form", "weights", "points", "a0", "u(a0)", "a1", "u(a1)", "a2", "u(a2)",
+    "residual sd", "lack of fit p", "detection limit / ppm", "quantification limit / ppm", "lowest / ppm",
+    "highest / ppm",
+)  # fmt: skip
+FINDINGS = ("severity", "kind", "where", "text", "mend")
+
+TABLES: Mapping[str, tuple[str, ...]] = {
+    "ledger": LEDGER,
+    "summary": SUMMARY,
+    "injections": INJECTIONS,
+    "series": SERIES,
+    "surface": SURFACE,
+    "calibrations": CALIBRATIONS,
+    "findings": FINDINGS,
+}
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Table:
+    """Rows under heads; an absent value is None (a NaN is turned into None when a row is added)."""
+
+    name: str
+    heads: tuple[str, ...]
+    rows: tuple[tuple[Cell, ...], ...]
+
+    @classmethod
+    def of(cls, name: str, rows: Sequence[Mapping[str, Cell]]) -> Table:
+        """Table ``name`` of `TABLES` from rows keyed by head; a head that a row lacks is absent there.
+
+        Raises KeyError when a row holds a head the table does not have.
+        """
+        heads = TABLES[name]
+        known = set(heads)
+        for row in rows:
+            if not row.keys() <= known:
+                raise KeyError(f"table {name} has no head {sorted(row.keys() - known)}")
+        return cls(name, heads, tuple(tuple(_absent(row.get(head)) for head in heads) for row in rows))
+
+    def __len__(self) -> int:
+        return len(self.rows)
+
+    def column(self, head: str) -> list[Cell]:
+        """All cells under one head."""
+        place = self.heads.index(head)
+        return [row[place] for row in self.rows]
+
+    def records(self) -> Iterator[dict[str, Cell]]:
+        """Each row as a dict keyed by head."""
+        for row in self.rows:
+            yield dict(zip(self.heads, row, strict=True))
+
+    def frame(self) -> pd.DataFrame:
+        """The table as a pandas frame; absent numbers are NaN."""
+        import pandas as pd
+
+        return pd.DataFrame.from_records(list(self.rows), columns=list(self.heads))
+
+
+def _absent(cell: Cell) -> Cell:
+    return None if isinstance(cell, float) and math.isnan(cell) else cell
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class InputFile:
+    """A file that was read, with its SHA-256 as it was then."""
+
+    path: str  # relative to the day folder, or calibrations/<name>/... for a calibration
+    sha256: str
+    size_byte: int
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Book:
+    """Everything a tally produced.
+
+    The attributes `ledger`, `summary`, `injections`, `series`, `surface` and `calibrations` are pandas frames;
+    `tables` holds the same as plain `Table` records.
+    """
+
+    day: str
+    title: str
+    tables: Mapping[str, Table]
+    findings: tuple[Finding, ...]
+    inputs: tuple[InputFile, ...]
+    options: Mapping[str, str]
+
+    @property
+    def ledger(self) -> pd.DataFrame:
+        """Run x product: amount, FE, partial current density."""
+        return self.tables["ledger"].frame()
+
+    @property
+    def summary(self) -> pd.DataFrame:
+        """One row per run: charge, totals, C2+/C1, closure."""
+        return self.tables["summary"].frame()
+
+    @property
+    def injections(self) -> pd.DataFrame:
+        """One row per gas injection and product."""
+        return self.tables["injections"].frame()
+
+    @property
+    def series(self) -> pd.DataFrame:
+        """Catalyst x level x product, replicates pooled."""
+        return self.tables["series"].frame()
+
+    @property
+    def surface(self) -> pd.DataFrame:
+        """One row per electrode with scans."""
+        return self.tables["surface"].frame()
+
+    @property
+    def calibrations(self) -> pd.DataFrame:
+        """One row per curve used."""
+        return self.tables["calibrations"].frame()
