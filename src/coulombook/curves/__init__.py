@@ -1,0 +1,1 @@
+"""Calibration curves: fit, inverse, drift."""
