@@ -2,7 +2,10 @@
 
 from __future__ import annotations
 
+import io
 import random
+import re
+import zipfile
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from datetime import datetime
@@ -258,8 +261,25 @@ def _write_workbook(path: Path, grids: Mapping[str, Sequence[Sequence[Any]]]) ->
         sheet = book.create_sheet(name)
         for row in grid:
             sheet.append([None if cell == "" else cell for cell in row])
+    buffer = io.BytesIO()
+    book.save(buffer)
     path.parent.mkdir(parents=True, exist_ok=True)
-    book.save(path)
+    path.write_bytes(_without_clock(buffer.getvalue()))
+
+
+def _without_clock(workbook: bytes) -> bytes:
+    """The same workbook with one fixed moment wherever the time of writing stood."""
+    buffer = io.BytesIO()
+    with (
+        zipfile.ZipFile(io.BytesIO(workbook)) as old,
+        zipfile.ZipFile(buffer, "w", zipfile.ZIP_DEFLATED) as new,
+    ):
+        for name in old.namelist():
+            content = old.read(name)
+            if name == "docProps/core.xml":
+                content = re.sub(rb"\d{4}-\d\d-\d\dT\d\d:\d\d:\d\dZ", b"2043-01-01T00:00:00Z", content)
+            new.writestr(zipfile.ZipInfo(name, (2043, 1, 1, 0, 0, 0)), content, zipfile.ZIP_DEFLATED)
+    return buffer.getvalue()
 
 
 def settings_text(day: DayTruth, calibrations: Sequence[str], style: Style) -> str:
@@ -304,7 +324,8 @@ def settings_text(day: DayTruth, calibrations: Sequence[str], style: Style) -> s
         else:
             assert error.absolute is not None
             scale = 1.0 if error.unit in (None, "K") else UNITS[error.unit]
-            lines.append(f'standard = "{error.absolute / scale:.12g} {error.unit or ""}"'.replace(' "', '"'))
+            written = f"{error.absolute / scale:.12g} {error.unit or ''}".strip()
+            lines.append(f'standard = "{written}"')
         lines.append(f'shared = "{error.shared}"')
     if style.settings:
         lines += ["", *style.settings.splitlines()]

@@ -63,7 +63,7 @@ def _run_row(day: DayTruth, hold: Hold, draws: Draws) -> Row:
         "start": hold.start_second,
         "stop": hold.stop_second,
         "electrode area": entered("electrode area", hold.electrode_area_m2),
-        "pH": entered("ph", hold.pH),
+        "pH": entered("pH", hold.pH),
         "temperature": entered("temperature", hold.temperature_kelvin),
         "pressure": entered("pressure", hold.pressure_pascal),
         "resistance": entered("resistance", hold.resistance_ohm),
@@ -72,7 +72,7 @@ def _run_row(day: DayTruth, hold: Hold, draws: Draws) -> Row:
         "outlet flow": entered("outlet flow", _metered_outlet(day, hold)),
         "tracer flow": entered("tracer flow", hold.tracer_mol_per_s),
         "headspace": entered("headspace", hold.headspace_m3),
-        "carbonate uptake": entered("carbonate uptake", hold.carbonate_mol_per_s),
+        "carbonate uptake": entered("carbonate uptake", hold.carbonate_mol_per_s or None),
         "note": hold.note,
     }
 
