@@ -85,7 +85,7 @@ def test_example_efficiencies_lie_about_the_truth_as_their_uncertainty_says(
     ]
     assert len(deviations) > 70
     inside = sum(abs(one) < 2 for one in deviations) / len(deviations)
-    # 95 % of a normal variable; the deviations of a day share errors of flow and standard, hence the wide band
+    # 95 % of a normal variable; deviations of a day share errors of flow and standard, hence the band
     assert inside > 0.85
     assert max(abs(one) for one in deviations) < 5
 
