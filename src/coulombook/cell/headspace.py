@@ -24,6 +24,7 @@ each further tau costs a few hundred blocks instead of the trace.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 
@@ -42,8 +43,8 @@ _BLOCK = 0.1  # length of a block, and of the longest segment gathered in one, o
 _POWERS = 8  # of 1/tau kept: (0.05)^8 / 8! = 1e-15
 _SINH = (1.0, 1.0 / 24.0, 1.0 / 1920.0, 1.0 / 322560.0)  # sinh(r/2)/(r/2) in powers of r^2
 _HALF_RANGE = float(np.log(1.5))  # of ln tau, either side of the centre
-_NODES = (10, 16, 24, 40)
-_TOLERANCE = 1.0e-10  # of the last Chebyshev coefficients, relative to the first
+_NODES = (12, 20)  # the series falls by 7 or more a term, for tau acts through exp(-age/tau) alone
+_TOLERANCE = 1.0e-9  # of the last Chebyshev coefficients, relative to the first
 
 
 def filled_share(elapsed_second: Number, tau_second: Number) -> Number:
@@ -88,12 +89,13 @@ class _Stretch:
             square = np.square(step / shortest_second)
             widest = float(square.max())
             for order, weight in enumerate(_SINH):
-                term = rise * weight if order else rise
+                term = rise.copy()
                 # (order, power) gives the power 2 order + power of 1/tau
                 for power in range(_POWERS - 2 * order):
                     if power:
-                        term = term * (forward / power)
-                    sums[2 * order + power] += np.add.reduceat(term, starts)
+                        term *= forward
+                    share = weight / math.factorial(power)
+                    sums[2 * order + power] += share * np.add.reduceat(term, starts)
                 if order + 1 < len(_SINH) and widest ** (order + 1) * _SINH[order + 1] < 1e-17:
                     break
                 rise = rise * square

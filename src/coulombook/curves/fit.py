@@ -1,0 +1,243 @@
+"""Least-squares calibration curves.
+
+The design matrix is scaled (and centred where the form has an intercept), factorised by Householder QR and
+refined with residuals summed exactly, so that badly scaled standards (mole fractions of 1e-6 against peak
+areas of 1e6) keep their digits. Normal equations are never formed.
+
+Sources: Golub & Van Loan, Matrix Computations, 4th ed. (2013), sect. 5.3; Bjorck, BIT 7 (1967) 257 (iterative
+refinement of least squares); Dekker, Numer. Math. 18 (1971) 224 (exact products).
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from coulombook.curves.weights import point_weights
+
+FloatArray = NDArray[np.float64]
+
+# form -> powers of x that are free; the forms a curve may have
+FORMS: dict[str, tuple[int, ...]] = {"line": (0, 1), "line through zero": (1,), "quadratic": (0, 1, 2)}
+
+_REFINEMENTS = 3
+_ROUNDING = float(np.finfo(float).eps)
+_SPLITTER = 2.0**27 + 1.0
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class PolynomialFit:
+    """A weighted least-squares polynomial: the sum over k of coefficients[k] x^powers[k]."""
+
+    powers: tuple[int, ...]
+    coefficients: FloatArray  # (n_coefficients,)
+    factor: FloatArray  # (n_coefficients, n_coefficients) L with covariance = L L^T
+    degrees_of_freedom: int
+    residual_sd: float  # of a point of mean weight; 0 when no degree of freedom is left
+    r_squared: float  # about the weighted mean, or about zero for a form without intercept
+
+    @property
+    def covariance(self) -> FloatArray:
+        """Covariance (n_coefficients, n_coefficients) of the coefficients."""
+        result: FloatArray = self.factor @ self.factor.T
+        return result
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Curve:
+    """One fitted calibration curve, response = a0 + a1 x + a2 x^2.
+
+    ``coefficients`` (3,) holds a0, a1, a2, zero where the form has none; ``factor`` (3, n_free) is L with
+    covariance = L L^T, well conditioned in the scaled basis of the fit, so that draws and propagation need
+    no further factorisation. With no degree of freedom left nothing is known of the scatter:
+    ``residual_sd`` and ``covariance`` are then zero, and the caller should say so.
+    """
+
+    form: str
+    weights: str
+    points: int
+    lowest: float
+    highest: float
+    free: tuple[bool, bool, bool]
+    coefficients: FloatArray  # (3,)
+    covariance: FloatArray  # (3, 3)
+    factor: FloatArray  # (3, n_free)
+    degrees_of_freedom: int
+    residual_sd: float  # of a point of mean weight, in the unit of the response
+    r_squared: float
+
+
+def _exact_product(a: FloatArray, b: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """a b as the sum of two doubles, without error (Dekker)."""
+    product = a * b
+    a_high = _SPLITTER * a - (_SPLITTER * a - a)
+    b_high = _SPLITTER * b - (_SPLITTER * b - b)
+    a_low, b_low = a - a_high, b - b_high
+    return product, ((a_high * b_high - product) + a_high * b_low + a_low * b_high) + a_low * b_low
+
+
+def _exact_dots(matrix: FloatArray, vector: FloatArray, *more: FloatArray) -> FloatArray:
+    """Rows of ``matrix`` times ``vector``, plus the vectors of ``more``, rounded once."""
+    product, error = _exact_product(matrix, np.broadcast_to(vector, matrix.shape))
+    terms = np.column_stack((product, error, *more))
+    return np.array([math.fsum(row) for row in terms.tolist()])
+
+
+def _to_plain(powers: tuple[int, ...], centre: float, scale: float) -> FloatArray:
+    """Matrix that turns coefficients in ((x - centre)/scale)^k into coefficients in x^k."""
+    size = len(powers)
+    matrix = np.zeros((size, size))
+    for column, power in enumerate(powers):
+        if centre == 0.0:
+            matrix[column, column] = scale**-power
+            continue
+        for row in range(column + 1):
+            matrix[row, column] = math.comb(power, row) * (-centre) ** (power - row) * scale**-power
+    return matrix
+
+
+def fit_polynomial(
+    x: ArrayLike, y: ArrayLike, powers: Sequence[int], weights: ArrayLike | None = None
+) -> PolynomialFit:
+    """Weighted least-squares polynomial with chosen powers.
+
+    Parameters
+    ----------
+    x, y : (n_points,) array_like
+        Points.
+    powers : sequence of int
+        Ascending powers of x; (0, 1) is a line, (1,) a line through zero.
+    weights : (n_points,) array_like, optional
+        Weights, proportional to 1/variance of each y; equal by default. They are scaled to a mean of 1.
+
+    Raises
+    ------
+    ValueError
+        Fewer points than coefficients, fewer different x than coefficients, a value that is not finite, or
+        a weight that is not above zero.
+
+    Examples
+    --------
+    >>> fit_polynomial([0.0, 1.0, 2.0, 3.0], [1.0, 3.0, 5.0, 7.0], (0, 1)).coefficients.round(12)
+    array([1., 2.])
+    """
+    x, y = np.asarray(x, dtype=float), np.asarray(y, dtype=float)
+    weight = np.ones_like(x) if weights is None else np.asarray(weights, dtype=float)
+    powers = tuple(powers)
+    points, size = x.size, len(powers)
+    if not (np.isfinite(x).all() and np.isfinite(y).all()):
+        raise ValueError("a point of the curve is not a finite number")
+    if not (weight > 0.0).all():
+        raise ValueError("every weight must be above zero")
+    if points < size:
+        raise ValueError(f"{points} point(s) cannot fix {size} coefficients")
+    different = np.unique(x[x != 0.0] if powers[0] > 0 else x).size
+    if different < size:
+        raise ValueError(f"{size} coefficient(s) need as many different x; there are {different}")
+
+    weight = weight / weight.mean()
+    root = np.sqrt(weight)
+    # a shift of x mixes all lower powers, so only a form that has them all may be centred
+    centred = powers == tuple(range(size)) and size > 1
+    centre = 0.5 * float(x.min() + x.max()) if centred else 0.0
+    scale = float(np.abs(x - centre).max())
+    scaled = root[:, None] * ((x - centre) / scale)[:, None] ** np.array(powers)
+    q, r = np.linalg.qr(scaled)
+    plain = _to_plain(powers, centre, scale)
+
+    design = root[:, None] * x[:, None] ** np.array(powers)
+    target = root * y
+    coefficients, residual = np.zeros(size), np.zeros(points)
+    # the augmented system  residual + design b = target,  design^T residual = 0
+    for _ in range(_REFINEMENTS + 1):
+        miss = _exact_dots(design, -coefficients, target, -residual)
+        slant = _exact_dots(design.T, -residual)
+        tilt = np.linalg.solve(r.T, plain.T @ slant)
+        along = q.T @ miss - tilt
+        step = plain @ np.linalg.solve(r, along)
+        coefficients = coefficients + step
+        residual = residual + miss - q @ along
+        if (np.abs(step) <= _ROUNDING * np.abs(coefficients)).all():
+            break
+
+    freedom = points - size
+    square = math.fsum(np.square(residual).tolist())
+    sd = math.sqrt(square / freedom) if freedom else 0.0
+    middle = float(weight @ y) / points if powers[0] == 0 else 0.0
+    total = float(weight @ np.square(y - middle))
+    return PolynomialFit(
+        powers=powers,
+        coefficients=coefficients,
+        factor=sd * (plain @ np.linalg.inv(r)),
+        degrees_of_freedom=freedom,
+        residual_sd=sd,
+        r_squared=1.0 - square / total if total > 0.0 else math.nan,
+    )
+
+
+def fit_curve(x: ArrayLike, y: ArrayLike, form: str = "line", weights: str = "equal") -> Curve:
+    """Calibration curve through standards.
+
+    Parameters
+    ----------
+    x : (n_points,) array_like
+        Standards: mole fractions, or amount ratios. [1]
+    y : (n_points,) array_like
+        Responses: peak areas, or integral ratios. [raw detector units]
+    form : str
+        "line", "line through zero" or "quadratic" (with intercept).
+    weights : str
+        "equal", "1/x", "1/x^2" or "replicates"; see `coulombook.curves.weights.point_weights`.
+
+    Raises
+    ------
+    ValueError
+        An unknown form or weighting, too few points or different x for the form, standards the weighting
+        cannot be used on, or a curve that does not rise over its whole range, which no reading could be
+        inverted on.
+
+    Examples
+    --------
+    >>> curve = fit_curve([1e-4, 1e-3], [10.0, 100.0], "line through zero")
+    >>> curve.coefficients.round(6).tolist(), curve.degrees_of_freedom
+    ([0.0, 100000.0, 0.0], 1)
+    """
+    if form not in FORMS:
+        raise ValueError(f"form '{form}' is not available; choose from {', '.join(FORMS)}")
+    x, y = np.asarray(x, dtype=float), np.asarray(y, dtype=float)
+    powers = FORMS[form]
+    # before the weights are worked out, so that a curve without points is told so
+    if x.size < len(powers):
+        raise ValueError(f"{x.size} point(s) cannot fix the {len(powers)} coefficient(s) of a {form}")
+    fit = fit_polynomial(x, y, powers, point_weights(x, y, weights))
+    coefficients, factor = np.zeros(3), np.zeros((3, len(powers)))
+    coefficients[list(powers)] = fit.coefficients
+    factor[list(powers)] = fit.factor
+    ends = np.array([x.min(), x.max()])
+    slopes = coefficients[1] + 2.0 * coefficients[2] * ends
+    if not (slopes > 0.0).all():
+        raise ValueError(
+            f"the {form} does not rise over its whole range: its slope is {slopes[0]:g} at {ends[0]:g} and "
+            f"{slopes[1]:g} at {ends[1]:g}"
+        )
+    covariance = factor @ factor.T
+    for array in (coefficients, factor, covariance):
+        array.setflags(write=False)
+    return Curve(
+        form=form,
+        weights=weights,
+        points=x.size,
+        lowest=float(ends[0]),
+        highest=float(ends[1]),
+        free=(0 in powers, 1 in powers, 2 in powers),
+        coefficients=coefficients,
+        covariance=covariance,
+        factor=factor,
+        degrees_of_freedom=fit.degrees_of_freedom,
+        residual_sd=fit.residual_sd,
+        r_squared=fit.r_squared,
+    )
