@@ -245,7 +245,7 @@ def mixed_current_with_slope(
 
 
 class MixedCurrent:
-    """The current of each injection as a function of ln tau, near a centre.
+    """The current of each injection as a function of tau, near a centre.
 
     A Chebyshev series in ln tau over a factor 1.5 either side of the centre, so that draws of tau and
     derivatives cost a few operations and not a pass over the trace. Error below 1e-8 of the value (tested).
@@ -309,17 +309,20 @@ class MixedCurrent:
     def __len__(self) -> int:
         return len(self.centre_ln_tau)
 
-    def __call__(self, ln_tau: FloatArray) -> tuple[FloatArray, FloatArray]:
-        """Current and its derivative with respect to ln tau, at ln_tau of shape (..., n_injections). [A], [A]
+    def value_and_slope(self, tau_second: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Current of each injection, and its derivative with respect to tau. [A], [A/s]
 
-        Meaningless outside `covers`; the caller asks.
+        ``tau_second`` has the shape (..., n_injections). Meaningless where `covers` says no; the caller asks.
         """
-        x = (ln_tau - self.centre_ln_tau) / _HALF_RANGE
+        x = (np.log(tau_second) - self.centre_ln_tau) / _HALF_RANGE
         value = chebyshev.chebval(x, self.coefficients_ampere, tensor=False)
-        slope = chebyshev.chebval(x, self.slope_coefficients_ampere, tensor=False)
+        slope = chebyshev.chebval(x, self.slope_coefficients_ampere, tensor=False) / tau_second
         return np.asarray(value, dtype=float), np.asarray(slope, dtype=float)
 
-    def covers(self, ln_tau: FloatArray) -> NDArray[np.bool_]:
-        """Whether each ln tau lies inside the range of its series."""
-        result: NDArray[np.bool_] = np.abs(ln_tau - self.centre_ln_tau) <= _HALF_RANGE
+    def covers(self, tau_second: FloatArray) -> NDArray[np.bool_]:
+        """Whether each tau, of shape (..., n_injections), lies inside the range of its series."""
+        with np.errstate(invalid="ignore", divide="ignore"):
+            distance = np.abs(np.log(tau_second) - self.centre_ln_tau)
+        # a hair beyond the edge, so that the edge itself counts whatever the rounding of the logarithm
+        result: NDArray[np.bool_] = distance <= _HALF_RANGE * (1.0 + 1e-12)
         return result
