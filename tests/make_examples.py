@@ -181,8 +181,8 @@ def efficiencies(material: Material, level: int, generator: np.random.Generator)
         name: values[level] * (1 + 0.03 * float(generator.standard_normal()))
         for name, values in material.percent.items()
     }
-    # everything that is made, made-but-never-looked-for products aside
-    total = 0.975 + 0.008 * float(generator.standard_normal())
+    # the rest goes into products that nobody looks for
+    total = 0.992 + 0.006 * float(generator.standard_normal())
     scale = total / sum(raw.values())
     return {name: round(value * scale, 5) for name, value in raw.items()}
 
