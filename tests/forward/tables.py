@@ -108,7 +108,7 @@ def _gas_rows(day: DayTruth, hold: Hold, draws: Draws) -> Table:
                 rows.append(
                     {
                         "run": hold.name,
-                        "injection": str(number + 1),
+                        "injection": number + 1,
                         "time": reading.time_second,
                         "channel": key[0],
                         "analyte": analyte,
