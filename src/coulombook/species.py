@@ -1,20 +1,24 @@
-"""Species: composition, electrons, carbon group, aliases.
+"""Species: composition, electrons, carbon group, aliases, equilibrium potential.
 
-Electrons and groups are computed from the composition, never tabulated: n = 4x + y - 2z - q for C_x H_y O_z of
-charge q made from CO2 and water.
+Electrons and groups are computed from the composition, never tabulated: n = 4x + y - 2z - q for C_x H_y O_z
+of charge q made from CO2 and water.
 """
 
 from __future__ import annotations
 
+import math
 import re
 import tomllib
+import unicodedata
 from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
 from functools import cache
 from importlib.resources import files
+from typing import Any
 
-_ELEMENT = re.compile(r"([A-Z][a-z]?)(\d*)")
-_CHARGE = re.compile(r"(\d*)([+-])$|\^(\d*)([+-])$")
+_PIECE = re.compile(r"([A-Z][a-z]?)(\d*)")
+_CHARGE = re.compile(r"(?:\^(\d*)|)([+-])$")
+TABLE_TEMPERATURE_KELVIN = 298.15  # of every tabulated Gibbs energy
 
 
 @dataclass(frozen=True, slots=True)
@@ -30,7 +34,7 @@ class Composition:
     def electrons(self) -> int:
         """Electrons taken up per molecule, counted from CO2 and water. [1]
 
-        n = 4x + y - 2z - q, the oxidation-state balance of xCO2 + ... -> C_x H_y O_z^q.
+        n = 4x + y - 2z - q, from the balance of xCO2 + (n + q)H+ + n e- -> C_x H_y O_z^q + (2x - z)H2O.
 
         >>> Composition(2, 4, 0).electrons, Composition(1, 1, 2, -1).electrons
         (12, 2)
@@ -43,36 +47,53 @@ class Composition:
         return f"C{self.carbon}" if self.carbon else "H2"
 
 
+def _plain(text: str) -> str:
+    """Sub- and superscripts as ordinary digits and signs."""
+    return unicodedata.normalize("NFKC", text).replace("\N{MINUS SIGN}", "-")
+
+
 def parse_formula(formula: str) -> Composition:
-    """Composition of a formula such as ``C2H4``, ``HCOO-`` or ``CH3COO^-``.
+    """Composition of a condensed formula such as ``C2H4``, ``HCOO-``, ``CH3COO^-`` or ``C2O4^2-``.
 
-    Raises ValueError when it holds anything but carbon, hydrogen and oxygen.
+    A charge above one needs the caret, for the 4 of ``C2O4-`` belongs to the oxygen.
 
+    Raises
+    ------
+    ValueError
+        The formula is empty or holds anything but carbon, hydrogen, oxygen and a charge.
+
+    Examples
+    --------
     >>> parse_formula("CH3CH2OH")
     Composition(carbon=2, hydrogen=6, oxygen=1, charge=0)
     """
-    text = formula.strip().replace("\N{SUPERSCRIPT MINUS}", "-")
+    text = _plain(formula).strip()
     charge = 0
-    sign = re.search(r"\^?(\d*)([+-])$", text)
+    sign = _CHARGE.search(text)
     if sign:
         charge = int(sign[1] or 1) * (1 if sign[2] == "+" else -1)
-        # "C2H4-" style digits belong to the element, not to the charge, unless a caret parts them
-        if sign[1] and "^" not in sign[0]:
-            charge = 1 if sign[2] == "+" else -1
-            text = text[: sign.end(1)]
-        else:
-            text = text[: sign.start()]
+        text = text[: sign.start()]
     counts = {"C": 0, "H": 0, "O": 0}
     position = 0
     while position < len(text):
-        match = _ELEMENT.match(text, position)
-        if match is None or match[1] not in counts:
+        piece = _PIECE.match(text, position)
+        if piece is None or piece[1] not in counts:
             raise ValueError(f"formula '{formula}' must be made of C, H and O with an optional charge")
-        counts[match[1]] += int(match[2] or 1)
-        position = match.end()
+        counts[piece[1]] += int(piece[2] or 1)
+        position = piece.end()
     if not text:
         raise ValueError("the formula is empty")
     return Composition(counts["C"], counts["H"], counts["O"], charge)
+
+
+@dataclass(frozen=True, slots=True)
+class GibbsEnergy:
+    """Gibbs energy of formation at 298.15 K and 1 bar (aqueous: 1 mol/kg)."""
+
+    state: str  # "g", "l", "aq", or the acid of an anion: "acid, aq", "acid, l"
+    composition: Composition
+    joule_per_mol: float
+    source: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -88,6 +109,7 @@ class Species:
     aliases: tuple[str, ...] = ()
     carrier: bool = False
     composition: Composition | None = None  # None for a carrier that is not made of C, H, O
+    gibbs: tuple[GibbsEnergy, ...] = ()  # the usual state first
 
     @property
     def electrons(self) -> int:
@@ -108,17 +130,22 @@ class Species:
 
 
 def _key(text: str) -> str:
-    return " ".join(text.split()).casefold()
+    return " ".join(_plain(text).split()).casefold()
 
 
 class SpeciesTable:
     """Species found by name, formula or alias, without regard to case or runs of blanks."""
 
+    __slots__ = ("_by_key", "_by_name")
+
     def __init__(self, species: Iterable[Species]) -> None:
         self._by_name = {one.name: one for one in species}
         self._by_key: dict[str, Species] = {}
+        # every name before any formula or alias: an alias must not hide a species that is called so
         for one in self._by_name.values():
-            for text in (one.name, one.formula, *one.aliases):
+            self._by_key.setdefault(_key(one.name), one)
+        for one in self._by_name.values():
+            for text in (one.formula, *one.aliases):
                 self._by_key.setdefault(_key(text), one)
 
     def find(self, text: str) -> Species | None:
@@ -140,3 +167,121 @@ class SpeciesTable:
         fresh = list(more)
         taken = {one.name for one in fresh}
         return SpeciesTable([*fresh, *(one for one in self._by_name.values() if one.name not in taken)])
+
+
+def _species(row: dict[str, Any]) -> Species:
+    carrier = row.get("carrier", False)
+    try:
+        composition = parse_formula(row["formula"])
+    except ValueError:
+        # nitrogen, argon, helium; anything else of the table must be made of C, H and O
+        if not carrier:
+            raise
+        composition = None
+    return Species(
+        row["name"],
+        row["formula"],
+        row["phase"],
+        tuple(row["aliases"]),
+        carrier,
+        composition,
+        tuple(
+            GibbsEnergy(
+                one["state"],
+                parse_formula(one.get("formula", row["formula"])),
+                1000.0 * one["kilojoule_per_mol"],
+                one["source"],
+            )
+            for one in row.get("gibbs", ())
+        ),
+    )
+
+
+@cache
+def _data() -> dict[str, Any]:
+    return tomllib.loads(files("coulombook").joinpath("data", "species.toml").read_text(encoding="utf-8"))
+
+
+@cache
+def load_species() -> SpeciesTable:
+    """The shipped table of species.
+
+    >>> load_species().find("Ethene").name
+    'ethylene'
+    """
+    return SpeciesTable(_species(row) for row in _data()["species"])
+
+
+@cache
+def _internal_standards() -> dict[str, str]:
+    return {
+        _key(text): row["name"]
+        for row in _data()["internal_standard"]
+        for text in (row["name"], *row["aliases"])
+    }
+
+
+def internal_standard_name(text: str) -> str:
+    """Usual name of an internal standard, or ``text`` itself (blanks trimmed) where it is not known.
+
+    >>> internal_standard_name("dimethyl  sulfoxide"), internal_standard_name("my own salt")
+    ('DMSO', 'my own salt')
+    """
+    return _internal_standards().get(_key(text), " ".join(text.split()))
+
+
+def equilibrium_potential_she_volt(species: Species, pH: float = 0.0, state: str | None = None) -> float:
+    """Equilibrium potential of making a species from CO2 at 25 degC, against SHE. [V]
+
+    E = -(G_product + (2x - z) G_water - x G_CO2) / (n F) - (n + q)/n (R T ln 10 / F) pH, for
+    xCO2 + (n + q)H+ + n e- -> C_x H_y O_z^q + (2x - z)H2O, all at unit activity but the protons: CO2 gas at
+    1 bar, liquid water, the product in its state. Source: Bard & Faulkner, Electrochemical Methods, 2nd ed.
+    (2001), ch. 2.
+
+    Parameters
+    ----------
+    species : Species
+        A product with a Gibbs energy of formation.
+    pH : float
+        [1]
+    state : str, optional
+        State of the product, one of those in ``species.gibbs``; the first by default.
+
+    Raises
+    ------
+    ValueError
+        No Gibbs energy is known, for this state or at all, or the species is no product of CO2.
+    """
+    from scipy.constants import N_A, R, e
+
+    found = [one for one in species.gibbs if state is None or one.state == state]
+    if not found or species.carrier:
+        known = ", ".join(one.state for one in species.gibbs if not species.carrier) or "none"
+        raise ValueError(f"no Gibbs energy of {species.name} in state {state or 'any'}; known: {known}")
+    made = found[0].composition
+    table = load_species()
+    water, dioxide = table["water"].gibbs[0].joule_per_mol, table["carbon dioxide"].gibbs[0].joule_per_mol
+    reaction = found[0].joule_per_mol + (2 * made.carbon - made.oxygen) * water - made.carbon * dioxide
+    # every proton shifts G by RT ln a(H+)
+    reaction += (made.electrons + made.charge) * R * TABLE_TEMPERATURE_KELVIN * math.log(10.0) * pH
+    return float(-reaction / (made.electrons * N_A * e))
+
+
+def equilibrium_potential_rhe_volt(species: Species, pH: float = 0.0, state: str | None = None) -> float:
+    """Equilibrium potential of making a species from CO2 at 25 degC, against RHE at the same pH. [V]
+
+    Of a neutral product it does not depend on pH; an anion takes up a proton less than electrons for each
+    charge, so that formate moves by +29.6 mV and acetate by +7.4 mV a unit of pH. Parameters and errors as
+    in `equilibrium_potential_she_volt`.
+
+    >>> table = load_species()
+    >>> round(equilibrium_potential_rhe_volt(table["ethylene"]), 3)
+    0.079
+    >>> round(equilibrium_potential_rhe_volt(table["formate"], 6.8), 3)
+    -0.024
+    """
+    from scipy.constants import N_A, R, e
+
+    # the hydrogen electrode itself, -RT ln 10 pH / F against SHE
+    hydrogen = -R * TABLE_TEMPERATURE_KELVIN * math.log(10.0) * pH / (N_A * e)
+    return equilibrium_potential_she_volt(species, pH, state) - float(hydrogen)
