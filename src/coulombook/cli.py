@@ -1,0 +1,365 @@
+"""The command `coulombook`: its options, its exit status, and what goes to which stream.
+
+Exit status: 0 done; 1 the day's data have faults, or --strict was given and something may mislead (nothing is
+written in either case); 2 a wrong option, a missing file or a folder that cannot be written; 3 a fault of
+ours, shown with its traceback; 130 interrupted.
+
+The help answers at once: everything but argparse is imported by the command that needs it.
+"""
+
+from __future__ import annotations
+
+import argparse
+import os
+import sys
+
+TYPE_CHECKING = False  # importing `typing` for it would slow every start
+if TYPE_CHECKING:
+    from collections.abc import Iterable, Sequence
+    from pathlib import Path
+    from typing import Any, NoReturn, TextIO
+
+    from coulombook.findings import Finding
+
+DONE, FAULTS, WRONG_CALL, OUR_FAULT, INTERRUPTED = 0, 1, 2, 3, 130
+
+_OVERVIEW = """\
+Faradaic-efficiency ledgers for CO2 electrolysis: from a day's bench files to a
+charge balance with honest uncertainty."""
+
+_EXAMPLES = """\
+examples:
+  coulombook new "2043-05-18 mesh"      lay out an empty, commented day folder
+  coulombook check "2043-05-18 mesh"    see what would be computed, and what is missing
+  coulombook tally "2043-05-18 mesh"    compute the ledgers into its folder 'results'
+
+Each command has its own help: coulombook tally --help
+
+exit status: 0 done; 1 the day's data have faults (all are listed, nothing is
+written); 2 wrong option or missing file; 3 a fault of coulombook itself"""
+
+_TALLY = """\
+Read a day folder and write its Faradaic-efficiency ledgers, as CSV with a
+manifest. The results are written whole or not at all; the day's own files are
+never touched."""
+
+_TALLY_EXAMPLES = """\
+examples:
+  coulombook tally "2043-05-18 mesh"
+  coulombook tally "2043-05-18 mesh" --out ledgers --calibrations ~/gc --calibrations ~/nmr
+  coulombook tally "2043-05-18 mesh" --strict --quiet && echo fit to publish"""
+
+_CHECK = """\
+Read a day folder, say what would be computed and what is missing, and list
+every fault. Nothing is written."""
+
+_CHECK_EXAMPLES = """\
+example:
+  coulombook check "2043-05-18 mesh" """
+
+_NEW = """\
+Lay out an empty day folder: every table with its heads and units, and a
+commented day.toml. A folder that holds something already is left alone."""
+
+_NEW_EXAMPLES = """\
+examples:
+  coulombook new "2043-05-18 mesh"              tables as CSV files
+  coulombook new "2043-05-18 mesh" --workbook   tables as sheets of day.xlsx"""
+
+
+def main(arguments: Sequence[str] | None = None) -> int:
+    """Run the command and return its exit status; ``arguments`` default to those of the process."""
+    _tolerate_characters(sys.stdout, sys.stderr)
+    try:
+        try:
+            return _run(sys.argv[1:] if arguments is None else list(arguments))
+        finally:
+            _flush(sys.stdout)
+    except SystemExit as stop:  # argparse: the help, or a wrong call
+        return stop.code if isinstance(stop.code, int) else WRONG_CALL
+    except KeyboardInterrupt:
+        _say("coulombook: interrupted")
+        return INTERRUPTED
+    except Exception:
+        import traceback
+
+        import coulombook
+
+        _say(traceback.format_exc().rstrip())
+        _say(
+            f"coulombook {coulombook.__version__}: this is a fault of coulombook, not of your data. "
+            "Please report it with the lines above."
+        )
+        return OUR_FAULT
+
+
+def _run(arguments: Sequence[str]) -> int:
+    parser = _parser()
+    options, unknown = parser.parse_known_args(arguments)
+    if unknown:
+        parser.refuse(unknown, arguments)
+    if options.command is None:
+        parser.print_help(sys.stderr)
+        return WRONG_CALL
+    command = {"tally": _tally, "check": _check, "new": _new}[options.command]
+    return command(options)
+
+
+def _tally(options: argparse.Namespace) -> int:
+    from pathlib import Path
+
+    from coulombook.findings import DayFaults, Severity
+    from coulombook.report.progress import Progress
+    from coulombook.report.results import ResultsError, check_destination, write_results
+    from coulombook.tally import tally
+
+    day = Path(options.day)
+    out = Path(options.out) if options.out else day / "results"
+    calibrations = [Path(one) for one in options.calibrations]
+    if (problem := _missing(day, calibrations)) is not None:
+        return _refuse(problem)
+    try:
+        check_destination(out)  # before the work, not after it
+        with Progress(sys.stderr) as progress:
+            book = tally(day, calibrations=calibrations, progress=progress)
+        if options.strict and any(one.severity is Severity.WARN for one in book.findings):
+            _show_findings(book.findings, warnings_too=True)
+            _say("coulombook: nothing was written, for --strict was given and the findings above may mislead")
+            return FAULTS
+        written = write_results(book, out)
+    except DayFaults as faults:
+        _show_findings(faults.findings, warnings_too=not options.quiet)
+        count = len(faults.stops)
+        _say(
+            f"coulombook: the day's data have {count} {'fault' if count == 1 else 'faults'}; nothing was written"
+        )
+        return FAULTS
+    except ResultsError as error:
+        return _refuse(str(error))
+    except (FileNotFoundError, NotADirectoryError, PermissionError) as error:
+        return _refuse(_plain_words(error))
+    if not options.quiet:
+        from coulombook.report.terminal import console_for, show_book
+
+        with _quiet_pipe():
+            show_book(book, console_for(sys.stdout), written=written)
+    return DONE
+
+
+def _check(options: argparse.Namespace) -> int:
+    from pathlib import Path
+
+    from coulombook.findings import Severity
+    from coulombook.report.terminal import console_for, show_check
+    from coulombook.tally import check
+
+    day = Path(options.day)
+    calibrations = [Path(one) for one in options.calibrations]
+    if (problem := _missing(day, calibrations)) is not None:
+        return _refuse(problem)
+    try:
+        checked = check(day, calibrations=calibrations)
+    except (FileNotFoundError, NotADirectoryError, PermissionError) as error:
+        return _refuse(_plain_words(error))
+    with _quiet_pipe():
+        show_check(checked.lines, checked.findings, console_for(sys.stdout))
+    wrong = {Severity.STOP, Severity.WARN} if options.strict else {Severity.STOP}
+    return FAULTS if any(one.severity in wrong for one in checked.findings) else DONE
+
+
+def _new(options: argparse.Namespace) -> int:
+    from pathlib import Path
+
+    from coulombook.intake.new_day import write_new_day
+    from coulombook.report.text import visible
+
+    folder = Path(options.folder)
+    try:
+        write_new_day(folder, options.workbook)
+    except OSError as error:
+        return _refuse(_plain_words(error))
+    tables = "day.xlsx" if options.workbook else "the tables"
+    with _quiet_pipe():
+        print(
+            f"A new day lies in '{visible(options.folder)}'. Fill in day.toml and {tables}, put traces into 'traces',"
+        )
+        print(f"then see what is missing: coulombook check {_as_typed(visible(options.folder))}")
+    return DONE
+
+
+def _missing(day: Path, calibrations: Iterable[Path]) -> str | None:
+    for what, folder in (("day", day), *(("calibrations", one) for one in calibrations)):
+        if not folder.is_dir():
+            state = "is a file, not a folder" if folder.exists() else "does not exist"
+            return f"the folder of the {what}, '{folder}', {state}"
+    return None
+
+
+def _show_findings(findings: Iterable[Finding], *, warnings_too: bool = False) -> None:
+    from coulombook.findings import Severity
+    from coulombook.report.terminal import console_for, show_findings
+
+    with _quiet_pipe():
+        show_findings(
+            findings, console_for(sys.stderr), least=Severity.WARN if warnings_too else Severity.STOP
+        )
+
+
+def _refuse(problem: str) -> int:
+    from coulombook.report.text import visible
+
+    _say(f"coulombook: {visible(problem, 1000)}")
+    return WRONG_CALL
+
+
+def _plain_words(error: OSError) -> str:
+    return f"'{error.filename}': {error.strerror}" if error.filename and error.strerror else str(error)
+
+
+def _as_typed(text: str) -> str:
+    return text if text.replace("-", "").replace("_", "").isalnum() else f'"{text}"'
+
+
+def _say(text: str) -> None:
+    with _quiet_pipe():
+        print(text, file=sys.stderr)
+
+
+class _quiet_pipe:
+    """Let a reader that stops early (`| head`) stop us from printing, and from nothing else."""
+
+    def __enter__(self) -> None:
+        pass
+
+    def __exit__(self, kind: type[BaseException] | None, error: BaseException | None, _: object) -> bool:
+        return isinstance(error, BrokenPipeError)
+
+
+def _flush(stream: TextIO) -> None:
+    try:
+        stream.flush()
+    except BrokenPipeError:
+        # the interpreter flushes once more when it ends, and must find a pipe that takes it
+        os.dup2(os.open(os.devnull, os.O_WRONLY), stream.fileno())
+
+
+def _tolerate_characters(*streams: TextIO) -> None:
+    """Show a character that the terminal's encoding lacks by its number, instead of failing on it."""
+    for stream in streams:
+        if hasattr(stream, "reconfigure"):
+            stream.reconfigure(errors="backslashreplace")
+
+
+class _Help(argparse.RawDescriptionHelpFormatter):
+    """Texts as written; the width asked of the terminal itself, for importing shutil takes long."""
+
+    def __init__(self, prog: str, **settings: Any) -> None:
+        settings.setdefault("width", _width() - 2)
+        super().__init__(prog, **settings)
+
+
+def _width() -> int:
+    try:
+        return int(os.environ["COLUMNS"])
+    except (KeyError, ValueError):
+        pass
+    try:
+        return os.get_terminal_size(sys.stdout.fileno()).columns or 80
+    except (OSError, ValueError, AttributeError):
+        return 80
+
+
+class _Parser(argparse.ArgumentParser):
+    """A parser that names the nearest word for one it does not know."""
+
+    def refuse(self, unknown: Sequence[str], arguments: Sequence[str]) -> NoReturn:
+        """Refuse arguments that no command takes."""
+        named = next((one for one in arguments if one in _commands(self)), None)
+        parser = _commands(self)[named] if named else self
+        options = [option for action in parser._actions for option in action.option_strings]
+        parser.error(
+            f"unknown {'option' if unknown[0].startswith('-') else 'argument'} '{unknown[0]}'"
+            + _did_you_mean(unknown[0].partition("=")[0], options)
+        )
+
+    def _check_value(self, action: argparse.Action, value: Any) -> None:
+        if action.choices is not None and value not in action.choices:
+            known = [str(one) for one in action.choices]
+            raise argparse.ArgumentError(
+                None,
+                f"unknown command '{value}'"
+                + (_did_you_mean(str(value), known) or f"; known: {', '.join(known)}"),
+            )
+
+
+def _commands(parser: argparse.ArgumentParser) -> dict[str, argparse.ArgumentParser]:
+    for action in parser._actions:
+        if isinstance(action, argparse._SubParsersAction):
+            return dict(action.choices)
+    return {}
+
+
+def _did_you_mean(word: str, known: Sequence[str]) -> str:
+    import difflib
+
+    near = difflib.get_close_matches(word, known, 1, 0.6)
+    return f"; did you mean '{near[0]}'?" if near else ""
+
+
+class _Version(argparse.Action):
+    """Print the version and leave."""
+
+    def __call__(self, parser: argparse.ArgumentParser, *_: object) -> NoReturn:
+        import coulombook
+
+        print(f"coulombook {coulombook.__version__}")
+        parser.exit()
+
+
+def _parser() -> _Parser:
+    parser = _Parser(
+        prog="coulombook",
+        description=_OVERVIEW,
+        epilog=_EXAMPLES,
+        formatter_class=_Help,
+        allow_abbrev=False,
+    )
+    parser.add_argument("--version", action=_Version, nargs=0, help="print the version and leave")
+    commands = parser.add_subparsers(dest="command", title="commands", metavar="COMMAND")
+
+    def command(name: str, short: str, text: str, examples: str) -> argparse.ArgumentParser:
+        return commands.add_parser(
+            name, help=short, description=text, epilog=examples, formatter_class=_Help, allow_abbrev=False
+        )
+
+    tally = command("tally", "compute the ledgers of a day", _TALLY, _TALLY_EXAMPLES)
+    tally.add_argument("day", metavar="DAY", help="the day folder")
+    tally.add_argument("--out", metavar="DIR", help="where the results go (default: DAY/results)")
+    _reading_options(tally)
+    tally.add_argument(
+        "--strict",
+        action="store_true",
+        help="write nothing and end with status 1 if a number may mislead (a warning)",
+    )
+    tally.add_argument("--quiet", action="store_true", help="print nothing but what stopped the tally")
+
+    check = command("check", "say what would be computed and what is missing", _CHECK, _CHECK_EXAMPLES)
+    check.add_argument("day", metavar="DAY", help="the day folder")
+    _reading_options(check)
+    check.add_argument("--strict", action="store_true", help="end with status 1 for a warning as well")
+
+    new = command("new", "lay out an empty day folder", _NEW, _NEW_EXAMPLES)
+    new.add_argument("folder", metavar="FOLDER", help="the folder to make")
+    new.add_argument("--workbook", action="store_true", help="one workbook instead of CSV files")
+    return parser
+
+
+def _reading_options(parser: argparse.ArgumentParser) -> None:
+    parser.add_argument(
+        "--calibrations",
+        metavar="DIR",
+        action="append",
+        default=[],
+        help="a folder that holds calibrations, searched after DAY/calibrations and before ./calibrations; "
+        "may be given several times",
+    )

@@ -1,0 +1,76 @@
+"""The manifest: what went in, what made it, what came out.
+
+It lets a reader check years later that the files beside it are the ones that were written, and from which
+inputs. It is also how a results folder is known as ours before it is replaced.
+"""
+
+from __future__ import annotations
+
+import hashlib
+import json
+import sys
+from collections.abc import Mapping
+from dataclasses import dataclass
+from datetime import datetime
+from pathlib import Path
+
+import coulombook
+from coulombook.book import Book
+
+NAME = "manifest.json"
+_PROGRAM = "coulombook"
+_LIBRARIES = ("matplotlib", "numpy", "openpyxl", "pandas", "pint", "scipy", "xlsxwriter")
+
+
+@dataclass(frozen=True, slots=True)
+class Written:
+    """What a manifest says about the folder it lies in."""
+
+    files: frozenset[str]  # names of the files written beside it
+
+
+def manifest_text(book: Book, outputs: Mapping[str, bytes], created: datetime) -> str:
+    """The manifest of one results folder as JSON, keys sorted.
+
+    Parameters
+    ----------
+    book : Book
+        Its inputs (with SHA-256 and size) and options are listed.
+    outputs : mapping of file name to bytes
+        The other files of the folder, as written.
+    created : datetime
+        With time zone.
+    """
+    content = {
+        "program": _PROGRAM,
+        "version": coulombook.__version__,
+        "python": sys.version.split()[0],
+        # only what was loaded has had a part in the numbers
+        "libraries": {
+            name: str(getattr(sys.modules[name], "__version__", "unknown"))
+            for name in _LIBRARIES
+            if name in sys.modules
+        },
+        "created": created.isoformat(timespec="seconds"),
+        "day": book.day,
+        "title": book.title,
+        "options": dict(book.options),
+        "inputs": {one.path: {"sha256": one.sha256, "bytes": one.size_byte} for one in book.inputs},
+        "outputs": {
+            name: {"sha256": hashlib.sha256(content).hexdigest(), "bytes": len(content)}
+            for name, content in outputs.items()
+        },
+    }
+    return json.dumps(content, indent=2, sort_keys=True, ensure_ascii=True) + "\n"
+
+
+def read_manifest(folder: Path) -> Written | None:
+    """What the manifest in a folder says, or None where there is none of ours."""
+    try:
+        content = json.loads((folder / NAME).read_text(encoding="utf-8"))
+    except (OSError, ValueError, RecursionError):
+        return None
+    if not isinstance(content, dict) or content.get("program") != _PROGRAM:
+        return None
+    outputs = content.get("outputs")
+    return Written(frozenset(outputs) if isinstance(outputs, dict) else frozenset())
