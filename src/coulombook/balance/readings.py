@@ -242,7 +242,9 @@ class Day:
     scans: tuple[Scan, ...] = ()
     checks: tuple[Check, ...] = ()
     calibrations: tuple[Calibration, ...] = ()
-    carried: Mapping[str, Mapping[str, tuple[str, ...]]] = field(default_factory=dict)  # table -> head -> cells
+    carried: Mapping[str, Mapping[str, tuple[str, ...]]] = field(
+        default_factory=dict
+    )  # table -> head -> cells
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -1,0 +1,381 @@
+"""The measurement function: from readings to Faradaic efficiencies, written once.
+
+`read_injections` and `read_liquids` go as far as single injections and compartments, `close_books` sums them up. All of
+it is arithmetic along the plan: plain arrays give nominal values, arrays (n_draws, n) give Monte Carlo values, and
+`Linearised` numbers give values with their covariances.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+
+from coulombook.amounts.gas import (
+    FARADAY_CONSTANT,
+    charge_rate_ampere,
+    dry_share,
+    mixing_time_second,
+    molar_density,
+    outlet_from_carbon_balance,
+    outlet_from_tracer,
+)
+from coulombook.amounts.liquid import (
+    amount_in_compartment_mol,
+    concentration_mol_per_m3,
+    integral_per_proton,
+    tube_amount_mol,
+)
+from coulombook.amounts.water import saturated_water_vapour_pascal
+from coulombook.balance.plan import FlowPlan, Plan
+from coulombook.balance.readings import FloatArray, OutletFlow
+from coulombook.cell.potential import potential_rhe_volt, reference_potential_volt
+from coulombook.curves.inverse import invert, response
+from coulombook.uncertainty.linearised import (
+    IntArray,
+    Number,
+    chain,
+    gather,
+    linear_map,
+    nominal,
+    select,
+    sparse_map,
+)
+
+Numbers = Mapping[str, Number]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Electrical:
+    """Charge, current and potential of each run, (R,)."""
+
+    charge_coulomb: Number
+    mean_current_ampere: Number  # positive for reduction
+    potential_rhe_volt: Number
+    current_density_ampere_per_m2: Number
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Liquids:
+    """Liquid products."""
+
+    amount_ratio: Number  # (S,) of each signal to its internal standard
+    concentration_mol_per_m3: Number  # (A,) blanks subtracted
+    amount_mol: Number  # (L,) in a compartment up to its last sampling
+    faradaic_efficiency: Number  # (LP,) of a run
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class GasReadings:
+    """Gas products of single injections."""
+
+    mole_fraction: Number  # (G,)
+    inlet_mol_per_s: Number  # (R,)
+    outlet_mol_per_s: Number  # (K,)
+    mixing_time_second: Number  # (K,) NaN where no headspace is given
+    current_ampere: Number  # (K,)
+    faradaic_efficiency: Number  # (G,) zero for the tracer
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Outcome:
+    """What the books say: products (Q,) and runs (R,)."""
+
+    electrical: Electrical
+    faradaic_efficiency: Number  # (Q,)
+    amount_mol: Number  # (Q,)
+    partial_current_density_ampere_per_m2: Number  # (Q,)
+    real_partial_current_density_ampere_per_m2: Number  # (Q,) NaN without roughness factor
+    total: Number  # (R,)
+    hydrogen: Number  # (R,)
+    c1: Number  # (R,)
+    c2_plus: Number  # (R,)
+    ratio: Number  # (R,) C2+/C1 by charge
+    ratio_molar: Number  # (R,)
+    co2_conversion: Number  # (R,) NaN where no inlet flow is given
+    capacitance_farad: Number  # (El,)
+    roughness_factor: Number  # (El,)
+    run_roughness_factor: Number  # (R,)
+
+
+def _every(count: int) -> IntArray:
+    """Index that repeats a single value ``count`` times."""
+    return np.zeros(count, dtype=np.intp)
+
+
+def read_electrical(plan: Plan, x: Numbers) -> Electrical:
+    """Charge, current and potential of each run."""
+    figures = plan.figures
+    duration = np.array([one.stop_second - one.start_second for one in figures])
+    charge = np.array([one.charge_coulomb for one in figures])
+    current = charge / duration * (1.0 + x["current gain"]) + x["current offset"] + x["current noise"]
+    runs = _every(len(figures))
+    reference = reference_potential_volt(
+        gather(x["potential"], runs), gather(x["temperature coefficient"], runs), x["temperature"]
+    )
+    potential = potential_rhe_volt(
+        x["mean potential"] + x["potential noise"],
+        reference,
+        x["ph"],
+        x["temperature"],
+        -current,
+        x["resistance"],
+        x["compensated"],
+    )
+    return Electrical(current * duration, current, potential, current / x["electrode area"])
+
+
+def signal_ratios(plan: Plan, x: Numbers, standard: Number) -> Number:
+    """Amount ratio of each signal (S,) to its internal standard, whose integral per proton (V,) is given."""
+    liquid = plan.liquid
+    protons = np.array([signal.protons for signal in liquid.signals], dtype=float)
+    response_ratio = integral_per_proton(x["integral"], protons) / gather(standard, liquid.signal_vial)
+    a0, a1, a2 = (gather(x[name], liquid.signal_curve) for name in ("a0", "a1", "a2"))
+    return invert(a0, a1, a2, response_ratio)
+
+
+def standard_signals(plan: Plan, x: Numbers) -> Number:
+    """Integral per proton of each signal of an internal standard, (T,)."""
+    protons = np.array([signal.protons for signal in plan.liquid.standard_signals], dtype=float)
+    return integral_per_proton(x["standard integral"], protons)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class SignalWeights:
+    """Weights of the signals that speak of one thing; each group adds up to one."""
+
+    standard: FloatArray  # (T,)
+    analyte: FloatArray  # (S,)
+
+
+def read_liquids(plan: Plan, x: Numbers, weights: SignalWeights) -> Liquids:
+    """From integrals to the Faradaic efficiency of liquid products."""
+    liquid = plan.liquid
+    n_standard, n_signal = len(liquid.standard_signals), len(liquid.signals)
+    average = sparse_map(
+        liquid.standard_vial, np.arange(n_standard), weights.standard, (len(liquid.vials), n_standard)
+    )
+    standard = linear_map(average, standard_signals(plan, x))
+    ratio = signal_ratios(plan, x, standard)
+    combine = sparse_map(
+        liquid.signal_analyte, np.arange(n_signal), weights.analyte, (len(liquid.analyte_vial), n_signal)
+    )
+    vial = liquid.analyte_vial
+    in_tube = tube_amount_mol(linear_map(combine, ratio), gather(x["standard amount"], vial))
+    aliquot = gather(x["aliquot"], vial)
+    measured = concentration_mol_per_m3(in_tube, aliquot)
+    concentration = measured - linear_map(liquid.blanks, measured)
+    amount = amount_in_compartment_mol(
+        linear_map(liquid.replicate_mean, concentration),
+        linear_map(liquid.volume_mean, x["compartment volume"]),
+        linear_map(liquid.withdrawn, concentration * aliquot),
+    )
+    charge = _charge_to_sampling(plan, x)
+    efficiency = liquid.electrons * FARADAY_CONSTANT * amount / gather(charge, liquid.product_sampling)
+    return Liquids(ratio, concentration, amount, linear_map(liquid.compartments, efficiency))
+
+
+def _charge_to_sampling(plan: Plan, x: Numbers) -> Number:
+    """Charge passed up to each sampling, (M,)."""
+    run = plan.liquid.samplings.run
+    charge = np.concatenate([one.sampling_charge_coulomb for one in plan.figures])
+    duration = np.concatenate([one.sampling_duration_second for one in plan.figures])
+    offset = x["current offset"] + x["current noise"]
+    return charge * (1.0 + gather(x["current gain"], run)) + duration * gather(offset, run)
+
+
+def molar_flow(flow: FlowPlan, x: Numbers, name: str) -> Number:
+    """Flow of one column of runs as amount per time, (R,). [mol/s]"""
+    runs = _every(len(flow.value))
+    standard = molar_density(gather(x["standard pressure"], runs), gather(x["standard temperature"], runs))
+    actual = molar_density(x["pressure"], x["temperature"])
+    return x[name] * (flow.molar + flow.standard * standard + flow.actual * actual)
+
+
+def drift_factor(plan: Plan, x: Numbers) -> Number:
+    """Drift of the detector at each peak, (P,): measured over expected area of the check gas, interpolated."""
+    gas = plan.gas
+    a0, a1, a2 = (gather(x[name], gas.check_curve) for name in ("a0", "a1", "a2"))
+    expected = response(a0, a1, a2, x["check mole fraction"])
+    return linear_map(gas.drift, x["check area"] / expected) + gas.undrifted
+
+
+def read_injections(plan: Plan, x: Numbers, electrical: Electrical, liquids: Liquids) -> GasReadings:
+    """From peak areas to the Faradaic efficiency of each gas product in each injection."""
+    gas = plan.gas
+    a0, a1, a2 = (gather(x[name], gas.peak_curve) for name in ("a0", "a1", "a2"))
+    by_peak = invert(a0, a1, a2, x["peak area"] / drift_factor(plan, x))
+    mole_fraction = linear_map(gas.channel_mean, by_peak)
+
+    run = gas.injections.run
+    inlet = molar_flow(plan.inlet, x, "inlet flow")
+    outlet = _outlet(plan, x, inlet, mole_fraction, electrical, liquids)
+    density = molar_density(x["pressure"], x["temperature"])
+    mixing = mixing_time_second(gather(x["headspace"], run), outlet, gather(density, run))
+    current = _injection_current(plan, x, mixing)
+    injection = gas.reading_injection
+    rate = mole_fraction * gather(outlet, injection)
+    efficiency = charge_rate_ampere(gas.electrons, rate) / gather(current, injection)
+    return GasReadings(mole_fraction, inlet, outlet, mixing, current, efficiency)
+
+
+def _outlet(
+    plan: Plan, x: Numbers, inlet: Number, mole_fraction: Number, electrical: Electrical, liquids: Liquids
+) -> Number:
+    """Outlet molar flow at each injection, (K,)."""
+    run = plan.gas.injections.run
+    match plan.outlet_flow:
+        case OutletFlow.INLET:
+            return gather(inlet, run)
+        case OutletFlow.MEASURED:
+            flow = molar_flow(plan.outlet, x, "outlet flow")
+            if plan.settings.meter_gas_wet:
+                dry = dry_share(saturated_water_vapour_pascal(x["temperature"]), x["pressure"])
+                # a standard flow is an amount already; only a volume holds the water
+                flow = select(plan.outlet.actual > 0, flow * dry, flow)
+            return gather(flow, run)
+        case OutletFlow.TRACER:
+            tracer = molar_flow(plan.tracer, x, "tracer flow")
+            return outlet_from_tracer(gather(tracer, run), gather(mole_fraction, plan.gas.tracer_reading))
+        case OutletFlow.BALANCE:
+            liquid = plan.liquid
+            rate = liquids.faradaic_efficiency * gather(electrical.mean_current_ampere, liquid.group_run)
+            electrons = np.array([one.electrons for one in liquid.group_species], dtype=float)
+            carbon = linear_map(liquid.carbon_per_run, rate / (electrons * FARADAY_CONSTANT))
+            return outlet_from_carbon_balance(
+                gather(inlet, run),
+                gather(carbon, run),
+                gather(x["carbonate uptake"], run),
+                linear_map(plan.gas.net_gas, mole_fraction),
+            )
+
+
+def _injection_current(plan: Plan, x: Numbers, mixing: Number) -> Number:
+    """The charge rate each injection is compared with, (K,). [A]"""
+    run = plan.gas.injections.run
+    delay = x["injection delay"] - gather(x["dead time"] - plan.settings.dead_time_second, _every(len(run)))
+    gain, offset = gather(x["current gain"], run), gather(x["current offset"], run)
+    window = np.concatenate([one.injection_current_ampere for one in plan.figures])
+    if not plan.headspace.any():
+        seen, memory = window, offset
+        slope: Number = np.concatenate([one.injection_slope_ampere_per_second for one in plan.figures])
+    else:
+        mixed_run = plan.headspace[run]
+        since = np.concatenate([one.injection_since_second for one in plan.figures])
+        now = np.concatenate([one.injection_now_ampere for one in plan.figures])
+        direct = np.concatenate([one.injection_slope_ampere_per_second for one in plan.figures])
+
+        def mixed(tau: FloatArray) -> tuple[FloatArray, FloatArray]:
+            return mixed_current(plan, tau)
+
+        seen = select(mixed_run, chain(mixing, mixed), window)
+        # a constant offset builds up in the headspace like any other current
+        memory = select(mixed_run, offset * (1.0 - np.exp(-since / mixing)), offset)
+        slope = np.where(mixed_run, (now - nominal(seen)) / nominal(mixing), direct)
+    return seen * (1.0 + gain) + memory + x["injection current noise"] + slope * delay
+
+
+def mixed_current(plan: Plan, tau_second: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Current that the headspace remembers at each injection, with its derivative by tau; (..., K) each."""
+    value = np.full(tau_second.shape, np.nan)
+    slope = np.full(tau_second.shape, np.nan)
+    first = 0
+    for figures in plan.figures:
+        held = slice(first, first + len(figures.injection_current_ampere))
+        first = held.stop
+        if figures.mixed is not None:
+            value[..., held], slope[..., held] = figures.mixed.value_and_slope(tau_second[..., held])
+    return value, slope
+
+
+def close_books(
+    plan: Plan,
+    x: Numbers,
+    electrical: Electrical,
+    liquids: Liquids,
+    readings: GasReadings,
+    gas_efficiency: Number,
+) -> Outcome:
+    """Sum up. ``gas_efficiency`` (GP,) is the mean over the used injections, scatter of the injections included."""
+    products, surface = plan.products, plan.surface
+    n_runs, n_products = len(plan.runs), len(products.run)
+    efficiency = linear_map(products.from_gas, gas_efficiency) + linear_map(
+        products.from_liquid, liquids.faradaic_efficiency
+    )
+    per_charge = 1.0 / (products.electrons * FARADAY_CONSTANT)
+    amount = efficiency * gather(electrical.charge_coulomb, products.run) * per_charge
+    partial = efficiency * gather(electrical.current_density_ampere_per_m2, products.run)
+    capacitance, roughness = _roughness(plan, x)
+    run_roughness = linear_map(surface.runs, roughness) + np.where(surface.run_has, 0.0, np.nan)
+
+    def total(keep: FloatArray, what: Number) -> Number:
+        return linear_map(sparse_map(products.run, np.arange(n_products), keep, (n_runs, n_products)), what)
+
+    one = (products.carbon == 1).astype(float)
+    more = (products.carbon > 1).astype(float)
+    c1, c2_plus = total(one, efficiency), total(more, efficiency)
+    feed = gather(x["feed co2"], _every(n_runs)) * readings.inlet_mol_per_s
+    carbon_used = total(products.carbon * per_charge, efficiency) * electrical.mean_current_ampere
+    with np.errstate(divide="ignore", invalid="ignore"):
+        ratio, ratio_molar = c2_plus / c1, total(more, amount) / total(one, amount)
+        conversion = carbon_used / feed
+    return Outcome(
+        electrical,
+        efficiency,
+        amount,
+        partial,
+        partial / gather(run_roughness, products.run),
+        total(np.ones(n_products), efficiency),
+        total((products.carbon == 0).astype(float), efficiency),
+        c1,
+        c2_plus,
+        ratio,
+        ratio_molar,
+        conversion,
+        capacitance,
+        roughness,
+        run_roughness,
+    )
+
+
+def _roughness(plan: Plan, x: Numbers) -> tuple[Number, Number]:
+    """Double-layer capacitance and roughness factor of each electrode, (El,)."""
+    surface = plan.surface
+    electrode = surface.scan_electrode
+    rate, current = x["scan rate"], x["charging current"]
+    centred = rate - gather(linear_map(surface.mean, rate), electrode)
+    # least squares with intercept: C = sum (v - mean v) i / sum (v - mean v)^2
+    slope = linear_map(surface.total, centred * current) / linear_map(surface.total, centred * centred)
+    capacitance = slope + x["capacitance scatter"]
+    specific = capacitance / linear_map(surface.mean, x["scan area"])
+    if surface.smooth is not None:
+        smooth = gather(specific, np.full(len(surface.electrodes), surface.smooth, dtype=np.intp))
+    else:
+        smooth = gather(x["specific capacitance"], _every(len(surface.electrodes)))
+    return capacitance, specific / smooth
+
+
+def mean_over_injections(plan: Plan, readings: GasReadings) -> Number:
+    """Faradaic efficiency of each gas product of a run: the mean over its used injections, (GP,)."""
+    gas = plan.gas
+    count = np.bincount(gas.pooled_group, minlength=len(gas.group_run)).astype(float)
+    average = sparse_map(
+        gas.pooled_group,
+        np.arange(len(gas.pooled_reading)),
+        1.0 / count[gas.pooled_group],
+        (len(gas.group_run), len(gas.pooled_reading)),
+    )
+    return linear_map(average, gather(readings.faradaic_efficiency, gas.pooled_reading))
+
+
+def evaluate(plan: Plan, x: Numbers, weights: SignalWeights, scatter: Number | float = 0.0) -> Outcome:
+    """The whole measurement function.
+
+    ``scatter`` (GP,) is the error of each run's mean over injections that the readings' own errors do not explain;
+    zero at the nominal point.
+    """
+    electrical = read_electrical(plan, x)
+    liquids = read_liquids(plan, x, weights)
+    readings = read_injections(plan, x, electrical, liquids)
+    return close_books(plan, x, electrical, liquids, readings, mean_over_injections(plan, readings) + scatter)

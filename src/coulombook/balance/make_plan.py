@@ -1,0 +1,135 @@
+"""Make the plan of a day from its tables and the figures of its traces."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from coulombook.balance.curves_used import CurvesUsed
+from coulombook.balance.evaluate import SignalWeights, read_electrical, read_injections, read_liquids
+from coulombook.balance.gas_plan import Injections, plan_gas
+from coulombook.balance.liquid_plan import Samplings, plan_liquid
+from coulombook.balance.plan import Plan, make_inputs, plan_flow, plan_products
+from coulombook.balance.readings import Day, FloatArray, FlowKind, Run
+from coulombook.balance.surface_plan import plan_surface
+from coulombook.balance.trace_figures import TraceFigures, TraceRequest
+from coulombook.findings import Findings
+from coulombook.uncertainty.linearised import IntArray
+
+# without a flow to guess from, any mixing time will do to begin with: the second look is centred on the true one
+_ANY_MIXING_TIME = 60.0
+
+
+def trace_requests(day: Day, injections: Injections, samplings: Samplings) -> list[TraceRequest]:
+    """What is asked of each run's log."""
+    settings = day.settings
+    return [
+        TraceRequest(
+            run.start_second,
+            run.stop_second,
+            injections.time_second[injections.of_run(number)],
+            samplings.time_second[samplings.run == number],
+            settings.current_window_second,
+            settings.dead_time_second,
+            _mixing_time_guess(run, settings.standard_pressure_pascal / settings.standard_temperature_kelvin),
+        )
+        for number, run in enumerate(day.runs)
+    ]
+
+
+def _mixing_time_guess(run: Run, standard_pascal_per_kelvin: float) -> float | None:
+    """Time constant of the headspace if the outlet flow were the flow entered. [s]"""
+    if run.headspace_m3 is None:
+        return None
+    flow = run.outlet_flow or run.inlet_flow
+    if flow is None or flow.kind is FlowKind.MOLAR or not flow.value > 0:
+        return _ANY_MIXING_TIME
+    swelling = standard_pascal_per_kelvin * run.temperature_kelvin / run.pressure_pascal
+    return run.headspace_m3 / (flow.value * (swelling if flow.kind is FlowKind.STANDARD else 1.0))
+
+
+def make_plan(
+    day: Day,
+    injections: Injections,
+    figures: Sequence[TraceFigures],
+    charging_current_ampere: FloatArray,
+    findings: Findings,
+) -> Plan:
+    """Lay out the day; faults and doubts go to ``findings``."""
+    usable = np.concatenate([one.usable for one in figures]) if figures else np.zeros(0, dtype=bool)
+    _report_left_out(day, injections, usable, findings)
+    curves = CurvesUsed(day.calibrations, findings)
+    gas = plan_gas(day, injections, usable, curves, findings)
+    liquid = plan_liquid(day, curves, findings)
+    return Plan(
+        day.settings,
+        day.runs,
+        tuple(figures),
+        curves,
+        plan_flow([run.inlet_flow for run in day.runs]),
+        plan_flow([run.outlet_flow for run in day.runs]),
+        plan_flow([run.tracer_flow for run in day.runs]),
+        gas,
+        liquid,
+        plan_surface(day, charging_current_ampere, findings),
+        plan_products(day, gas, liquid),
+        np.array([run.headspace_m3 is not None for run in day.runs], dtype=bool),
+    )
+
+
+def _report_left_out(day: Day, injections: Injections, usable: NDArray[np.bool_], findings: Findings) -> None:
+    wanted = {(peak.run, peak.injection) for peak in day.peaks if peak.used}
+    for number in np.flatnonzero(~usable):
+        run, label = day.runs[injections.run[number]].name, injections.label[number]
+        if (run, label) in wanted:
+            findings.add(
+                "injection-left-out",
+                f"run {run}, injection {label} ({injections.origin[number]})",
+                f"no current of the run belongs to its time, {injections.time_second[number]:g} s "
+                "(dead time and current window considered); it was left out",
+                "check the time of the injection, the run's start and stop, and the dead time; or mark it use = no",
+            )
+
+
+def recentred_requests(plan: Plan, requests: Sequence[TraceRequest]) -> dict[int, TraceRequest]:
+    """Runs whose headspace mixes more slowly or quickly than guessed, with better guesses.
+
+    The outlet flow, and with it the time constant, may depend on peak areas and on liquid products; it never depends on
+    the currents of the injections, so that one second look settles it.
+    """
+    if not plan.headspace.any():
+        return {}
+    x = make_inputs(plan).nominal
+    equal = SignalWeights(
+        _equal(plan.liquid.standard_vial, len(plan.liquid.vials)),
+        _equal(plan.liquid.signal_analyte, len(plan.liquid.analyte_vial)),
+    )
+    electrical = read_electrical(plan, x)
+    readings = read_injections(plan, x, electrical, read_liquids(plan, x, equal))
+    tau = np.asarray(readings.mixing_time_second)
+    again = {}
+    for number in np.flatnonzero(plan.headspace):
+        mixed = plan.figures[number].mixed
+        found = tau[plan.gas.injections.of_run(int(number))]
+        found = found[np.isfinite(found) & (found > 0)]
+        if mixed is None or not found.size:
+            continue
+        # well inside the range, so that draws and derivatives stay in it
+        middle = float(np.exp(np.log(found).mean()))
+        guess = requests[number].mixing_time_second
+        if guess is None or abs(np.log(middle / guess)) > _WELL_INSIDE:
+            again[int(number)] = replace(requests[number], mixing_time_second=middle)
+    return again
+
+
+# the interpolation of the mixed current reaches a factor 1.5 (0.405 in ln) either side of its centre
+_WELL_INSIDE = 0.1
+
+
+def _equal(group: IntArray, groups: int) -> FloatArray:
+    count = np.bincount(group, minlength=groups)
+    result: FloatArray = 1.0 / count[group]
+    return result

@@ -1,0 +1,331 @@
+"""The plan of a day: everything that is fixed before the first number is evaluated, and the blocks of inputs.
+
+A plan says which reading belongs to which injection, vial, run and product. The evaluation (`evaluate.py`) turns
+inputs into outputs along it and never looks at a name again.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from coulombook.balance.curves_used import CurvesUsed
+from coulombook.balance.gas_plan import GasPlan
+from coulombook.balance.liquid_plan import LiquidPlan
+from coulombook.balance.readings import Day, DaySettings, FloatArray, Flow, FlowKind, OutletFlow, Run
+from coulombook.balance.surface_plan import SurfacePlan
+from coulombook.balance.trace_figures import TraceFigures
+from coulombook.uncertainty.errors import (
+    DAY,
+    READING,
+    RUN,
+    Block,
+    Correlated,
+    Declaration,
+    Inputs,
+    Source,
+    build_inputs,
+)
+from coulombook.uncertainty.linearised import IntArray, sparse_map
+
+if TYPE_CHECKING:
+    from scipy.sparse import csr_array
+
+INJECTION_SCATTER = Source("injection scatter", RUN)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class FlowPlan:
+    """How the flows of one column were written, (R,) each."""
+
+    molar: FloatArray
+    standard: FloatArray
+    actual: FloatArray
+    value: FloatArray  # NaN where a run gives none
+
+
+def plan_flow(flows: Sequence[Flow | None]) -> FlowPlan:
+    """Flows of one column of runs."""
+
+    def kind(which: FlowKind) -> FloatArray:
+        return np.array([flow is not None and flow.kind is which for flow in flows], dtype=float)
+
+    value = np.array([np.nan if flow is None else flow.value for flow in flows])
+    return FlowPlan(kind(FlowKind.MOLAR), kind(FlowKind.STANDARD), kind(FlowKind.ACTUAL), value)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class ProductPlan:
+    """The ledger's rows: products of runs, from gas and liquid. Index Q."""
+
+    run: IntArray  # (Q,)
+    species: tuple[str, ...]
+    phase: tuple[str, ...]
+    group: tuple[str, ...]
+    electrons: FloatArray  # (Q,)
+    carbon: FloatArray  # (Q,)
+    from_gas: csr_array  # (Q, GP)
+    from_liquid: csr_array  # (Q, LP)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Plan:
+    """Fixed structure of a day."""
+
+    settings: DaySettings
+    runs: tuple[Run, ...]
+    figures: tuple[TraceFigures, ...]
+    curves: CurvesUsed
+    inlet: FlowPlan
+    outlet: FlowPlan
+    tracer: FlowPlan
+    gas: GasPlan
+    liquid: LiquidPlan
+    surface: SurfacePlan
+    products: ProductPlan
+    headspace: NDArray[np.bool_]  # (R,)
+
+    @property
+    def outlet_flow(self) -> OutletFlow:
+        """How the outlet flow is found."""
+        return self.settings.outlet_flow
+
+    def with_figures(self, figures: Sequence[TraceFigures]) -> Plan:
+        """The same plan on other figures of the same traces."""
+        return replace(self, figures=tuple(figures))
+
+
+def plan_products(day: Day, gas: GasPlan, liquid: LiquidPlan) -> ProductPlan:
+    """Ledger rows: by run, then by carbon group, phase and order of appearance; a product of both phases is one row."""
+    sources: dict[tuple[int, str], dict[str, int]] = {}
+    for place, (run, species) in enumerate(zip(gas.group_run, gas.group_species, strict=True)):
+        sources.setdefault((int(run), species.name), {})["gas"] = place
+    for place, (run, species) in enumerate(zip(liquid.group_run, liquid.group_species, strict=True)):
+        sources.setdefault((int(run), species.name), {})["liquid"] = place
+
+    def order(key: tuple[int, str]) -> tuple[int, int, str, int, str]:
+        species = day.species[key[1]]
+        return (key[0], species.carbon, "+".join(sources[key]), -species.electrons, species.name)
+
+    keys = sorted(sources, key=order)
+    gas_entries = [(row, sources[key]["gas"]) for row, key in enumerate(keys) if "gas" in sources[key]]
+    liquid_entries = [
+        (row, sources[key]["liquid"]) for row, key in enumerate(keys) if "liquid" in sources[key]
+    ]
+    species = [day.species[name] for _, name in keys]
+    return ProductPlan(
+        np.array([run for run, _ in keys], dtype=np.intp),
+        tuple(name for _, name in keys),
+        tuple("+".join(sources[key]) for key in keys),
+        tuple(one.group for one in species),
+        np.array([one.electrons for one in species], dtype=float),
+        np.array([one.carbon for one in species], dtype=float),
+        sparse_map(
+            [a for a, _ in gas_entries], [b for _, b in gas_entries], 1.0, (len(keys), len(gas.group_run))
+        ),
+        sparse_map(
+            [a for a, _ in liquid_entries],
+            [b for _, b in liquid_entries],
+            1.0,
+            (len(keys), len(liquid.group_run)),
+        ),
+    )
+
+
+def make_inputs(plan: Plan) -> Inputs:
+    """All inputs of the measurement function with their declared and estimated errors."""
+    settings = plan.settings
+    declarations = [
+        Declaration(one.quantity, one.relative, one.absolute, one.shared) for one in settings.declared
+    ]
+    blocks = [
+        *_curve_blocks(plan),
+        *_setting_blocks(plan),
+        *_run_blocks(plan),
+        *_gas_blocks(plan),
+        *_liquid_blocks(plan),
+        *_surface_blocks(plan),
+    ]
+    return build_inputs(
+        blocks,
+        declarations,
+        [*_curve_errors(plan), *_capacitance_errors(plan)],
+        (INJECTION_SCATTER, len(plan.gas.injections.label)),
+    )
+
+
+def _setting_blocks(plan: Plan) -> list[Block]:
+    settings = plan.settings
+    nobody = np.array([-1], dtype=np.intp)
+    capacitance = settings.specific_capacitance_farad_per_m2
+    values = {
+        "potential": settings.reference_volt,
+        "temperature coefficient": settings.reference_volt_per_kelvin,
+        "standard temperature": settings.standard_temperature_kelvin,
+        "standard pressure": settings.standard_pressure_pascal,
+        "dead time": settings.dead_time_second,
+        "feed co2": settings.feed_co2,
+        "specific capacitance": np.nan if capacitance is None else capacitance,
+    }
+    return [Block(name, name, np.array([value], dtype=float), nobody) for name, value in values.items()]
+
+
+def _run_blocks(plan: Plan) -> list[Block]:
+    owner = np.arange(len(plan.runs), dtype=np.intp)
+    zero, one = np.zeros(len(plan.runs)), np.ones(len(plan.runs))
+
+    def column(get: Callable[[Run], float | None]) -> FloatArray:
+        return np.array([np.nan if get(run) is None else get(run) for run in plan.runs], dtype=float)
+
+    columns: dict[str, FloatArray] = {
+        "electrode area": column(lambda run: run.electrode_area_m2),
+        "ph": column(lambda run: run.pH),
+        "temperature": column(lambda run: run.temperature_kelvin),
+        "pressure": column(lambda run: run.pressure_pascal),
+        "resistance": column(lambda run: run.resistance_ohm),
+        "compensated": column(lambda run: run.compensated),
+        "headspace": column(lambda run: run.headspace_m3),
+        "carbonate uptake": column(lambda run: run.carbonate_uptake_mol_per_s),
+        "inlet flow": plan.inlet.value,
+        "outlet flow": plan.outlet.value,
+        "tracer flow": plan.tracer.value,
+    }
+    mean = np.array([one.mean_current_ampere for one in plan.figures])
+    noise = np.array([one.noise_weight for one in plan.figures])
+    potential = np.array([one.mean_potential_volt for one in plan.figures])
+    return [
+        *(Block(name, name, values, owner) for name, values in columns.items()),
+        # errors of the trace: a gain and an offset that a day or a run shares, and the noise of single samples,
+        # which the mean over a window averages down
+        Block("current gain", "i", zero, owner, one, zero, (DAY, RUN)),
+        Block("current offset", "i", zero, owner, zero, one, (DAY, RUN)),
+        Block("current noise", "i", zero, owner, mean * noise, noise, (READING,)),
+        Block("mean potential", "e", potential, owner, sharings=(DAY, RUN)),
+        Block("potential noise", "e", zero, owner, potential * noise, noise, (READING,)),
+    ]
+
+
+def _gas_blocks(plan: Plan) -> list[Block]:
+    gas = plan.gas
+    place = {run.name: number for number, run in enumerate(plan.runs)}
+    peak_owner = np.array([place[peak.run] for peak in gas.peaks], dtype=np.intp)
+    check_owner = len(plan.runs) + np.arange(len(gas.check_area), dtype=np.intp)
+    injections = gas.injections
+    zero = np.zeros(len(injections.label))
+    current = _by_injection(plan, lambda figures: figures.injection_current_ampere)
+    noise = _by_injection(plan, lambda figures: figures.injection_noise_weight)
+    return [
+        Block(
+            "peak area",
+            "peak area",
+            np.array([peak.peak_area for peak in gas.peaks], dtype=float),
+            peak_owner,
+        ),
+        Block("check area", "peak area", gas.check_area, check_owner),
+        Block("check mole fraction", "mole fraction", gas.check_mole_fraction, check_owner),
+        Block("injection delay", "time", zero, injections.run, injections.time_second, np.ones(len(zero))),
+        Block("injection current noise", "i", zero, injections.run, current * noise, noise, (READING,)),
+    ]
+
+
+def _by_injection(plan: Plan, get: Callable[[TraceFigures], FloatArray]) -> FloatArray:
+    """A figure of every injection, in the plan's order (by run, then time)."""
+    return np.concatenate([get(figures) for figures in plan.figures]) if plan.figures else np.zeros(0)
+
+
+def _liquid_blocks(plan: Plan) -> list[Block]:
+    liquid = plan.liquid
+    place = {run.name: number for number, run in enumerate(plan.runs)}
+    beyond = len(plan.runs)
+    owner = np.array(
+        [
+            place[vial.run] if vial.run is not None and not vial.blank else beyond + number
+            for number, vial in enumerate(liquid.vials)
+        ],
+        dtype=np.intp,
+    )
+    volume = [
+        np.nan if vial.compartment_volume_m3 is None else vial.compartment_volume_m3 for vial in liquid.vials
+    ]
+    return [
+        Block("compartment volume", "compartment volume", np.array(volume, dtype=float), owner),
+        Block("aliquot", "aliquot", np.array([vial.aliquot_m3 for vial in liquid.vials], dtype=float), owner),
+        Block(
+            "standard amount",
+            "standard amount",
+            np.array([vial.standard_amount_mol for vial in liquid.vials], dtype=float),
+            owner,
+        ),
+        Block(
+            "integral",
+            "integral",
+            np.array([signal.integral for signal in liquid.signals], dtype=float),
+            owner[liquid.signal_vial],
+        ),
+        Block(
+            "standard integral",
+            "integral",
+            np.array([signal.integral for signal in liquid.standard_signals], dtype=float),
+            owner[liquid.standard_vial],
+        ),
+    ]
+
+
+def _surface_blocks(plan: Plan) -> list[Block]:
+    surface = plan.surface
+    owner = len(plan.runs) + surface.scan_electrode
+    electrode = len(plan.runs) + np.arange(len(surface.electrodes), dtype=np.intp)
+    return [
+        Block("scan area", "electrode area", surface.electrode_area_m2, owner),
+        Block("scan rate", "scan rate", surface.scan_rate_volt_per_second, owner),
+        Block(
+            "charging current",
+            "i",
+            surface.charging_current_ampere,
+            owner,
+            per_absolute=np.zeros(
+                len(surface.charging_current_ampere)
+            ),  # an offset cancels in the half difference
+            sharings=(DAY, RUN),
+        ),
+        Block("capacitance scatter", "capacitance", np.zeros(len(electrode)), electrode, sharings=()),
+    ]
+
+
+def _curve_blocks(plan: Plan) -> list[Block]:
+    """Coefficients of the curves used, the line of slope 1 last."""
+    nobody = -1 - np.arange(len(plan.curves.used) + 1, dtype=np.intp)
+    return [
+        Block(name, "curve", values, nobody, sharings=())
+        for name, values in zip(("a0", "a1", "a2"), plan.curves.coefficients(), strict=True)
+    ]
+
+
+def _curve_errors(plan: Plan) -> list[Correlated]:
+    errors = []
+    for number, one in enumerate(plan.curves.used):
+        if one.curve is not None:
+            errors.append(
+                Correlated(
+                    Source(f"curve {one.name}", DAY),
+                    (("a0", number), ("a1", number), ("a2", number)),
+                    one.curve.factor,
+                )
+            )
+    return errors
+
+
+def _capacitance_errors(plan: Plan) -> list[Correlated]:
+    return [
+        Correlated(
+            Source("capacitance fit", DAY),
+            (("capacitance scatter", number),),
+            np.array([[fit.u_capacitance_farad]]),
+        )
+        for number, fit in enumerate(plan.surface.fits)
+        if np.isfinite(fit.u_capacitance_farad) and fit.u_capacitance_farad > 0
+    ]

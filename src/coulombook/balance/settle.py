@@ -1,0 +1,115 @@
+"""Evaluate a plan with all its uncertainties: the settled account of a day."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from coulombook.balance.evaluate import (
+    Electrical,
+    GasReadings,
+    Liquids,
+    Outcome,
+    SignalWeights,
+    close_books,
+    read_electrical,
+    read_injections,
+    read_liquids,
+    signal_ratios,
+    standard_signals,
+)
+from coulombook.balance.plan import Plan, make_inputs
+from coulombook.balance.readings import FloatArray
+from coulombook.uncertainty.errors import Inputs
+from coulombook.uncertainty.linearised import (
+    IntArray,
+    Linearised,
+    Number,
+    gather,
+    linear_map,
+    nominal,
+    sparse_map,
+    standard_uncertainty,
+)
+from coulombook.uncertainty.scatter import Pooled, pool
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Settled:
+    """A plan, its inputs, and everything the measurement function made of them."""
+
+    plan: Plan
+    inputs: Inputs
+    weights: SignalWeights
+    electrical: Electrical
+    liquids: Liquids
+    readings: GasReadings
+    injections: Pooled  # used readings of each gas product of a run
+    scatter: Number  # (GP,) error of the mean over injections that the readings' own errors do not explain
+    outcome: Outcome
+
+
+def settle(plan: Plan) -> Settled:
+    """Evaluate the plan once with numbers that carry their errors."""
+    inputs = make_inputs(plan)
+    x = inputs.numbers
+    weights = signal_weights(plan, inputs)
+    electrical = read_electrical(plan, x)
+    liquids = read_liquids(plan, x, weights)
+    readings = read_injections(plan, x, electrical, liquids)
+    gas = plan.gas
+    injections = pool(
+        gather(readings.faradaic_efficiency, gas.pooled_reading), gas.pooled_group, len(gas.group_run)
+    )
+    scatter = _scatter(plan, inputs, injections)
+    outcome = close_books(plan, x, electrical, liquids, readings, injections.mean + scatter)
+    return Settled(plan, inputs, weights, electrical, liquids, readings, injections, scatter, outcome)
+
+
+def _scatter(plan: Plan, inputs: Inputs, injections: Pooled) -> Number:
+    """The unexplained scatter of the injections as errors of the means, (GP,).
+
+    Its variance is unexplained / m for each product. Products of a run scatter together when what varies is common to
+    them (sample loop, flow, current), and on their own when it is not; so each injection gets one error, with a loading
+    on each product in proportion to that product's residual. The covariance of two products is then the one their
+    residuals show.
+    """
+    gas = plan.gas
+    groups = len(gas.group_run)
+    square = np.bincount(gas.pooled_group, weights=injections.residual**2, minlength=groups)
+    held = (injections.unexplained > 0) & (square > 0)
+    size = np.zeros(groups)
+    size[held] = np.sqrt(injections.unexplained[held] / (injections.count[held] * square[held]))
+    loading = size[gas.pooled_group] * injections.residual
+    columns = inputs.reserved + gas.reading_injection[gas.pooled_reading]
+    shape = (groups, len(inputs.sources))
+    return Linearised(np.zeros(groups), sparse_map(gas.pooled_group, columns, loading, shape))
+
+
+def signal_weights(plan: Plan, inputs: Inputs) -> SignalWeights:
+    """Weights by which the signals that speak of one thing are combined.
+
+    Either equal, or by 1/u^2 of the signal's own integral and curve; what the signals of a vial share (the internal
+    standard) moves them together and has no say. Equal where an uncertainty is zero.
+    """
+    liquid = plan.liquid
+    standards = standard_signals(plan, inputs.numbers)
+    standard = _weights(plan, standards, liquid.standard_vial, len(liquid.vials))
+    n = len(liquid.standard_signals)
+    average = sparse_map(liquid.standard_vial, np.arange(n), standard, (len(liquid.vials), n))
+    reference = linear_map(average, nominal(standards))
+    ratios = signal_ratios(plan, inputs.numbers, reference)
+    return SignalWeights(standard, _weights(plan, ratios, liquid.signal_analyte, len(liquid.analyte_vial)))
+
+
+def _weights(plan: Plan, x: Number, group: IntArray, groups: int) -> FloatArray:
+    u = standard_uncertainty(x)
+    usable = np.isfinite(u) & (u > 0)
+    whole = np.bincount(group, weights=~usable, minlength=groups) == 0
+    raw = np.ones(len(group))
+    if plan.settings.weighted_signals:
+        weighted = whole[group]
+        raw[weighted] = 1.0 / u[weighted] ** 2
+    result: FloatArray = raw / np.bincount(group, weights=raw, minlength=groups)[group]
+    return result

@@ -1,0 +1,276 @@
+"""From the settled account to the rows of the book: SI inside, lab units on the page."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from coulombook.balance.readings import Run
+from coulombook.balance.settle import Settled
+from coulombook.balance.verdicts import closures, product_status
+from coulombook.book.tables import Cell, Table
+from coulombook.compare.series import pool_points, series_points
+from coulombook.findings import Finding
+from coulombook.uncertainty.linearised import Number, nominal, standard_uncertainty
+
+PERCENT = 100.0
+PPM = 1e6
+UMOL = 1e6
+MILLIAMPERE = 1e3
+MILLIFARAD = 1e3
+MA_PER_CM2 = 0.1  # from A/m^2
+
+Row = dict[str, Cell]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Measured:
+    """Values and standard uncertainties in the unit of the page."""
+
+    value: list[float]
+    u: list[float]
+
+    @classmethod
+    def of(cls, x: Number, unit: float) -> _Measured:
+        return cls((nominal(x) * unit).tolist(), (standard_uncertainty(x) * unit).tolist())
+
+
+def level_of(run: Run) -> str:
+    """What replicates share: the level given, or the set potential or current, or the run alone."""
+    if run.level is not None:
+        return run.level
+    if run.set_potential_volt is not None:
+        return f"{run.set_potential_volt:g} V"
+    if run.set_current_ampere is not None:
+        return f"{run.set_current_ampere * MILLIAMPERE:g} mA"
+    return run.name
+
+
+def enter(settled: Settled, findings: Sequence[Finding]) -> dict[str, Table]:
+    """Every table of the book."""
+    status = product_status(settled)
+    closure, _ = closures(settled)
+    tables: Mapping[str, list[Row]] = {
+        "ledger": _ledger(settled, status),
+        "summary": _summary(settled, closure),
+        "injections": _injections(settled),
+        "series": _series(settled),
+        "surface": _surface(settled),
+        "calibrations": _calibrations(settled),
+        "findings": [
+            {
+                "severity": str(one.severity),
+                "kind": one.kind,
+                "where": one.where,
+                "text": one.text,
+                "mend": one.mend,
+            }
+            for one in findings
+        ],
+    }
+    return {name: Table.of(name, rows) for name, rows in tables.items()}
+
+
+def _run_cells(settled: Settled) -> list[Row]:
+    """What every row about a run begins with."""
+    potential = nominal(settled.outcome.electrical.potential_rhe_volt)
+    return [
+        {
+            "run": run.name,
+            "catalyst": run.catalyst,
+            "electrode": run.electrode,
+            "level": level_of(run),
+            "E vs RHE / V": float(potential[number]),
+        }
+        for number, run in enumerate(settled.plan.runs)
+    ]
+
+
+def _ledger(settled: Settled, status: Sequence[str]) -> list[Row]:
+    products, outcome = settled.plan.products, settled.outcome
+    runs = _run_cells(settled)
+    amount = (nominal(outcome.amount_mol) * UMOL).tolist()
+    fe = _Measured.of(outcome.faradaic_efficiency, PERCENT)
+    j = _Measured.of(outcome.partial_current_density_ampere_per_m2, MA_PER_CM2)
+    real = _Measured.of(outcome.real_partial_current_density_ampere_per_m2, MA_PER_CM2)
+    return [
+        {
+            **runs[products.run[row]],
+            "product": products.species[row],
+            "group": products.group[row],
+            "phase": products.phase[row],
+            "electrons": int(products.electrons[row]),
+            "amount / umol": amount[row],
+            "FE / %": fe.value[row],
+            "u(FE) / %": fe.u[row],
+            "j / mA cm^-2": j.value[row],
+            "u(j) / mA cm^-2": j.u[row],
+            "j real / mA cm^-2": real.value[row],
+            "u(j real) / mA cm^-2": _beside(real, row),
+            "status": status[row],
+        }
+        for row in range(len(products.run))
+    ]
+
+
+def _beside(measured: _Measured, row: int) -> float | None:
+    """The uncertainty of a value that exists."""
+    return measured.u[row] if np.isfinite(measured.value[row]) else None
+
+
+def _finite(measured: _Measured, row: int) -> float | None:
+    return measured.value[row] if np.isfinite(measured.value[row]) else None
+
+
+def _summary(settled: Settled, closure: Sequence[str]) -> list[Row]:
+    outcome, electrical = settled.outcome, settled.outcome.electrical
+    cells = _run_cells(settled)
+    potential = _Measured.of(electrical.potential_rhe_volt, 1.0)
+    charge = nominal(electrical.charge_coulomb).tolist()
+    density = (nominal(electrical.current_density_ampere_per_m2) * MA_PER_CM2).tolist()
+    total = _Measured.of(outcome.total, PERCENT)
+    hydrogen, c1 = _Measured.of(outcome.hydrogen, PERCENT), _Measured.of(outcome.c1, PERCENT)
+    more = _Measured.of(outcome.c2_plus, PERCENT)
+    ratio = _Measured.of(outcome.ratio, 1.0)
+    molar = _Measured.of(outcome.ratio_molar, 1.0)
+    roughness = _Measured.of(outcome.run_roughness_factor, 1.0)
+    conversion = _Measured.of(outcome.co2_conversion, PERCENT)
+    return [
+        {
+            **cells[row],
+            "u(E vs RHE) / V": potential.u[row],
+            "charge / C": charge[row],
+            "j / mA cm^-2": density[row],
+            "total FE / %": total.value[row],
+            "u(total FE) / %": total.u[row],
+            "H2 FE / %": hydrogen.value[row],
+            "C1 FE / %": c1.value[row],
+            "C2+ FE / %": more.value[row],
+            "u(C2+ FE) / %": more.u[row],
+            "C2+/C1": _finite(ratio, row),
+            "u(C2+/C1)": _beside(ratio, row),
+            "C2+/C1 molar": _finite(molar, row),
+            "roughness factor": _finite(roughness, row),
+            "u(roughness factor)": _beside(roughness, row),
+            "CO2 conversion / %": _finite(conversion, row),
+            "closure": closure[row],
+        }
+        for row in range(len(cells))
+    ]
+
+
+def _injections(settled: Settled) -> list[Row]:
+    plan, readings = settled.plan, settled.readings
+    gas = plan.gas
+    x = (nominal(readings.mole_fraction) * PPM).tolist()
+    outlet = (nominal(readings.outlet_mol_per_s) * UMOL).tolist()
+    current = (nominal(readings.current_ampere) * MILLIAMPERE).tolist()
+    u = standard_uncertainty(readings.faradaic_efficiency)
+    # the scatter that the readings' own errors leave unexplained belongs to each injection as well
+    unexplained = np.zeros(len(u))
+    unexplained[gas.pooled_reading] = settled.injections.unexplained[gas.pooled_group]
+    fe = _Measured(
+        (nominal(readings.faradaic_efficiency) * PERCENT).tolist(),
+        (np.sqrt(u**2 + unexplained) * PERCENT).tolist(),
+    )
+    rows: list[Row] = []
+    for number in np.flatnonzero(gas.electrons > 0):
+        injection = gas.reading_injection[number]
+        rows.append(
+            {
+                "run": plan.runs[gas.injections.run[injection]].name,
+                "injection": gas.injections.label[injection],
+                "time / s": float(gas.injections.time_second[injection]),
+                "product": gas.reading_species[number].name,
+                "mole fraction / ppm": x[number],
+                "outlet flow / umol/s": outlet[injection],
+                "current / mA": current[injection],
+                "FE / %": _finite(fe, number),
+                "u(FE) / %": _beside(fe, number),
+                "used": "yes" if gas.reading_used[number] else "no",
+            }
+        )
+    return rows
+
+
+def _series(settled: Settled) -> list[Row]:
+    plan, outcome = settled.plan, settled.outcome
+    runs = [plan.runs[number] for number in plan.products.run]
+    points = series_points(
+        [run.catalyst for run in runs], [level_of(run) for run in runs], plan.products.species
+    )
+    if not points:
+        return []
+    potential = nominal(outcome.electrical.potential_rhe_volt)[plan.products.run]
+    fe = pool_points(outcome.faradaic_efficiency, points)
+    j = pool_points(outcome.partial_current_density_ampere_per_m2, points)
+    real = pool_points(outcome.real_partial_current_density_ampere_per_m2, points)
+
+    def u_real(number: int) -> float | None:
+        return float(real.u[number] * MA_PER_CM2) if np.isfinite(real.mean[number]) else None
+
+    return [
+        {
+            "catalyst": point.catalyst,
+            "level": point.level,
+            "E vs RHE / V": float(potential[point.rows].mean()),
+            "product": point.product,
+            "runs": len(point.rows),
+            "FE / %": float(fe.mean[number] * PERCENT),
+            "s(FE) / %": float(fe.deviation[number] * PERCENT),
+            "u(FE) / %": float(fe.u[number] * PERCENT),
+            "j / mA cm^-2": float(j.mean[number] * MA_PER_CM2),
+            "u(j) / mA cm^-2": float(j.u[number] * MA_PER_CM2),
+            "j real / mA cm^-2": float(real.mean[number] * MA_PER_CM2),
+            "u(j real) / mA cm^-2": u_real(number),
+        }
+        for number, point in enumerate(points)
+    ]
+
+
+def _surface(settled: Settled) -> list[Row]:
+    surface, outcome = settled.plan.surface, settled.outcome
+    capacitance = _Measured.of(outcome.capacitance_farad, MILLIFARAD)
+    roughness = _Measured.of(outcome.roughness_factor, 1.0)
+    return [
+        {
+            "electrode": electrode,
+            "capacitance / mF": capacitance.value[number],
+            "u(capacitance) / mF": capacitance.u[number],
+            "roughness factor": _finite(roughness, number),
+            "u(roughness factor)": _beside(roughness, number),
+            "linearity": surface.fits[number].r_squared,
+            "exponent": surface.fits[number].exponent,
+        }
+        for number, electrode in enumerate(surface.electrodes)
+    ]
+
+
+def _calibrations(settled: Settled) -> list[Row]:
+    rows: list[Row] = []
+    for one in settled.plan.curves.used:
+        if one.curve is None:
+            continue
+        curve, standards = one.curve, one.standards
+        u = np.sqrt(np.diag(curve.covariance))
+        # gas curves are fitted against mole fraction; the page shows ppm. Liquid curves have a pure ratio for x
+        unit = PPM if standards.kind == "gas" else 1.0
+        row: Row = {
+            "calibration": standards.calibration,
+            "channel": standards.channel,
+            "analyte": standards.analyte,
+            "form": curve.form,
+            "weights": curve.weights,
+            "points": curve.points,
+            "residual sd": curve.residual_sd,
+            "lowest / ppm": curve.lowest * unit,
+            "highest / ppm": curve.highest * unit,
+        }
+        for power in range(3):
+            if curve.free[power]:
+                row[f"a{power}"] = float(curve.coefficients[power] / unit**power)
+                row[f"u(a{power})"] = float(u[power] / unit**power)
+        rows.append(row)
+    return rows

@@ -1,0 +1,254 @@
+"""The order of the day's work: read, plan, evaluate, judge, enter into the book."""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Callable, Iterable, Sequence
+from concurrent.futures import ThreadPoolExecutor
+from dataclasses import dataclass
+from pathlib import Path
+from typing import TypeVar
+
+import numpy as np
+
+from coulombook.balance.gas_plan import list_injections
+from coulombook.balance.liquid_plan import list_samplings
+from coulombook.balance.make_plan import make_plan, recentred_requests, trace_requests
+from coulombook.balance.readings import Day, FloatArray
+from coulombook.balance.settle import Settled, settle
+from coulombook.balance.trace_figures import TraceFigures, TraceRequest, figures_of
+from coulombook.balance.verdicts import closures, product_status, report_doubts, report_faults
+from coulombook.book import Book, InputFile
+from coulombook.book.entries import enter
+from coulombook.book.forecast import forecast
+from coulombook.cell.capacitance import charging_current_ampere
+from coulombook.findings import DayFaults, Finding, Findings
+from coulombook.intake.day import DaySource, open_day
+from coulombook.intake.digest import sha256_of
+
+_Result = TypeVar("_Result")
+
+Progress = Callable[[str, int, int], None]
+"""Called with what is being done, how many are done, and of how many."""
+
+
+def tally(
+    path: str | os.PathLike[str],
+    *,
+    calibrations: Sequence[str | os.PathLike[str]] = (),
+    progress: Progress | None = None,
+) -> Book:
+    """Tally a day folder: from its files to the book.
+
+    Parameters
+    ----------
+    path : path
+        The day folder.
+    calibrations : sequence of paths
+        Folders that hold calibrations, looked at after ``<day>/calibrations`` and before ``./calibrations``.
+    progress : callable, optional
+        Called as progress(what, done, of) while the long files are read.
+
+    Returns
+    -------
+    Book
+        Every table, the findings and the fingerprints of the inputs. Nothing is written.
+
+    Raises
+    ------
+    DayFaults
+        The day's data have faults; ``findings`` of the exception holds all of them.
+    NotADirectoryError
+        ``path`` is no folder.
+
+    Examples
+    --------
+    >>> book = tally("example_experiments/2043-05-18-mesh")  # doctest: +SKIP
+    >>> book.summary[["run", "total FE / %", "closure"]]  # doctest: +SKIP
+    """
+    folder, places = _folders(path, calibrations)
+    findings = Findings()
+    source = open_day(folder, places, findings)
+    settled = _work(source, findings, progress or _silent)
+    findings.raise_stops()
+    assert settled is not None  # without faults there is an account
+    assert source.day is not None
+    inputs = _fingerprints(source)
+    return Book(
+        source.day.name,
+        source.day.settings.title,
+        enter(settled, tuple(findings)),
+        tuple(findings),
+        inputs,
+        {"calibrations": os.pathsep.join(map(str, calibrations))},
+    )
+
+
+@dataclass(frozen=True, slots=True)
+class Checked:
+    """What `check` found: ``lines`` say in plain words what would be computed and what is missing."""
+
+    findings: tuple[Finding, ...]
+    lines: tuple[str, ...]
+
+
+def check(path: str | os.PathLike[str], *, calibrations: Sequence[str | os.PathLike[str]] = ()) -> Checked:
+    """Validate a day folder without writing anything; faults are among the findings, not raised.
+
+    Parameters and errors otherwise as in `tally`.
+    """
+    folder, places = _folders(path, calibrations)
+    findings = Findings()
+    source = open_day(folder, places, findings)
+    settled = _work(source, findings, _silent)
+    lines = () if source.day is None else forecast(source.day, settled)
+    return Checked(tuple(findings), tuple(lines))
+
+
+def _folders(
+    path: str | os.PathLike[str], calibrations: Iterable[str | os.PathLike[str]]
+) -> tuple[Path, list[Path]]:
+    folder = Path(path)
+    if not folder.is_dir():
+        raise NotADirectoryError(f"there is no day folder {os.fspath(path)!r}")
+    return folder, [*map(Path, calibrations), Path("calibrations")]
+
+
+def _silent(what: str, done: int, of: int) -> None:
+    pass
+
+
+def _work(source: DaySource, findings: Findings, progress: Progress) -> Settled | None:
+    """Everything between the tables and the book; None when faults stand in the way."""
+    day = source.day
+    if day is None:
+        return None
+    injections, samplings = list_injections(day, findings), list_samplings(day)
+    requests = trace_requests(day, injections, samplings)
+    figures = _read_traces(source, day, dict(enumerate(requests)), findings, progress)
+    charging = _read_scans(source, day, findings, progress)
+    if len(figures) < len(day.runs):
+        return None
+    plan = make_plan(
+        day, injections, [figures[number] for number in range(len(day.runs))], charging, findings
+    )
+    if findings.stops:
+        return None
+    again = recentred_requests(plan, requests)
+    if again:
+        figures |= _read_traces(source, day, again, findings, progress)
+        plan = plan.with_figures([figures[number] for number in range(len(day.runs))])
+    settled = settle(plan)
+    report_faults(settled, findings)
+    if findings.stops:
+        return None
+    closure, _ = closures(settled)
+    report_doubts(settled, product_status(settled), closure, findings)
+    return settled
+
+
+def _read_traces(
+    source: DaySource, day: Day, requests: dict[int, TraceRequest], findings: Findings, progress: Progress
+) -> dict[int, TraceFigures]:
+    """Figures of the logs asked for; a log with faults is missing from the result."""
+
+    def read(number: int) -> TraceFigures | Findings:
+        run, own = day.runs[number], Findings()
+        try:
+            figures = figures_of(source.trace(run), requests[number])
+        except DayFaults as faults:
+            own.extend(faults.findings)
+            return own
+        except ValueError as error:
+            own.add(
+                "broken-trace",
+                run.trace,
+                f"run {run.name}: {error}",
+                "check the run's start and stop and its log",
+            )
+            return own
+        if not figures.charge_coulomb > 0:
+            own.add(
+                "anodic-run",
+                f"run {run.name} ({run.trace})",
+                "no net reduction charge passed in its window",
+                "check the sign of the current: cathodic is negative",
+                found=f"{-figures.charge_coulomb:.4g} C by the signs of the log",
+                expected="a negative (cathodic) charge",
+            )
+            return own
+        early = figures.sampling_duration_second <= 0
+        if early.any():
+            own.add(
+                "not-allowed",
+                f"run {run.name}, vials",
+                "a vial was taken before any charge had passed",
+                "correct the time of the vial; a sample from before the run is a blank (role = blank)",
+                expected=f"a time after {figures.start_second:g} s, the start of the run's window",
+            )
+            return own
+        return figures
+
+    found = {}
+    for number, one in _in_threads(read, list(requests), "traces", progress):
+        if isinstance(one, Findings):
+            findings.extend(one)
+        else:
+            found[number] = one
+    return found
+
+
+def _read_scans(source: DaySource, day: Day, findings: Findings, progress: Progress) -> FloatArray:
+    """Charging current of each voltammogram, NaN where it has faults."""
+
+    def read(number: int) -> float | Findings:
+        scan, own = day.scans[number], Findings()
+        try:
+            voltammogram = source.voltammogram(scan)
+            return charging_current_ampere(
+                voltammogram.potential_volt,
+                voltammogram.current_ampere,
+                voltammogram.cycle,
+                scan.cycle,
+                scan.window_low_volt,
+                scan.window_high_volt,
+            )
+        except DayFaults as faults:
+            own.extend(faults.findings)
+        except ValueError as error:
+            own.add(
+                "broken-scan",
+                f"{scan.file} ({scan.origin})",
+                str(error),
+                "check the window, the cycle and the file",
+            )
+        return own
+
+    charging = np.full(len(day.scans), np.nan)
+    for number, one in _in_threads(read, list(range(len(day.scans))), "scans", progress):
+        if isinstance(one, Findings):
+            findings.extend(one)
+        else:
+            charging[number] = one
+    return charging
+
+
+def _in_threads(
+    read: Callable[[int], _Result], numbers: Sequence[int], what: str, progress: Progress
+) -> Iterable[tuple[int, _Result]]:
+    """Results in order; reading long text releases the interpreter lock, so that two threads pay."""
+    with ThreadPoolExecutor(min(4, os.cpu_count() or 1)) as pool:
+        for done, result in enumerate(pool.map(read, numbers), start=1):
+            progress(what, done, len(numbers))
+            yield numbers[done - 1], result
+
+
+def _fingerprints(source: DaySource) -> tuple[InputFile, ...]:
+    with ThreadPoolExecutor(min(4, os.cpu_count() or 1)) as pool:
+        found = list(pool.map(sha256_of, source.files))
+    return tuple(
+        sorted(
+            (InputFile(source.label(path), *one) for path, one in zip(source.files, found, strict=True)),
+            key=lambda one: one.path,
+        )
+    )
