@@ -91,6 +91,7 @@ KINDS: dict[str, tuple[Severity, str]] = {
     "wrong-dimension": (Severity.STOP, "a unit is known but measures something else"),
     "missing-value": (Severity.STOP, "a needed cell is empty"),
     "not-a-number": (Severity.STOP, "a cell that must hold a number holds something else"),
+    "not-a-time": (Severity.STOP, "a cell that must hold a date and time holds something else"),
     "not-allowed": (Severity.STOP, "a value is outside what is physically or logically possible"),
     "duplicate": (Severity.STOP, "the same thing is entered twice"),
     "unknown-name": (Severity.STOP, "a run, vial, electrode or other name is used but never defined"),
@@ -117,6 +118,7 @@ KINDS: dict[str, tuple[Severity, str]] = {
     "negative-amount": (Severity.WARN, "a reading below its blank or intercept gives a negative amount"),
     # --- notes: what was assumed or left aside ---
     "unread-column": (Severity.NOTE, "a column nobody knows was carried along unread"),
+    "unread-table": (Severity.NOTE, "a file or sheet of the day folder is no table of a day and was left unread"),
     "assumed-default": (Severity.NOTE, "a value was not given; the default was taken"),
     "left-out": (Severity.NOTE, "a row marked unused was left out"),
     "several-channels": (Severity.NOTE, "a product was measured on several channels; the mean was taken"),

@@ -1,0 +1,427 @@
+"""A day folder opened: every table read, every fault gathered, the long files left for later."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterable, Mapping, Sequence
+from dataclasses import dataclass, replace
+from functools import partial
+from pathlib import Path
+
+from coulombook.balance.readings import Calibration, Day, Peak, Run, Scan, Signal, Trace, Voltammogram
+from coulombook.findings import DayFaults, Findings
+from coulombook.intake import crosschecks, records, schema
+from coulombook.intake.calibration import find_calibrations
+from coulombook.intake.files import (
+    LARGEST_TABLE_BYTE,
+    Folder,
+    did_you_mean,
+    read_bytes,
+    report_outside,
+    unreadable,
+)
+from coulombook.intake.grid import Grid, grid_of_rows, grid_of_text
+from coulombook.intake.settings import DayFile, TraceOptions, read_day_settings
+from coulombook.intake.tables import TypedTable, typed_table
+from coulombook.intake.text import UnreadableText
+from coulombook.intake.toml_text import read_settings
+from coulombook.intake.traces import read_trace, read_voltammogram
+from coulombook.intake.workbook import read_sheets
+from coulombook.species import SpeciesTable, load_species
+
+WORKBOOK = "day.xlsx"
+_TABLE_SUFFIXES = (".csv", ".tsv")
+_TRACE_SUFFIXES = (".csv", ".tsv", ".txt")
+_TABLES = (*schema.DAY_TABLES, schema.SPECTRA)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class DaySource:
+    """An opened day folder.
+
+    ``day`` is None when the tables have faults. `trace` and `voltammogram` read their file anew at each call, keep
+    nothing, and may be called from several threads.
+    """
+
+    day: Day | None
+    files: tuple[Path, ...]  # every input of the day, traces and voltammograms with it
+    _folder: Folder
+    _calibration_folders: tuple[Folder, ...]
+    _options: TraceOptions
+
+    def trace(self, run: Run) -> Trace:
+        """The potentiostat log of a run, in SI. Raises `DayFaults` with every fault of the file."""
+        findings = Findings()
+        read = read_trace(
+            self._folder, self._folder.root / run.trace, run.electrode_area_m2, self._options, findings
+        )
+        if read is None:
+            raise DayFaults(tuple(findings))
+        return read
+
+    def voltammogram(self, scan: Scan) -> Voltammogram:
+        """The voltammogram of a row of ``scans``, in SI. Raises `DayFaults` with every fault of the file."""
+        findings = Findings()
+        read = read_voltammogram(
+            self._folder, self._folder.root / scan.file, scan.electrode_area_m2, self._options, findings
+        )
+        if read is None:
+            raise DayFaults(tuple(findings))
+        return read
+
+    def label(self, path: Path) -> str:
+        """The name of an input file: relative to the day folder, or ``calibrations/<name>/...``."""
+        for folder in self._calibration_folders:
+            if path.is_relative_to(folder.root):
+                return folder.name_of(path)
+        return self._folder.name_of(path)
+
+
+def open_day(
+    folder: Path,
+    calibration_folders: Sequence[Path],
+    findings: Findings,
+    species: SpeciesTable | None = None,
+) -> DaySource:
+    """Read every table of a day folder; traces and voltammograms are looked for and left on disk.
+
+    Parameters
+    ----------
+    folder : Path
+        The day folder.
+    calibration_folders : sequence of Path
+        Where calibrations are looked for after ``<day>/calibrations``, in order.
+    findings : Findings
+        Takes every fault and every milder finding.
+    species : SpeciesTable, optional
+        The species known beforehand; default: the shipped table.
+    """
+    home = Folder(Path(folder))
+    known = species or load_species()
+    if not home.root.is_dir():
+        findings.add("missing-file", str(folder), "there is no such day folder", "correct the path",
+                     found="nothing there", expected="a folder with day.toml, runs.csv and traces")  # fmt: skip
+        return DaySource(None, (), home, (), TraceOptions({}))
+    before = len(findings.stops)
+    file = _settings(home, known, findings)
+    tables, table_names = _tables(home, file, findings)
+    day, calibrations, long_files = _day(
+        home, file, tables, table_names, calibration_folders, known, findings
+    )
+    files = tuple(
+        dict.fromkeys([*home.read, *(path for one in calibrations for path in one.read), *long_files])
+    )
+    options = file.traces if file else TraceOptions({})
+    whole = day if len(findings.stops) == before else None
+    return DaySource(whole, files, home, calibrations, options)
+
+
+def _settings(home: Folder, species: SpeciesTable, findings: Findings) -> DayFile | None:
+    path = home.root / "day.toml"
+    if not path.exists() and not path.is_symlink():
+        findings.add(
+            "missing-file",
+            "day.toml",
+            "the day folder has no day.toml",
+            "add it; `coulombook new` writes one to fill in",
+            found="nothing there",
+            expected="the settings of the day",
+        )
+        return None
+    source = read_settings(home, path, findings)
+    return None if source is None else read_day_settings(source, species, findings)
+
+
+# --- finding and reading the tables ---
+
+
+def _tables(
+    home: Folder, file: DayFile | None, findings: Findings
+) -> tuple[dict[str, TypedTable], frozenset[str]]:
+    """The tables that could be read, and the names of all that are there."""
+    defaults = file.defaults if file else {}
+    files = _table_files(home, findings)
+    sheets = _sheet_grids(home, defaults, findings)
+    tables: dict[str, TypedTable] = {}
+    for name, columns in schema.DAY_TABLES.items():
+        given = defaults if name == "runs" else {}
+        paths = files.get(name, [])
+        if len(paths) + (name in sheets) > 1:
+            places = [home.name_of(path) for path in paths] + (
+                [f"{WORKBOOK}, sheet '{name}'"] if name in sheets else []
+            )
+            findings.add("two-sources", places[0], f"the table {name} is there more than once", "delete one of them",
+                         found=" and ".join(places), expected="one file or one sheet")  # fmt: skip
+        if paths:
+            grid = _text_grid(home, paths[0], partial(columns.score, given=frozenset(given)), findings)
+        else:
+            grid = sheets.get(name)
+        if grid is not None:
+            tables[name] = typed_table(grid, columns, findings, given)
+    there = frozenset(files) | frozenset(sheets)
+    if schema.SPECTRA in there:
+        place = (
+            home.name_of(files[schema.SPECTRA][0])
+            if schema.SPECTRA in files
+            else f"{WORKBOOK}, sheet 'spectra'"
+        )
+        findings.add(
+            "unread-table", place, "impedance spectra are not used by the tally yet; they were left unread"
+        )
+    return tables, there
+
+
+def _table_files(home: Folder, findings: Findings) -> dict[str, list[Path]]:
+    files: dict[str, list[Path]] = {}
+    for path in sorted(home.root.iterdir()):
+        suffix, stem = path.suffix.casefold(), path.stem.casefold()
+        if suffix not in _TABLE_SUFFIXES or path.is_dir():
+            continue
+        if stem in _TABLES:
+            files.setdefault(stem, []).append(path)
+        else:
+            _report_unread(findings, home.name_of(path), path.stem)
+    return files
+
+
+def _report_unread(findings: Findings, place: str, name: str) -> None:
+    hint = did_you_mean(name, _TABLES).removeprefix("; ")
+    findings.add("unread-table", place, f"'{name}' is no table of a day; it was left unread", hint)
+
+
+def _text_grid(home: Folder, path: Path, score: Callable[..., float], findings: Findings) -> Grid | None:
+    data = read_bytes(home, path, LARGEST_TABLE_BYTE, findings)
+    if data is None:
+        return None
+    try:
+        return grid_of_text(data, home.name_of(path), score)
+    except UnreadableText as error:
+        unreadable(findings, home.name_of(path), error.found, error.expected)
+        return None
+
+
+def _sheet_grids(home: Folder, defaults: Mapping[str, object], findings: Findings) -> dict[str, Grid]:
+    path = home.root / WORKBOOK
+    if not path.exists() and not path.is_symlink():
+        return {}
+    data = read_bytes(home, path, LARGEST_TABLE_BYTE, findings)
+    if data is None:
+        return {}
+    sheets = read_sheets(data, WORKBOOK, lambda name: name.strip().casefold() in _TABLES, findings)
+    if sheets is None:
+        return {}
+    for name in sheets.unread:
+        _report_unread(findings, f"{WORKBOOK}, sheet '{name}'", name)
+    grids: dict[str, Grid] = {}
+    for title, rows in sheets.rows.items():
+        name = title.strip().casefold()
+        columns = schema.DAY_TABLES.get(name)
+        if columns is None:
+            continue
+        given = frozenset(defaults) if name == "runs" else frozenset[str]()
+        grid = grid_of_rows(rows, WORKBOOK, title, partial(columns.score, given=given))
+        # a sheet with heads alone, as the empty workbook has it, is no table
+        if grid is not None and (grid.rows or name == "runs"):
+            grids[name] = grid
+    return grids
+
+
+# --- putting the day together ---
+
+
+class Spelling:
+    """One spelling for words that differ only in case and blanks: the first seen."""
+
+    def __init__(self, first: Iterable[str] = ()) -> None:
+        self._seen: dict[str, str] = {}
+        for text in first:
+            self(text)
+
+    def __call__(self, text: str) -> str:
+        """The spelling to use for ``text``."""
+        tidy = " ".join(text.split())
+        return self._seen.setdefault(tidy.casefold(), tidy)
+
+
+def _day(
+    home: Folder,
+    file: DayFile | None,
+    tables: Mapping[str, TypedTable],
+    there: frozenset[str],
+    calibration_folders: Sequence[Path],
+    known: SpeciesTable,
+    findings: Findings,
+) -> tuple[Day | None, tuple[Folder, ...], list[Path]]:
+    species = file.species if file else known
+    names = records.Names(species, findings)
+    calibrations: tuple[Calibration, ...] = ()
+    folders: tuple[Folder, ...] = ()
+    if file is not None:
+        calibrations, folders = find_calibrations(
+            file.settings.calibrations,
+            home,
+            calibration_folders,
+            species,
+            file.source.where("day", "calibrations"),
+            findings,
+        )
+    _report_missing_tables(there, findings)
+    channel_of = Spelling(one.channel for c in calibrations if c.kind == "gas" for one in c.standards)
+    signal_of = Spelling(one.channel for c in calibrations if c.kind == "liquid" for one in c.standards)
+    long_files: list[Path] = []
+
+    run_table, gas, vial_table = tables.get("runs"), tables.get("gas"), tables.get("vials")
+    liquid, scan_table, check_table = tables.get("liquid"), tables.get("scans"), tables.get("checks")
+    runs = (
+        ()
+        if run_table is None
+        else records.runs(run_table, _trace_names(home, run_table, long_files, findings))
+    )
+    peaks = () if gas is None else records.peaks(gas, names, channel_of)
+    vials = () if vial_table is None else records.vials(vial_table, names, findings)
+    signals = _signals(liquid, vial_table, names, signal_of)
+    scans = () if scan_table is None else records.scans(scan_table)
+    checks = () if check_table is None else records.checks(check_table, names, channel_of)
+
+    if run_table is not None:
+        crosschecks.unique_words(run_table, ("run",), "the run", findings)
+    _check_names(tables, findings)
+    if scan_table is not None:
+        _scan_files(home, scan_table, long_files, findings)
+    if vial_table is not None and liquid is not None:
+        broken = frozenset(liquid.words("vial")[place] for place in liquid.broken)
+        if "analyte" in liquid.heads and "vial" in liquid.heads:
+            crosschecks.standards(vials, signals, broken, findings)
+    crosschecks.windows(runs, scans, findings)
+    if run_table is not None:
+        crosschecks.starting_times(runs, peaks, checks, run_table, findings)
+    if file is not None and run_table is not None:
+        _check_settings(file, run_table, runs, peaks, scans, "scans" in there, calibrations, findings)
+    if file is None or run_table is None:
+        return None, folders, long_files
+    carried = {name: dict(table.carried) for name, table in tables.items() if table.carried}
+    settings = replace(file.settings, title=file.settings.title or home.root.resolve().name)
+    day = Day(home.root.resolve().name, settings, species, runs, peaks, vials, signals, scans, checks,
+              calibrations, carried)  # fmt: skip
+    return day, folders, long_files
+
+
+def _report_missing_tables(there: frozenset[str], findings: Findings) -> None:
+    if "runs" not in there:
+        findings.add("missing-file", "runs.csv", "the day has no table of runs",
+                     f"add runs.csv, or a sheet 'runs' in {WORKBOOK}", found="nothing there",
+                     expected="a table with a row for each hold")  # fmt: skip
+    for one, other in (("vials", "liquid"), ("liquid", "vials")):
+        if one in there and other not in there:
+            findings.add("missing-file", f"{other}.csv", f"the table {one} is there, but not the table {other}",
+                         f"add {other}.csv, or take {one} away", found="nothing there",
+                         expected=f"the table {other}")  # fmt: skip
+
+
+def _signals(
+    liquid: TypedTable | None,
+    vial_table: TypedTable | None,
+    names: records.Names,
+    signal_of: Callable[[str], str],
+) -> tuple[Signal, ...]:
+    if liquid is None:
+        return ()
+    standards: dict[str, str] = {}
+    if vial_table is not None:
+        # from the table, not the records: a vial with a fault elsewhere still names its standard
+        for vial, text in zip(vial_table.words("vial"), vial_table.words("standard"), strict=True):
+            standards[vial] = names.standard(text)
+    return records.signals(liquid, standards, names, signal_of)
+
+
+def _check_names(tables: Mapping[str, TypedTable], findings: Findings) -> None:
+    """Names used in one table and defined in another, and things entered twice."""
+    runs, vials = tables.get("runs"), tables.get("vials")
+    gas, liquid = tables.get("gas"), tables.get("liquid")
+    run_names = [name for name in runs.words("run") if name] if runs is not None else []
+    for table in (gas, vials):
+        if table is not None and run_names:
+            crosschecks.known_names(table, "run", run_names, "run", "runs", findings)
+    if gas is not None:
+        quantities = ("run", "injection", "channel", "analyte")
+        crosschecks.unique_words(gas, quantities, "the peak", findings)
+    if vials is not None:
+        crosschecks.unique_words(vials, ("vial",), "the vial", findings)
+        if liquid is not None:
+            names = [name for name in vials.words("vial") if name]
+            if names:
+                crosschecks.known_names(liquid, "vial", names, "vial", "vials", findings)
+    if liquid is not None:
+        crosschecks.unique_words(liquid, ("vial", "analyte", "signal"), "the signal", findings)
+
+
+def _check_settings(
+    file: DayFile,
+    run_table: TypedTable,
+    runs: Sequence[Run],
+    peaks: Sequence[Peak],
+    scans: Sequence[Scan],
+    has_scans: bool,
+    calibrations: Sequence[Calibration],
+    findings: Findings,
+) -> None:
+    settings = file.settings
+    if not len(run_table) and "run" in run_table.heads:
+        findings.add("missing-value", run_table.table_origin, "the table of runs has no rows",
+                     "add a row for each hold", found="heads alone", expected="at least one run")  # fmt: skip
+    crosschecks.flows(settings, runs, peaks, run_table, findings)
+    crosschecks.smooth_reference(settings, scans, file, has_scans, findings)
+    crosschecks.declared_flow_kinds(settings.declared, file.declared_flow_kinds, runs, findings)
+    crosschecks.assumed(run_table, file.defaults, settings, findings)
+    crosschecks.expiry(calibrations, settings, runs, findings)
+
+
+# --- the long files ---
+
+
+def _trace_names(home: Folder, table: TypedTable, long_files: list[Path], findings: Findings) -> list[str]:
+    """The path of every run's trace relative to the day folder, each looked for."""
+    names: list[str] = []
+    for place, (run, given) in enumerate(zip(table.words("run"), table.words("trace"), strict=True)):
+        text = (given or f"traces/{run}.csv").replace("\\", "/")
+        names.append(text)
+        if not run and not given:
+            continue
+        path = home.inside(text)
+        if path is not None and not given and not path.exists():
+            others = [path.with_name(f"{run}{suffix}") for suffix in _TRACE_SUFFIXES]
+            path = next((one for one in others if one.exists()), path)
+            names[-1] = home.name_of(path)
+        _look_for(home, path, text, table, place, "trace", f"run '{run}'", long_files, findings)
+    return names
+
+
+def _scan_files(home: Folder, table: TypedTable, long_files: list[Path], findings: Findings) -> None:
+    for place, given in enumerate(table.words("file")):
+        if given:
+            path = home.inside(given)
+            _look_for(home, path, given, table, place, "file", "the row", long_files, findings)
+
+
+def _look_for(
+    home: Folder,
+    path: Path | None,
+    text: str,
+    table: TypedTable,
+    place: int,
+    quantity: str,
+    what: str,
+    long_files: list[Path],
+    findings: Findings,
+) -> None:
+    where = table.where(place, quantity)
+    if path is None:
+        report_outside(findings, where, text)
+    elif not path.is_file():
+        near = ""
+        if path.parent.is_dir() and home.holds(path.parent):
+            near = did_you_mean(path.name, sorted(one.name for one in path.parent.iterdir()))
+        findings.add("missing-file", where, f"{what} has no {'trace' if quantity == 'trace' else 'voltammogram'}",
+                     f"add the file, or correct its name{near}", found=f"no file '{text}'",
+                     expected=f"a file '{text}' in the day folder")  # fmt: skip
+    else:
+        long_files.append(path)
