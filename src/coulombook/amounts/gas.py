@@ -17,7 +17,8 @@ FARADAY_CONSTANT: float = physical_constants["Faraday constant"][0]  # C/mol
 
 def molar_density(pressure_pascal: Number, temperature_kelvin: Number) -> Number:
     """Amount of ideal gas per volume, p / (R T). [mol/m^3]"""
-    return pressure_pascal / (GAS_CONSTANT * temperature_kelvin)
+    density: Number = pressure_pascal / (GAS_CONSTANT * temperature_kelvin)
+    return density
 
 
 def dry_share(water_vapour_pascal: Number, pressure_pascal: Number) -> Number:

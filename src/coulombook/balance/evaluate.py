@@ -258,7 +258,8 @@ def _injection_current(plan: Plan, x: Numbers, mixing: Number) -> Number:
     gain, offset = gather(x["current gain"], run), gather(x["current offset"], run)
     window = np.concatenate([one.injection_current_ampere for one in plan.figures])
     if not plan.headspace.any():
-        seen, memory = window, offset
+        seen: Number = window
+        memory = offset
         slope: Number = np.concatenate([one.injection_slope_ampere_per_second for one in plan.figures])
     else:
         mixed_run = plan.headspace[run]

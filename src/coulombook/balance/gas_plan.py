@@ -132,12 +132,13 @@ def plan_gas(
     if tracer is not None:
         _demand_tracer(day, injections, usable, tracer_reading, tracer, findings)
 
-    groups: dict[tuple[int, str], int] = {}
-    pooled = [reading for reading in held if used[reading]]
-    for reading in pooled:
-        key = (int(injections.run[reading_injection[reading]]), species[reading].name)
-        groups.setdefault(key, len(groups))
-    order = {key: place for place, key in enumerate(sorted(groups, key=lambda key: key[0]))}
+    run_of = injections.run[reading_injection]
+    pooled = [int(reading) for reading in held if used[reading]]
+    product_of = [(int(run_of[reading]), species[reading].name) for reading in pooled]
+    # by run, within it in order of appearance
+    order = {
+        key: place for place, key in enumerate(sorted(dict.fromkeys(product_of), key=lambda key: key[0]))
+    }
     check_curve, drift, undrifted = _plan_drift(day, peaks, peak_curve, curves)
     return GasPlan(
         injections,
@@ -159,13 +160,7 @@ def plan_gas(
         sparse_map(reading_injection[held], held, net, (count, len(keys))),
         tracer_reading,
         np.array(pooled, dtype=np.intp),
-        np.array(
-            [
-                order[int(injections.run[reading_injection[reading]]), species[reading].name]
-                for reading in pooled
-            ],
-            dtype=np.intp,
-        ),
+        np.array([order[key] for key in product_of], dtype=np.intp),
         np.array([run for run, _ in order], dtype=np.intp),
         tuple(day.species[name] for _, name in order),
     )
@@ -252,7 +247,9 @@ def _plan_drift(
     members: dict[int, list[int]] = {}
     for number, curve in enumerate(peak_curve):
         members.setdefault(curve, []).append(number)
-    rows, columns, weights = [], [], []
+    rows: list[int] = []
+    columns: list[int] = []
+    weights: list[float] = []
     for index, checks in by_channel.items():
         numbers = members.get(index, [])
         zero = day.checks[checks[0]].at
@@ -267,8 +264,8 @@ def _plan_drift(
             continue
         check_times = np.array([(day.checks[check].at - zero).total_seconds() for check in checks])
         row, column, weight = interpolation_weights(check_times, np.array(at))
-        rows.extend(np.array(kept)[row])
-        columns.extend(np.array(checks)[column])
-        weights.extend(weight)
+        rows.extend(np.array(kept)[row].tolist())
+        columns.extend(np.array(checks)[column].tolist())
+        weights.extend(weight.tolist())
         undrifted[kept] = 0.0
     return check_curve, sparse_map(rows, columns, weights, (len(peaks), len(day.checks))), undrifted

@@ -178,7 +178,7 @@ def _blank_map(vials: tuple[Vial, ...], analytes: dict[tuple[int, str], int]) ->
         found = [] if vials[place].blank else blanks.get((vials[place].compartment.casefold(), name), [])
         rows += [number] * len(found)
         columns += found
-        weights += [1.0 / len(found)] * len(found)
+        weights += [1.0 / len(found) for _ in found]
     return sparse_map(rows, columns, weights, (len(analytes), len(analytes)))
 
 
@@ -202,6 +202,23 @@ def _last_samplings(
     return last
 
 
+class _Entries:
+    """Entries of a linear map, gathered one by one."""
+
+    def __init__(self) -> None:
+        self._rows: list[int] = []
+        self._columns: list[int] = []
+        self._weights: list[float] = []
+
+    def put(self, row: int, column: int, weight: float) -> None:
+        self._rows.append(row)
+        self._columns.append(column)
+        self._weights.append(weight)
+
+    def matrix(self, shape: tuple[int, int]) -> csr_array:
+        return sparse_map(self._rows, self._columns, self._weights, shape)
+
+
 def _sampling_maps(
     samplings: Samplings,
     last: dict[ProductKey, int],
@@ -215,29 +232,22 @@ def _sampling_maps(
         of_compartment.setdefault((int(samplings.run[number]), samplings.compartment[number]), []).append(
             number
         )
-    mean: tuple[list[int], list[int], list[float]] = ([], [], [])
-    volume: tuple[list[int], list[int], list[float]] = ([], [], [])
-    taken: tuple[list[int], list[int], list[float]] = ([], [], [])
-
-    def put(entries: tuple[list[int], list[int], list[float]], row: int, column: int, weight: float) -> None:
-        for part, item in zip(entries, (row, column, weight), strict=True):
-            part.append(item)  # type: ignore[arg-type]  # the three lists hold int, int, float in this order
-
+    mean, volume, taken = _Entries(), _Entries(), _Entries()
     for row, ((run, compartment, name), number) in enumerate(last.items()):
         places = [place_of[vial] for vial in samplings.vials[number]]
         reporting = [place for place in places if (place, name) in analytes]
         for place in reporting:
-            put(mean, row, analytes[place, name], 1.0 / len(reporting))
-            put(volume, row, place, 1.0 / len(reporting))
+            mean.put(row, analytes[place, name], 1.0 / len(reporting))
+            volume.put(row, place, 1.0 / len(reporting))
         for earlier in of_compartment[run, compartment]:
             if earlier >= number:
                 break
             for vial in samplings.vials[earlier]:
                 if (place_of[vial], name) in analytes:
-                    put(taken, row, analytes[place_of[vial], name], 1.0)
+                    taken.put(row, analytes[place_of[vial], name], 1.0)
     shape = (len(last), len(analytes))
     return (
-        sparse_map(*mean, shape),
-        sparse_map(*volume, (len(last), n_vials)),
-        sparse_map(*taken, shape),
+        mean.matrix(shape),
+        volume.matrix((len(last), n_vials)),
+        taken.matrix(shape),
     )

@@ -111,9 +111,9 @@ def recentred_requests(plan: Plan, requests: Sequence[TraceRequest]) -> dict[int
     readings = read_injections(plan, x, electrical, read_liquids(plan, x, equal))
     tau = np.asarray(readings.mixing_time_second)
     again = {}
-    for number in np.flatnonzero(plan.headspace):
+    for number in np.flatnonzero(plan.headspace).tolist():
         mixed = plan.figures[number].mixed
-        found = tau[plan.gas.injections.of_run(int(number))]
+        found = tau[plan.gas.injections.of_run(number)]
         found = found[np.isfinite(found) & (found > 0)]
         if mixed is None or not found.size:
             continue
@@ -121,7 +121,7 @@ def recentred_requests(plan: Plan, requests: Sequence[TraceRequest]) -> dict[int
         middle = float(np.exp(np.log(found).mean()))
         guess = requests[number].mixing_time_second
         if guess is None or abs(np.log(middle / guess)) > _WELL_INSIDE:
-            again[int(number)] = replace(requests[number], mixing_time_second=middle)
+            again[number] = replace(requests[number], mixing_time_second=middle)
     return again
 
 

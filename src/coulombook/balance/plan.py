@@ -116,14 +116,14 @@ def plan_products(day: Day, gas: GasPlan, liquid: LiquidPlan) -> ProductPlan:
     liquid_entries = [
         (row, sources[key]["liquid"]) for row, key in enumerate(keys) if "liquid" in sources[key]
     ]
-    species = [day.species[name] for _, name in keys]
+    made = [day.species[name] for _, name in keys]
     return ProductPlan(
         np.array([run for run, _ in keys], dtype=np.intp),
         tuple(name for _, name in keys),
         tuple("+".join(sources[key]) for key in keys),
-        tuple(one.group for one in species),
-        np.array([one.electrons for one in species], dtype=float),
-        np.array([one.carbon for one in species], dtype=float),
+        tuple(one.group for one in made),
+        np.array([one.electrons for one in made], dtype=np.float64),
+        np.array([one.carbon for one in made], dtype=np.float64),
         sparse_map(
             [a for a, _ in gas_entries], [b for _, b in gas_entries], 1.0, (len(keys), len(gas.group_run))
         ),
@@ -194,7 +194,7 @@ def _run_blocks(plan: Plan) -> list[Block]:
         "outlet flow": plan.outlet.value,
         "tracer flow": plan.tracer.value,
     }
-    mean = np.array([one.mean_current_ampere for one in plan.figures])
+    mean = np.array([one.charge_coulomb / (one.stop_second - one.start_second) for one in plan.figures])
     noise = np.array([one.noise_weight for one in plan.figures])
     potential = np.array([one.mean_potential_volt for one in plan.figures])
     return [

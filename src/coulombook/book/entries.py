@@ -176,7 +176,7 @@ def _injections(settled: Settled) -> list[Row]:
         (np.sqrt(u**2 + unexplained) * PERCENT).tolist(),
     )
     rows: list[Row] = []
-    for number in np.flatnonzero(gas.electrons > 0):
+    for number in np.flatnonzero(gas.electrons > 0).tolist():
         injection = gas.reading_injection[number]
         rows.append(
             {
