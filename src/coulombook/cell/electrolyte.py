@@ -21,7 +21,8 @@ _STEPS = 50  # of the ionic strength; each gains two digits or more
 def davies_log10_activity(charge: int, ionic_strength_mol_per_litre: float) -> float:
     """Decimal logarithm of an ion's activity coefficient at 25 degC. [1]
 
-    -A z^2 (sqrt(I)/(1 + sqrt(I)) - 0.3 I), z the charge, I the ionic strength. Meant for ionic strengths up to about 0.5 mol/L.
+    -A z^2 (sqrt(I)/(1 + sqrt(I)) - 0.3 I), z the charge, I the ionic strength. Meant for ionic
+    strengths up to about 0.5 mol/L.
     """
     root = math.sqrt(ionic_strength_mol_per_litre)
     return -DAVIES_A * charge**2 * (root / (1.0 + root) - 0.3 * ionic_strength_mol_per_litre)
