@@ -1,0 +1,56 @@
+"""Flammability and exposure limits.
+
+NFPA 497:2008 and IEC 60079-20-1:2010; OSHA 29 CFR 1910.1000 table Z-1 and the NIOSH Pocket Guide (secondary
+text and memory, as the shipped table says).
+"""
+
+from __future__ import annotations
+
+import tomllib
+from importlib.resources import files
+
+from tests.published.reference import case
+
+from coulombook.species import load_species
+
+SHIPPED = tomllib.loads(files("coulombook").joinpath("data", "safety.toml").read_text(encoding="utf-8"))
+COLUMNS = {
+    "osha_twa_ppm": "osha_pel_twa",
+    "niosh_twa_ppm": "niosh_rel_twa",
+    "idlh_ppm": "idlh",
+}
+
+
+def _name(text: str) -> str:
+    species = load_species().find(text.replace("_", " "))
+    assert species is not None
+    return species.name
+
+
+def test_flammability_limits_are_those_of_the_standards() -> None:
+    inputs = case("flammability").inputs
+    shipped = {row["species"]: row for row in SHIPPED["flammability"]}
+    assert {_name(gas) for gas in inputs["gas"]} == set(shipped)
+    for index, gas in enumerate(inputs["gas"]):
+        for standard in ("nfpa", "iec"):
+            expected = [inputs[f"{standard}_{end}"][index] for end in ("lfl", "ufl")]
+            assert shipped[_name(gas)][f"{standard}_percent"] == expected, gas
+
+
+def test_exposure_limits_are_those_of_the_lists() -> None:
+    inputs = case("exposure_limits").inputs
+    shipped = {row["species"]: row for row in SHIPPED["exposure"]}
+    for index, substance in enumerate(inputs["substance"]):
+        # -1 stands for a substance the lists give no limit for; ethylene has none at all
+        numbers = {column: inputs[column_of][index] for column, column_of in COLUMNS.items()}
+        row = shipped.get(_name(substance), {})
+        assert {column: row.get(column, -1) for column in COLUMNS} == numbers, substance
+        short_term = row.get("niosh_ceiling_ppm", row.get("niosh_stel_ppm", -1))
+        assert short_term == inputs["niosh_ceiling_or_stel"][index], substance
+
+
+def test_every_limit_has_a_source_with_its_year() -> None:
+    for source in SHIPPED["source"].values():
+        assert source["text"]
+        assert source["year"] > 2000
+        assert source["mark"]
