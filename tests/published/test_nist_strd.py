@@ -1,8 +1,9 @@
 """Certified linear regressions of the NIST/ITL Statistical Reference Datasets (public domain).
 
-Norris, NoInt1, NoInt2, Pontius, Wampler1 to Wampler5; the latter from Wampler, J. Am. Stat. Assoc. 65
-(1970) 549. Certified by NIST to 15 digits from multiple-precision arithmetic; the tolerances ask for 12 digits of every number. The
-logarithm of the relative error, at most 15 for a number printed with 15 digits, is on x86-64 at the least
+Norris, NoInt1, NoInt2, Pontius, Wampler1 to Wampler5; the latter from Wampler, J. Am. Stat. Assoc. 65 (1970) 549.
+Certified by NIST to 15 digits from multiple-precision arithmetic; the tolerances ask for 12 digits of every
+number. The logarithm of the relative error, at most 15 for a number printed with 15 digits, is on x86-64 at the
+least
 
     Norris 13.9, NoInt1 14.7, NoInt2 14.9, Pontius 13.5, Wampler1 16, Wampler2 13.2, Wampler4 14.4, Wampler5
     13.7.

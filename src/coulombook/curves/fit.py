@@ -24,8 +24,8 @@ FloatArray = NDArray[np.float64]
 # form -> powers of x that are free; the forms a curve may have
 FORMS: dict[str, tuple[int, ...]] = {"line": (0, 1), "line through zero": (1,), "quadratic": (0, 1, 2)}
 
-_REFINEMENTS = 3
-_ROUNDING = float(np.finfo(float).eps)
+_REFINEMENTS = 4
+_HALF_THE_DIGITS = 1e-8
 _SPLITTER = 2.0**27 + 1.0
 
 
@@ -71,20 +71,29 @@ class Curve:
     r_squared: float
 
 
-def _exact_product(a: FloatArray, b: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """a b as the sum of two doubles, without error (Dekker)."""
-    product = a * b
-    a_high = _SPLITTER * a - (_SPLITTER * a - a)
-    b_high = _SPLITTER * b - (_SPLITTER * b - b)
-    a_low, b_low = a - a_high, b - b_high
-    return product, ((a_high * b_high - product) + a_high * b_low + a_low * b_high) + a_low * b_low
+def _split(a: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """High and low half of the digits of each number, whose products with other halves are exact (Dekker)."""
+    shifted = _SPLITTER * a
+    high = shifted - (shifted - a)
+    return high, a - high
 
 
-def _exact_dots(matrix: FloatArray, vector: FloatArray, *more: FloatArray) -> FloatArray:
-    """Rows of ``matrix`` times ``vector``, plus the vectors of ``more``, rounded once."""
-    product, error = _exact_product(matrix, np.broadcast_to(vector, matrix.shape))
-    terms = np.column_stack((product, error, *more))
-    return np.array([math.fsum(row) for row in terms.tolist()])
+class _ExactRows:
+    """A matrix whose products with vectors are rounded once."""
+
+    __slots__ = ("_high", "_low", "_matrix")
+
+    def __init__(self, matrix: FloatArray) -> None:
+        self._matrix = matrix
+        self._high, self._low = _split(matrix)
+
+    def dot(self, vector: FloatArray, *more: FloatArray) -> FloatArray:
+        """Rows times ``vector``, plus the vectors of ``more``."""
+        high, low = _split(vector)
+        product = self._matrix * vector
+        error = ((self._high * high - product) + self._high * low + self._low * high) + self._low * low
+        terms = np.concatenate((product, error, *(one[:, None] for one in more)), axis=1)
+        return np.array([math.fsum(row) for row in terms.tolist()])
 
 
 def _to_plain(powers: tuple[int, ...], centre: float, scale: float) -> FloatArray:
@@ -151,17 +160,20 @@ def fit_polynomial(
 
     design = root[:, None] * x[:, None] ** np.array(powers)
     target = root * y
-    coefficients, residual = np.zeros(size), np.zeros(points)
+    rows, columns = _ExactRows(design), _ExactRows(np.ascontiguousarray(design.T))
+    back = np.linalg.inv(r)  # of a few rows, well conditioned by the scaling
+    along = q.T @ target
+    coefficients, residual = plain @ (back @ along), target - q @ along
     # the augmented system  residual + design b = target,  design^T residual = 0
-    for _ in range(_REFINEMENTS + 1):
-        miss = _exact_dots(design, -coefficients, target, -residual)
-        slant = _exact_dots(design.T, -residual)
-        tilt = np.linalg.solve(r.T, plain.T @ slant)
-        along = q.T @ miss - tilt
-        step = plain @ np.linalg.solve(r, along)
+    for _ in range(_REFINEMENTS):
+        miss = rows.dot(-coefficients, target, -residual)
+        slant = columns.dot(-residual)
+        along = q.T @ miss - back.T @ (plain.T @ slant)
+        step = plain @ (back @ along)
         coefficients = coefficients + step
         residual = residual + miss - q @ along
-        if (np.abs(step) <= _ROUNDING * np.abs(coefficients)).all():
+        # a step multiplies the error by the same small factor each time, so what is left is this one squared
+        if (np.abs(step) <= _HALF_THE_DIGITS * np.abs(coefficients)).all():
             break
 
     freedom = points - size
@@ -172,7 +184,7 @@ def fit_polynomial(
     return PolynomialFit(
         powers=powers,
         coefficients=coefficients,
-        factor=sd * (plain @ np.linalg.inv(r)),
+        factor=sd * (plain @ back),
         degrees_of_freedom=freedom,
         residual_sd=sd,
         r_squared=1.0 - square / total if total > 0.0 else math.nan,

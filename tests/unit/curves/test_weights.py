@@ -39,7 +39,7 @@ def test_few_replicates_share_one_variance_function() -> None:
 
 def test_variance_function_finds_the_scatter_it_was_drawn_from() -> None:
     found = []
-    for seed in range(300):
+    for seed in range(200):
         x, y = _replicates(4, 1000 + seed, 0.2, 0.05)
         found.append(replicate_variance(x, y)[x == 30.0][0])
     # truth 0.04 + (0.05 x 150)^2 = 56.3 at the top; the median of a variance with 3 degrees of freedom alone would lie
@@ -50,7 +50,7 @@ def test_variance_function_finds_the_scatter_it_was_drawn_from() -> None:
 def test_weights_from_few_replicates_do_not_spoil_the_slope() -> None:
     # weighting with single variances of three replicates would make the slope scatter more, not less, than it must
     slopes, single, known = [], [], []
-    for seed in range(300):
+    for seed in range(200):
         x, y = _replicates(3, 5000 + seed, 0.2, 0.05)
         slopes.append(fit_curve(x, y, "line", "replicates").coefficients[1])
         raw = np.array([np.var(y[x == level], ddof=1) for level in x])
