@@ -94,7 +94,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
 
 
 def _run(arguments: Sequence[str]) -> int:
-    parser = _parser()
+    parser = _parser(arguments)
     options, unknown = parser.parse_known_args(arguments)
     if unknown:
         parser.refuse(unknown, arguments)
@@ -316,7 +316,8 @@ class _Version(argparse.Action):
         parser.exit()
 
 
-def _parser() -> _Parser:
+def _parser(arguments: Sequence[str]) -> _Parser:
+    """The parser; of the commands only those named in the arguments get their options, for each option costs time."""
     parser = _Parser(
         prog="coulombook",
         description=_OVERVIEW,
@@ -325,33 +326,41 @@ def _parser() -> _Parser:
         allow_abbrev=False,
     )
     parser.add_argument("--version", action=_Version, nargs=0, help="print the version and leave")
-    commands = parser.add_subparsers(dest="command", title="commands", metavar="COMMAND")
-
-    def command(name: str, short: str, text: str, examples: str) -> argparse.ArgumentParser:
-        return commands.add_parser(
+    commands = parser.add_subparsers(dest="command", title="commands", metavar="COMMAND", prog=parser.prog)
+    for name, short, text, examples, give_options in (
+        ("tally", "compute the ledgers of a day", _TALLY, _TALLY_EXAMPLES, _tally_options),
+        ("check", "say what would be computed and what is missing", _CHECK, _CHECK_EXAMPLES, _check_options),
+        ("new", "lay out an empty day folder", _NEW, _NEW_EXAMPLES, _new_options),
+    ):
+        command = commands.add_parser(
             name, help=short, description=text, epilog=examples, formatter_class=_Help, allow_abbrev=False
         )
+        if name in arguments:
+            give_options(command)
+    return parser
 
-    tally = command("tally", "compute the ledgers of a day", _TALLY, _TALLY_EXAMPLES)
-    tally.add_argument("day", metavar="DAY", help="the day folder")
-    tally.add_argument("--out", metavar="DIR", help="where the results go (default: DAY/results)")
-    _reading_options(tally)
-    tally.add_argument(
+
+def _tally_options(parser: argparse.ArgumentParser) -> None:
+    parser.add_argument("day", metavar="DAY", help="the day folder")
+    parser.add_argument("--out", metavar="DIR", help="where the results go (default: DAY/results)")
+    _reading_options(parser)
+    parser.add_argument(
         "--strict",
         action="store_true",
         help="write nothing and end with status 1 if a number may mislead (a warning)",
     )
-    tally.add_argument("--quiet", action="store_true", help="print nothing but what stopped the tally")
+    parser.add_argument("--quiet", action="store_true", help="print nothing but what stopped the tally")
 
-    check = command("check", "say what would be computed and what is missing", _CHECK, _CHECK_EXAMPLES)
-    check.add_argument("day", metavar="DAY", help="the day folder")
-    _reading_options(check)
-    check.add_argument("--strict", action="store_true", help="end with status 1 for a warning as well")
 
-    new = command("new", "lay out an empty day folder", _NEW, _NEW_EXAMPLES)
-    new.add_argument("folder", metavar="FOLDER", help="the folder to make")
-    new.add_argument("--workbook", action="store_true", help="one workbook instead of CSV files")
-    return parser
+def _check_options(parser: argparse.ArgumentParser) -> None:
+    parser.add_argument("day", metavar="DAY", help="the day folder")
+    _reading_options(parser)
+    parser.add_argument("--strict", action="store_true", help="end with status 1 for a warning as well")
+
+
+def _new_options(parser: argparse.ArgumentParser) -> None:
+    parser.add_argument("folder", metavar="FOLDER", help="the folder to make")
+    parser.add_argument("--workbook", action="store_true", help="one workbook instead of CSV files")
 
 
 def _reading_options(parser: argparse.ArgumentParser) -> None:

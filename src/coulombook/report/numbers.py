@@ -17,9 +17,10 @@ from decimal import ROUND_HALF_EVEN, Decimal
 
 ABSENT = "-"
 
-# Below this share of the value an uncertainty is rounding noise of the arithmetic (an exact fit through exact
-# points), and seven digits or more are what no instrument of this trade can tell apart.
-_NO_MORE_THAN_DIGITS = 7
+# An uncertainty that asks for more digits is rounding noise of the arithmetic (an exact fit through exact
+# points); no instrument of this trade tells the tenth digit.
+_MOST_DIGITS = 9
+_DIGITS_WITHOUT = 6  # of a value whose uncertainty is such noise
 _PLAIN_DIGITS = 4
 # Powers of ten within which a number is written out; beyond, with an exponent.
 _WRITTEN_OUT = range(-4, 6)
@@ -33,8 +34,8 @@ def with_uncertainty(value: float | None, uncertainty: float | None) -> str:
     value : float or None
         In any unit; None and NaN give `ABSENT`.
     uncertainty : float or None
-        Standard uncertainty in the same unit; its sign does not matter. Where it is None, NaN, zero, or so
-        small that the value would need more than seven digits, the value stands alone (see `plain`).
+        Standard uncertainty in the same unit; its sign does not matter. Where it is None, NaN, zero, or so small
+        that the value would need more than nine digits, the value stands alone (see `plain`).
 
     Examples
     --------
@@ -51,8 +52,8 @@ def with_uncertainty(value: float | None, uncertainty: float | None) -> str:
         return f"{plain(value)}(inf)"
     exact, spread = Decimal(repr(float(value))), abs(Decimal(repr(float(uncertainty))))
     place = _two_digits(spread)  # power of ten of the last digit shown
-    if exact.adjusted() - place >= _NO_MORE_THAN_DIGITS and exact:
-        return plain(value, _NO_MORE_THAN_DIGITS - 1)
+    if exact and exact.adjusted() - place >= _MOST_DIGITS:
+        return plain(value, _DIGITS_WITHOUT)
     exact, spread = _rounded(exact, place), _rounded(spread, place)
     order = max(exact.adjusted() if exact else place, spread.adjusted())
     if order in _WRITTEN_OUT:

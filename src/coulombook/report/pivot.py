@@ -58,6 +58,8 @@ def catalyst_tables(book: Book) -> tuple[CatalystTable, ...]:
     """The tables of a book, catalysts in the order of the summary."""
     series, summary, ledger = (list(book.tables[name].records()) for name in ("series", "summary", "ledger"))
     group = {row["product"]: str(row["group"] or "") for row in ledger}
+    # one order for every catalyst, so that the tables can be compared line by line
+    order = {name: place for place, name in enumerate(sorted(group, key=lambda one: _rank(group[one])))}
     pooled = _gathered(series, "catalyst")
     status = _gathered(ledger, "catalyst", "level", "product")
     tables = []
@@ -77,10 +79,8 @@ def catalyst_tables(book: Book) -> tuple[CatalystTable, ...]:
             CatalystTable(
                 _text(catalyst),
                 tuple(
-                    sorted(
-                        ((group.get(one, ""), _text(one)) for (one,) in products),
-                        key=lambda pair: _rank(pair[0]),
-                    )
+                    (group.get(one, ""), _text(one))
+                    for (one,) in sorted(products, key=lambda key: order.get(key[0], len(order)))
                 ),
                 tuple(levels),
             )

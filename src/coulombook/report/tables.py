@@ -5,8 +5,8 @@ Numbers are written so that reading them back gives the same double. An absent v
 Text that came from the bench's files may begin with a sign that makes a spreadsheet take it for a formula.
 Such a cell gets one apostrophe in front, as one would type it to keep a text a text, and likewise after a
 semicolon, tab or line break within the cell, where a spreadsheet set to another separator would begin a new
-cell. A text that is a plain number ("-1.1", the usual level of a series) is no formula and stays as it is.
-`original_text` takes the apostrophes away again, exactly.
+cell. A number, with or without a unit ("-1.1 V", the usual level of a series), is no formula and stays as it
+is. `original_text` takes the apostrophes away again, exactly.
 """
 
 from __future__ import annotations
@@ -21,7 +21,8 @@ _RUNS = "=+\\-@\N{FULLWIDTH EQUALS SIGN}\N{FULLWIDTH PLUS SIGN}\N{FULLWIDTH HYPH
 _BREAK = re.compile(r"([;\t\r\n])")
 _FORMULA = re.compile(rf"([\s\"]*)('*[{_RUNS}])")
 _GUARDED = re.compile(rf"([\s\"]*)'('*[{_RUNS}])")
-_NUMBER = re.compile(r"\s*[+-]?(\d+[.,]?\d*|[.,]\d+)([eE][+-]?\d+)?\s*")
+# A number, with or without a unit behind it: nothing in it that a formula could call or refer to.
+_NUMBER = re.compile(r"\s*[+-]?(\d+[.,]?\d*|[.,]\d+)([eE][+-]?\d+)?[A-Za-z%\s\u00b0\u00b5\u03bc\u03a9]*")
 _QUOTED = re.compile(r"[\",;\t\r\n]|^\s|\s$")
 
 
@@ -35,8 +36,8 @@ def csv_text(table: Table) -> str:
 def csv_cell(cell: Cell) -> str:
     """One cell as it stands in the file.
 
-    >>> csv_cell(0.1), csv_cell(12), csv_cell(None), csv_cell("=2+3"), csv_cell("-1.1"), csv_cell("a, b")
-    ('0.1', '12', '', "'=2+3", '-1.1', '"a, b"')
+    >>> csv_cell(0.1), csv_cell(12), csv_cell(None), csv_cell("=2+3"), csv_cell("-1.1 V"), csv_cell("a, b")
+    ('0.1', '12', '', "'=2+3", '-1.1 V', '"a, b"')
     """
     if cell is None:
         return ""

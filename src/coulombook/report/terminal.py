@@ -139,17 +139,15 @@ def _wrapping(text: str) -> Text:
 def _show_catalyst(table: CatalystTable, console: Console) -> None:
     names = [crop(visible(name), LONGEST_NAME) for _, name in table.products]
     room = console.width - max(map(len, [*_LEVEL_HEAD, *names])) - _GROUP_WIDTH
-    columns = [_column(table, level, aligned=True) for level in table.levels]
-    blocks = _blocks([column.width for column in columns], room)
-    if len(blocks) > 1:
-        # without the padding that sets decimal points under one another more levels may stand side by side
-        narrow = [_column(table, level, aligned=False) for level in table.levels]
-        fewer = _blocks([column.width for column in narrow], room)
-        if len(fewer) < len(blocks):
-            columns, blocks = narrow, fewer
+    # the most spacious layout that needs no more blocks than the tightest
+    layouts = []
+    for aligned, gap in ((True, GAP), (False, GAP), (False, 1)):
+        columns = [_column(table, level, aligned=aligned) for level in table.levels]
+        layouts.append((columns, gap, _blocks([column.width + gap for column in columns], room)))
+    columns, gap, blocks = min(layouts, key=lambda layout: len(layout[2]))
     console.print(Text(visible(table.catalyst, 200), style="bold"))
     for block in blocks:
-        grid = _grid()
+        grid = _grid(gap)
         grid.add_column("\n".join(f"{'':{_GROUP_WIDTH}}{line}" for line in _LEVEL_HEAD), no_wrap=True)
         for column in block:
             grid.add_column(Text("\n".join(columns[column].head)), justify="right", no_wrap=True)
@@ -179,9 +177,9 @@ _GROUP_WIDTH = 3  # the longest group of this trade has two characters, and a bl
 _LEVEL_HEAD = ("level", "E vs RHE / V", "j / mA cm^-2", "runs")
 
 
-def _grid() -> Grid:
+def _grid(gap: int = GAP) -> Grid:
     # no edges, and padding on the right alone: every column costs its width and the gap
-    return Grid(box=box.SIMPLE_HEAD, show_edge=False, padding=(0, GAP - 1, 0, 0), pad_edge=False)
+    return Grid(box=box.SIMPLE_HEAD, show_edge=False, padding=(0, gap - 1, 0, 0), pad_edge=False)
 
 
 def _group_label(group: str) -> str:
@@ -218,7 +216,7 @@ def _blocks(widths: Sequence[int], room: int) -> list[range]:
     for count in range(1, len(widths) + 1):
         ends = [len(widths) * place // count for place in range(count + 1)]
         blocks = [range(first, last) for first, last in pairwise(ends)]
-        if all(sum(widths[column] + GAP for column in block) <= room for block in blocks):
+        if all(sum(widths[column] for column in block) <= room for block in blocks):
             return blocks
     return [range(column, column + 1) for column in range(len(widths))]
 
