@@ -177,11 +177,17 @@ def _along(stretches: Sequence[_Stretch | None], tau_second: float) -> tuple[Flo
     return values, slopes
 
 
-def _checked_times(time_second: FloatArray, start_second: float, at_second: ArrayLike) -> FloatArray:
+def _in_order(start_second: float, at_second: ArrayLike) -> tuple[FloatArray, NDArray[np.intp]]:
+    """The times ascending, and the place of each of the given times among them."""
     at = np.atleast_1d(np.asarray(at_second, dtype=float))
-    if at.size and (not (np.diff(at) >= 0.0).all() or not at[0] >= start_second):
-        raise ValueError(f"the times must ascend and not lie before the start at {start_second:g} s")
-    return at
+    # "not at or after" instead of "before", so that NaN is caught as well
+    early = np.flatnonzero(~(at >= start_second))
+    if early.size:
+        raise ValueError(f"the time {at[early[0]]:g} s is before the start at {start_second:g} s")
+    order = np.argsort(at, kind="stable")
+    place = np.empty_like(order)
+    place[order] = np.arange(order.size)
+    return at[order], place
 
 
 def mixed_current_ampere(
@@ -205,7 +211,7 @@ def mixed_current_ampere(
     start_second : float
         Start of the run, when the headspace holds no product yet. [s]
     at_second : (n_times,) array_like
-        Ascending times (of the injections less the dead time), none before the start or after the trace. [s]
+        Times of the injections less the dead time, in any order, none before the start or after the trace. [s]
     tau_second : float
         Mixing time, headspace volume over actual outlet volume flow. [s]
 
@@ -216,7 +222,7 @@ def mixed_current_ampere(
     Raises
     ------
     ValueError
-        The times do not ascend or lie outside the run or the trace, or tau is not above zero.
+        A time lies before the start or outside the trace, or tau is not above zero.
 
     Examples
     --------
@@ -240,8 +246,9 @@ def mixed_current_with_slope(
     # "not above" instead of "at or below", so that NaN is caught as well
     if not tau_second > 0.0:
         raise ValueError(f"the mixing time is {tau_second:g} s; it must be above zero")
-    at = _checked_times(time_second, start_second, at_second)
-    return _along(_stretches(time_second, current_ampere, start_second, at, tau_second), tau_second)
+    at, place = _in_order(start_second, at_second)
+    value, slope = _along(_stretches(time_second, current_ampere, start_second, at, tau_second), tau_second)
+    return value[place], slope[place]
 
 
 class MixedCurrent:
@@ -279,7 +286,7 @@ class MixedCurrent:
         """The series for the injections of one run; parameters and errors as in `mixed_current_ampere`."""
         if not centre_tau_second > 0.0:
             raise ValueError(f"the mixing time is {centre_tau_second:g} s; it must be above zero")
-        at = _checked_times(time_second, start_second, at_second)
+        at, place = _in_order(start_second, at_second)
         shortest = centre_tau_second * float(np.exp(-_HALF_RANGE))
         stretches = _stretches(time_second, current_ampere, start_second, at, shortest)
         for nodes in _NODES:
@@ -292,7 +299,7 @@ class MixedCurrent:
             size = np.abs(coefficients).max(axis=0)
             if (np.abs(coefficients[-2:]) <= _TOLERANCE * size).all():
                 break
-        return cls(np.full(at.size, np.log(centre_tau_second)), coefficients)
+        return cls(np.full(at.size, np.log(centre_tau_second)), coefficients[:, place])
 
     @classmethod
     def join(cls, parts: Sequence[MixedCurrent]) -> MixedCurrent:
