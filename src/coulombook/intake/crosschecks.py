@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from datetime import datetime
+from typing import TypeVar
 
 from coulombook.balance.readings import (
     Calibration,
@@ -23,6 +24,8 @@ from coulombook.intake.files import did_you_mean
 from coulombook.intake.settings import DayFile
 from coulombook.intake.tables import Default, TypedTable
 
+_Record = TypeVar("_Record", Peak, Signal, Check, Scan)
+
 _FLOW_NEEDED = {
     OutletFlow.INLET: "inlet flow",
     OutletFlow.MEASURED: "outlet flow",
@@ -34,18 +37,19 @@ _FLOW_NEEDED = {
 def unique_words(table: TypedTable, quantities: Sequence[str], what: str, findings: Findings) -> None:
     """Fault a row that repeats the words of an earlier one in all of ``quantities``."""
     columns = [table.words(quantity) for quantity in quantities]
+    folded = zip(*([word.casefold() for word in words] for words in columns), strict=True)
     if not table.columns.get(quantities[0]):
         return
     used = table.yes_no("use", otherwise=True)
     first: dict[tuple[str, ...], int] = {}
-    for place, key in enumerate(zip(*columns, strict=True)):
+    for place, key in enumerate(folded):
         if not key[0] or not used[place]:
             continue
-        folded = tuple(one.casefold() for one in key)
-        earlier = first.setdefault(folded, place)
+        earlier = first.setdefault(key, place)
         if earlier != place:
+            written = [words[place] for words in columns]
             shown = ", ".join(
-                f"{quantity} '{one}'" for quantity, one in zip(quantities, key, strict=True) if one
+                f"{quantity} '{one}'" for quantity, one in zip(quantities, written, strict=True) if one
             )
             findings.add(
                 "duplicate",
@@ -53,6 +57,28 @@ def unique_words(table: TypedTable, quantities: Sequence[str], what: str, findin
                 f"{what} is entered twice",
                 "delete one of the rows, or correct its name",
                 found=f"{shown}, as in row {table.row_numbers[earlier]}",
+                expected=f"{what} once",
+            )
+
+
+def unique_records(
+    records: Sequence[_Record],
+    key: Callable[[_Record], tuple[str, ...]],
+    quantity: str,
+    what: str,
+    findings: Findings,
+) -> None:
+    """Fault a record with the key of an earlier one: names are the trade names, so that CO and carbon monoxide meet."""
+    first: dict[tuple[str, ...], _Record] = {}
+    for one in records:
+        earlier = first.setdefault(key(one), one)
+        if earlier is not one:
+            findings.add(
+                "duplicate",
+                one.origin.of(quantity),
+                f"{what} is entered twice",
+                "delete one of the rows, or correct its names",
+                found=f"{', '.join(part for part in key(one) if part)}, as in row {earlier.origin.row}",
                 expected=f"{what} once",
             )
 
@@ -75,7 +101,8 @@ def known_names(
                 f"no {what} of that name is in {defined_in}",
                 f"correct the name, or add it to {defined_in}{did_you_mean(word, known)}",
                 found=f"'{word}'{more}",
-                expected=f"a {what} of {defined_in}",
+                expected=", ".join(f"'{one}'" for one in known[:5]) + (", ..." if len(known) > 5 else "")
+                or f"a {what} of {defined_in}",
             )
 
 
@@ -119,7 +146,7 @@ def flows(
     with_peaks = {peak.run for peak in peaks if peak.used}
     attribute = quantity.replace(" ", "_")
     lacking = [run for run in runs if run.name in with_peaks and getattr(run, attribute) is None]
-    if not lacking:
+    if not lacking or quantity in table.unread:
         return
     text = f"outlet_flow = '{settings.outlet_flow}' needs the {quantity} of every run with gas peaks"
     expected = f"'{quantity} / sccm', or another unit of flow"

@@ -7,7 +7,7 @@ from dataclasses import dataclass, replace
 from functools import partial
 from pathlib import Path
 
-from coulombook.balance.readings import Calibration, Day, Peak, Run, Scan, Signal, Trace, Voltammogram
+from coulombook.balance.readings import Calibration, Check, Day, Peak, Run, Scan, Signal, Trace, Voltammogram
 from coulombook.findings import DayFaults, Findings
 from coulombook.intake import crosschecks, records, schema
 from coulombook.intake.calibration import find_calibrations
@@ -47,12 +47,18 @@ class DaySource:
     _folder: Folder
     _calibration_folders: tuple[Folder, ...]
     _options: TraceOptions
+    _long_byte: int  # size of all traces and voltammograms together
 
     def trace(self, run: Run) -> Trace:
         """The potentiostat log of a run, in SI. Raises `DayFaults` with every fault of the file."""
         findings = Findings()
         read = read_trace(
-            self._folder, self._folder.root / run.trace, run.electrode_area_m2, self._options, findings
+            self._folder,
+            self._folder.root / run.trace,
+            run.electrode_area_m2,
+            self._options,
+            findings,
+            self._long_byte,
         )
         if read is None:
             raise DayFaults(tuple(findings))
@@ -62,7 +68,12 @@ class DaySource:
         """The voltammogram of a row of ``scans``, in SI. Raises `DayFaults` with every fault of the file."""
         findings = Findings()
         read = read_voltammogram(
-            self._folder, self._folder.root / scan.file, scan.electrode_area_m2, self._options, findings
+            self._folder,
+            self._folder.root / scan.file,
+            scan.electrode_area_m2,
+            self._options,
+            findings,
+            self._long_byte,
         )
         if read is None:
             raise DayFaults(tuple(findings))
@@ -100,7 +111,7 @@ def open_day(
     if not home.root.is_dir():
         findings.add("missing-file", str(folder), "there is no such day folder", "correct the path",
                      found="nothing there", expected="a folder with day.toml, runs.csv and traces")  # fmt: skip
-        return DaySource(None, (), home, (), TraceOptions({}))
+        return DaySource(None, (), home, (), TraceOptions({}), 0)
     before = len(findings.stops)
     file = _settings(home, known, findings)
     tables, table_names = _tables(home, file, findings)
@@ -112,7 +123,8 @@ def open_day(
     )
     options = file.traces if file else TraceOptions({})
     whole = day if len(findings.stops) == before else None
-    return DaySource(whole, files, home, calibrations, options)
+    long_byte = sum(path.stat().st_size for path in long_files)
+    return DaySource(whole, files, home, calibrations, options, long_byte)
 
 
 def _settings(home: Folder, species: SpeciesTable, findings: Findings) -> DayFile | None:
@@ -291,6 +303,7 @@ def _day(
         broken = frozenset(liquid.words("vial")[place] for place in liquid.broken)
         if "analyte" in liquid.heads and "vial" in liquid.heads:
             crosschecks.standards(vials, signals, broken, findings)
+    _check_doubles(peaks, signals, scans, checks, findings)
     crosschecks.windows(runs, scans, findings)
     if run_table is not None:
         crosschecks.starting_times(runs, peaks, checks, run_table, findings)
@@ -339,19 +352,40 @@ def _check_names(tables: Mapping[str, TypedTable], findings: Findings) -> None:
     gas, liquid = tables.get("gas"), tables.get("liquid")
     run_names = [name for name in runs.words("run") if name] if runs is not None else []
     for table in (gas, vials):
-        if table is not None and run_names:
+        if table is not None and runs is not None and "run" in runs.heads:
             crosschecks.known_names(table, "run", run_names, "run", "runs", findings)
-    if gas is not None:
-        quantities = ("run", "injection", "channel", "analyte")
-        crosschecks.unique_words(gas, quantities, "the peak", findings)
     if vials is not None:
         crosschecks.unique_words(vials, ("vial",), "the vial", findings)
         if liquid is not None:
             names = [name for name in vials.words("vial") if name]
-            if names:
+            if "vial" in vials.heads:
                 crosschecks.known_names(liquid, "vial", names, "vial", "vials", findings)
-    if liquid is not None:
-        crosschecks.unique_words(liquid, ("vial", "analyte", "signal"), "the signal", findings)
+
+
+def _check_doubles(
+    peaks: Sequence[Peak],
+    signals: Sequence[Signal],
+    scans: Sequence[Scan],
+    checks: Sequence[Check],
+    findings: Findings,
+) -> None:
+    used = [one for one in peaks if one.used]
+    crosschecks.unique_records(
+        used, lambda one: (one.run, one.injection, one.channel, one.analyte), "analyte", "the peak", findings
+    )
+    crosschecks.unique_records(
+        signals, lambda one: (one.vial, one.analyte, one.signal), "analyte", "the signal", findings
+    )
+    crosschecks.unique_records(
+        scans,
+        lambda one: (one.file, "" if one.cycle is None else f"cycle {one.cycle:g}"),
+        "file",
+        "the scan",
+        findings,
+    )
+    crosschecks.unique_records(
+        checks, lambda one: (one.at.isoformat(), one.channel, one.analyte), "analyte", "the check", findings
+    )
 
 
 def _check_settings(

@@ -20,6 +20,7 @@ class Folder:
     root: Path
     label: str = ""  # "" for the day folder: its files are named relative to it
     read: list[Path] = field(default_factory=list)
+    _true_root: Path | None = None  # the root with its links followed, once it is asked for
 
     def name_of(self, path: Path) -> str:
         """The name of a file in messages and origins, with forward slashes."""
@@ -38,7 +39,9 @@ class Folder:
     def holds(self, path: Path) -> bool:
         """Whether a path, its links followed, still lies under the folder."""
         try:
-            return path.resolve().is_relative_to(self.root.resolve())
+            if self._true_root is None:
+                self._true_root = self.root.resolve()
+            return path.resolve().is_relative_to(self._true_root)
         except (OSError, RuntimeError):  # a loop of links
             return False
 
@@ -63,7 +66,14 @@ def read_bytes(folder: Folder, path: Path, limit_byte: int, findings: Findings) 
         return None
     try:
         if not path.is_file():
-            findings.add("missing-file", name, "there is no such file", "add the file", found="nothing there")
+            findings.add(
+                "missing-file",
+                name,
+                "there is no such file",
+                "add the file",
+                found="nothing there" if not path.exists() else "something that is no file",
+                expected=f"the file '{name}'",
+            )
             return None
         size = path.stat().st_size
         if size > limit_byte:
@@ -91,5 +101,6 @@ def unreadable(findings: Findings, where: object, found: str, expected: str, men
 
 def did_you_mean(text: str, known: Sequence[str]) -> str:
     """The last words of a mend line: the nearest known name, or nothing."""
-    near = nearest(text, known)
+    # half of a short name is a single letter
+    near = nearest(text, known, cutoff=0.5 if len(text) < 4 else 0.6)
     return f"; did you mean '{near}'?" if near else ""

@@ -94,7 +94,12 @@ def _grid(
     heads: Sequence[str],
     rows: Sequence[tuple[int, Sequence[Cell]]],
 ) -> Grid:
-    kept = [(number, cells) for number, cells in rows if not all(map(is_blank, cells))]
+    # cells of text are stripped already, so that any() sees blank rows; it would miss a lone 0 in a workbook
+    kept = [
+        (number, cells)
+        for number, cells in rows
+        if (any(cells) if sheet is None else not all(map(is_blank, cells)))
+    ]
     width = len(heads)
     while width and not heads[width - 1]:
         width -= 1

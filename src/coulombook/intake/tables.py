@@ -15,6 +15,7 @@ from coulombook.intake.schema import Column, Content, Schema
 from coulombook.units import Conversion, UnitError, conversion, nearest, parse_head
 
 _NUMBER = re.compile(r"[+-]?(\d+([.,]\d*)?|[.,]\d+)([eE][+-]?\d+)?")
+_PLAIN = re.compile(r"[0-9+\-.,eE\n]*", re.ASCII)
 _YES = frozenset(("yes", "y", "true", "1"))
 _NO = frozenset(("no", "n", "false", "0"))
 _LONGEST_QUOTE = 60  # characters of a cell shown in a message
@@ -44,6 +45,7 @@ class TypedTable:
     columns: dict[str, list[object]] = field(default_factory=dict)
     flow_kinds: dict[str, list[str | None]] = field(default_factory=dict)
     broken: set[int] = field(default_factory=set)
+    unread: set[str] = field(default_factory=set)  # quantities whose head has a fault
     carried: dict[str, tuple[str, ...]] = field(default_factory=dict)
 
     def __len__(self) -> int:
@@ -130,6 +132,14 @@ def typed_table(
             continue
         cells = [row[place] if place < len(row) else None for row in grid.rows]
         _read_column(grid, column, grid.heads[place], cells, default, unused, decimal_comma, table, findings)
+    if unused:
+        rows = ", ".join(str(table.row_numbers[place]) for place in sorted(unused)[:10])
+        findings.add(
+            "left-out",
+            Origin(table.file, table.sheet),
+            f"{len(unused)} row{'s are' if len(unused) > 1 else ' is'} marked unused (row {rows}"
+            f"{', ...' if len(unused) > 10 else ''}) and left out",
+        )
     return table
 
 
@@ -276,6 +286,7 @@ def _read_column(
     if column.content is Content.NUMBER:
         values = _numbers(column, cells, unused, decimal_comma, table, findings)
         if how is None:
+            table.unread.add(quantity)
             values = [None] * len(cells)
         else:
             # a unit that is SI already leaves every digit as it is
@@ -357,6 +368,9 @@ def _numbers(
     findings: Findings,
 ) -> list[object]:
     """The numbers of a column as written, None for blanks and faults."""
+    plain = _all_plain(cells, decimal_comma)
+    if plain is not None:
+        return plain
     values: list[object] = []
     for place, cell in enumerate(cells):
         if isinstance(cell, str):
@@ -394,12 +408,27 @@ def _decimal_comma(grid: Grid, schema: Schema, places: Mapping[str, int]) -> boo
     commas = points = 0
     for quantity, place in places.items():
         if schema.by_quantity[quantity].content is Content.NUMBER:
-            for row in grid.rows:
-                cell = row[place] if place < len(row) else None
-                if isinstance(cell, str) and _NUMBER.fullmatch(cell):
-                    commas += "," in cell
-                    points += "." in cell
+            texts = [cell for row in grid.rows if place < len(row) and isinstance(cell := row[place], str)]
+            numbers = "\n".join(texts)
+            if "," in numbers:
+                numbers = "\n".join(cell for cell in texts if _NUMBER.fullmatch(cell))
+            commas += numbers.count(",")
+            points += numbers.count(".")
     return commas > points
+
+
+def _all_plain(cells: Sequence[Cell], decimal_comma: bool) -> list[object] | None:
+    """The numbers of a column in which every cell is plain digits, sign, decimal sign and exponent; else None."""
+    if not all(type(cell) is str for cell in cells):
+        return None
+    joined = "\n".join(cells)  # type: ignore[arg-type]  # every cell was seen to be text
+    if not _PLAIN.fullmatch(joined) or ("." if decimal_comma else ",") in joined:
+        return None
+    try:
+        values = list(map(float, joined.replace(",", ".").split("\n")))
+    except ValueError:
+        return None
+    return list(values) if all(map(math.isfinite, values)) else None
 
 
 def _number_of_text(text: str, decimal_comma: bool) -> float | None:
@@ -420,7 +449,8 @@ def _check_range(
     findings: Findings,
 ) -> None:
     allowed = column.range
-    if allowed is None:
+    numbers = [value for value in values if isinstance(value, float)]
+    if allowed is None or not numbers or (allowed.holds(min(numbers)) and allowed.holds(max(numbers))):
         return
     for place, value in enumerate(values):
         if isinstance(value, float) and not allowed.holds(value):

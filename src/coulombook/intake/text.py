@@ -76,7 +76,8 @@ def lines_of(text: str) -> list[str]:
     if longest > LONGEST_LINE:
         row = next(number for number, line in enumerate(lines, 1) if len(line) == longest)
         raise UnreadableText(
-            f"a line of {longest} characters in row {row}", f"lines of at most {LONGEST_LINE} characters"
+            f"a line of more than {LONGEST_LINE} characters in row {row}",
+            f"lines of at most {LONGEST_LINE} characters",
         )
     return lines
 
@@ -117,12 +118,14 @@ def guess_separator(lines: Sequence[str]) -> str:
 
 def rows_below(lines: Sequence[str], head_place: int, separator: str) -> list[tuple[int, list[str]]]:
     """Numbered rows from the head line on; a quoted cell may hold line ends, and is one row as in a spreadsheet."""
-    reader = csv.reader(io.StringIO("".join(lines[head_place:]), newline=""), delimiter=separator)
+    source = io.StringIO("".join(lines[head_place:]), newline="")
+    # strict: a quote that never closes would swallow every row below it
+    reader = csv.reader(source, delimiter=separator, strict=True)
+    rows: list[tuple[int, list[str]]] = []
     try:
-        return [
-            (head_place + 1 + offset, [cell.strip() for cell in cells]) for offset, cells in enumerate(reader)
-        ]
+        for number, cells in enumerate(reader, head_place + 1):
+            rows.append((number, [cell.strip() for cell in cells]))
     except csv.Error as error:
-        raise UnreadableText(
-            f"{error} in row {head_place + reader.line_num}", "cells with closed quotes"
-        ) from None
+        row = head_place + 1 + len(rows)
+        raise UnreadableText(f"{error} in row {row}", "quotes that open and close around a cell") from None
+    return rows

@@ -6,11 +6,10 @@ finds something wrong, a slow reader goes through the file row by row and names 
 
 from __future__ import annotations
 
-import io
 import re
 import sys
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
 
@@ -28,8 +27,9 @@ from coulombook.units import UnitError, conversion, nearest, parse_head
 HEAD_BYTE = 65_536
 _LONGEST_HEAD_BYTE = 4_194_304  # instruments that write their whole method above the heads stay well below
 LARGEST_TRACE_BYTE = 4_000_000_000
-# Without pandas at hand, its import (0.3 s) is paid back by its speed from about this size on: 3 ms/MB against 1 ms/MB.
-PANDAS_PAYS_BYTE = 60_000_000
+# Without pandas at hand, its import is paid back by its speed from about this size on: measured, numpy takes three to
+# four times as long for a megabyte, and the import as long as 100 MB with pandas or 30 MB with numpy.
+PANDAS_PAYS_BYTE = 50_000_000
 
 _BRACKET_UNIT = re.compile(r"(.*?)\s*[\[(]\s*([^\[\]()]*?)\s*[\])]")
 _DECIMAL_COMMA = re.compile(r"[+-]?\d*,\d+([eE][+-]?\d+)?")
@@ -51,10 +51,19 @@ class Layout:
 
 
 def read_trace(
-    folder: Folder, path: Path, area_m2: float, options: TraceOptions, findings: Findings
+    folder: Folder,
+    path: Path,
+    area_m2: float,
+    options: TraceOptions,
+    findings: Findings,
+    all_byte: int = 0,
 ) -> Trace | None:
-    """A potentiostat log in SI, or None after a fault. ``area_m2`` turns a current density into a current."""
-    read = _read(folder, path, schema.TRACE, options, "broken-trace", area_m2, findings)
+    """A potentiostat log in SI, or None after a fault.
+
+    ``area_m2`` turns a current density into a current. ``all_byte`` is the size of all the files that will be read,
+    for the choice of the reader.
+    """
+    read = _read(folder, path, schema.TRACE, options, "broken-trace", area_m2, all_byte, findings)
     if read is None:
         return None
     values, layout = read
@@ -67,13 +76,18 @@ def read_trace(
 
 
 def read_voltammogram(
-    folder: Folder, path: Path, area_m2: float, options: TraceOptions, findings: Findings
+    folder: Folder,
+    path: Path,
+    area_m2: float,
+    options: TraceOptions,
+    findings: Findings,
+    all_byte: int = 0,
 ) -> Voltammogram | None:
     """A voltammogram in SI, or None after a fault.
 
     Heads given in [read.traces] are understood here too, for both mostly come from the same instrument.
     """
-    read = _read(folder, path, schema.VOLTAMMOGRAM, options, "broken-scan", area_m2, findings)
+    read = _read(folder, path, schema.VOLTAMMOGRAM, options, "broken-scan", area_m2, all_byte, findings)
     if read is None:
         return None
     values, _ = read
@@ -87,6 +101,7 @@ def _read(
     options: TraceOptions,
     broken: str,
     area_m2: float,
+    all_byte: int,
     findings: Findings,
 ) -> tuple[dict[str, FloatArray], Layout] | None:
     name = folder.name_of(path)
@@ -103,7 +118,7 @@ def _read(
         if layout is None or how is None:
             findings.extend(own)
             return None
-        values = _fast(path, size, layout)
+        values = _fast(path, max(size, all_byte), layout)
         if values is None:
             values = _slow(path, name, layout, broken, own)
     except FileNotFoundError:
@@ -161,13 +176,15 @@ def _layout(
         return None
     below = [line for line in lines[place + 1 : place + 201] if line.strip()]
     cells = [text.split_line(line, separator) for line in below]
+    if _report_overlong(findings, name, heads, list(enumerate(cells, place + 2))):
+        return None
     used = [row[column] for row in cells for column in columns.values() if column < len(row)]
     decimal = options.decimal or ("," if any(map(_DECIMAL_COMMA.fullmatch, used)) else ".")
     if separator == "," and decimal == "," and not any('"' in line for line in below):
         decimal = "."
     quotes = any('"' in line for line in below)
     # a stray quote in the free text would make a fast reader that minds quotes swallow rows
-    careful = encoding == "utf-16" or (quotes and any('"' in line for line in lines[:place]))
+    careful = quotes and any('"' in line for line in lines[:place])
     return Layout(encoding, separator, decimal, place + 1, quotes, tuple(heads), columns, careful)
 
 
@@ -353,14 +370,37 @@ def _report_empty(findings: Findings, broken: str, name: str) -> None:
     )
 
 
+def _report_overlong(
+    findings: Findings, name: str, heads: Sequence[str], rows: Sequence[tuple[int, Sequence[str]]]
+) -> bool:
+    """Fault rows with more cells than heads: a decimal comma between commas would shift every number unseen."""
+    wrong = [
+        (number, cells) for number, cells in rows if len(cells) > len(heads) and any(cells[len(heads) :])
+    ]
+    if not wrong:
+        return False
+    number, cells = wrong[0]
+    more = f"; {len(wrong) - 1} more rows are so" if len(wrong) > 1 else ""
+    findings.add(
+        "unreadable-file",
+        Origin(name, None, number),
+        "the row has more cells than there are heads",
+        "write decimals with a point, or put semicolons between the cells",
+        found=f"{len(cells)} cells{more}",
+        expected=f"{len(heads)} cells",
+    )
+    return True
+
+
 # --- reading the body ---
 
 
-def _fast(path: Path, size: int, layout: Layout) -> dict[str, FloatArray] | None:
+def _fast(path: Path, all_byte: int, layout: Layout) -> dict[str, FloatArray] | None:
     """The columns read by the fastest reader at hand; None when the slow reader must look."""
     if layout.careful:
         return None
-    with_pandas = "pandas" in sys.modules or size >= PANDAS_PAYS_BYTE
+    # a text in UTF-16 must be decoded in any case, which is what pandas would save
+    with_pandas = layout.encoding == "utf-8" and ("pandas" in sys.modules or all_byte >= PANDAS_PAYS_BYTE)
     try:
         values = _with_pandas(path, layout) if with_pandas else _with_numpy(path, layout)
     except (ValueError, OverflowError, IndexError):
@@ -400,11 +440,10 @@ def _with_pandas(path: Path, layout: Layout) -> dict[str, FloatArray]:
 
 
 def _with_numpy(path: Path, layout: Layout) -> dict[str, FloatArray]:
-    data = path.read_bytes()
-    if b"\0" in data:
+    # surrogates keep bytes that are no text from becoming anything a number could hold
+    body = path.read_bytes().decode(layout.encoding, "surrogateescape")
+    if "\0" in body:
         raise ValueError("binary data")
-    # surrogates keep bytes that are no UTF-8 from becoming anything a number could hold
-    body = data.decode("utf-8", "surrogateescape")
     start = 0
     for _ in range(layout.head_row):
         end = _LINE_END.search(body, start)
@@ -413,20 +452,23 @@ def _with_numpy(path: Path, layout: Layout) -> dict[str, FloatArray]:
         start = end.end()
     body = body[start:]
     if layout.decimal == ",":
-        body = body.replace(",", ".") if layout.separator != "," else body
+        if "." in body or layout.separator == ",":
+            raise ValueError("two decimal signs")
+        body = body.replace(",", ".")
     if "\r" in body:
         body = body.replace("\r\n", "\n").replace("\r", "\n")
     if not body.strip():
         raise ValueError("no rows")
-    quotechar = '"' if layout.quotes else None
-    if layout.quotes and layout.decimal == "," and layout.separator == ",":
-        raise ValueError("quoted decimal commas")
+    lines = [line for line in body.split("\n") if line.strip()]
+    # loadtxt picks its columns and is blind to extra cells; rows of one width are what the heads promise
+    if not layout.quotes and body.count(layout.separator) != len(lines) * lines[0].count(layout.separator):
+        raise ValueError("rows of several widths")
     table = np.loadtxt(
-        io.StringIO(body),
+        lines,
         delimiter=layout.separator,
         comments=None,
         usecols=list(layout.columns.values()),
-        quotechar=quotechar,
+        quotechar='"' if layout.quotes else None,
         ndmin=2,
     )
     return {quantity: np.ascontiguousarray(table[:, place]) for place, quantity in enumerate(layout.columns)}
@@ -447,6 +489,14 @@ def _slow(
     if not rows:
         _report_empty(findings, broken, name)
         return None
+    if _report_overlong(findings, name, layout.heads, rows):
+        return None
+    if layout.separator != ",":
+        # the first rows may have held whole numbers only
+        used = [cells[place] for _, cells in rows for place in layout.columns.values() if place < len(cells)]
+        commas = sum("," in cell for cell in used)
+        if commas > sum("." in cell for cell in used):
+            layout = replace(layout, decimal=",")
     values: dict[str, FloatArray] = {}
     faults = 0
     for quantity, place in layout.columns.items():

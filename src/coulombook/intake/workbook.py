@@ -174,4 +174,4 @@ def _trimmed(cells: Sequence[Cell]) -> Sequence[Cell]:
 
 def _first_line(error: BaseException) -> str:
     lines = str(error).strip().splitlines()
-    return lines[0][:120] if lines else type(error).__name__
+    return lines[0][:1].lower() + lines[0][1:120] if lines else type(error).__name__
