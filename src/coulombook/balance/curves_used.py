@@ -82,7 +82,7 @@ class CurvesUsed:
             )
             return None
         try:
-            return fit_curve(standards.x, standards.y, standards.options.form, standards.options.weights)
+            curve = fit_curve(standards.x, standards.y, standards.options.form, standards.options.weights)
         except ValueError as error:
             self._findings.add(
                 "broken-curve",
@@ -93,6 +93,14 @@ class CurvesUsed:
                 f"weights '{standards.options.weights}'",
             )
             return None
+        if curve.degrees_of_freedom == 0:
+            self._findings.add(
+                "curve-without-scatter",
+                where,
+                f"{name} has as many coefficients as standards; its uncertainty is unknown and was taken as zero",
+                "add standards or replicates",
+            )
+        return curve
 
     def coefficients(self) -> tuple[FloatArray, FloatArray, FloatArray]:
         """a0, a1, a2 of the used curves, followed by the line of slope 1 (index -1 of each array)."""

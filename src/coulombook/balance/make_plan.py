@@ -34,21 +34,26 @@ def trace_requests(day: Day, injections: Injections, samplings: Samplings) -> li
             samplings.time_second[samplings.run == number],
             settings.current_window_second,
             settings.dead_time_second,
-            _mixing_time_guess(run, settings.standard_pressure_pascal / settings.standard_temperature_kelvin),
+            _mixing_time_guess(
+                run,
+                len(injections.of_run(number)),
+                settings.standard_pressure_pascal / settings.standard_temperature_kelvin,
+            ),
         )
         for number, run in enumerate(day.runs)
     ]
 
 
-def _mixing_time_guess(run: Run, standard_pascal_per_kelvin: float) -> float | None:
-    """Time constant of the headspace if the outlet flow were the flow entered. [s]"""
+def _mixing_time_guess(run: Run, count: int, standard_pascal_per_kelvin: float) -> FloatArray | None:
+    """Time constant of the headspace if the outlet flow were the flow entered, for ``count`` injections. [s]"""
     if run.headspace_m3 is None:
         return None
     flow = run.outlet_flow or run.inlet_flow
     if flow is None or flow.kind is FlowKind.MOLAR or not flow.value > 0:
-        return _ANY_MIXING_TIME
+        return np.full(count, _ANY_MIXING_TIME)
     swelling = standard_pascal_per_kelvin * run.temperature_kelvin / run.pressure_pascal
-    return run.headspace_m3 / (flow.value * (swelling if flow.kind is FlowKind.STANDARD else 1.0))
+    volume_flow = flow.value * (swelling if flow.kind is FlowKind.STANDARD else 1.0)
+    return np.full(count, run.headspace_m3 / volume_flow)
 
 
 def make_plan(
@@ -112,21 +117,26 @@ def recentred_requests(plan: Plan, requests: Sequence[TraceRequest]) -> dict[int
     tau = np.asarray(readings.mixing_time_second)
     again = {}
     for number in np.flatnonzero(plan.headspace).tolist():
-        mixed = plan.figures[number].mixed
         found = tau[plan.gas.injections.of_run(number)]
-        found = found[np.isfinite(found) & (found > 0)]
-        if mixed is None or not found.size:
-            continue
-        # well inside the range, so that draws and derivatives stay in it
-        middle = float(np.exp(np.log(found).mean()))
         guess = requests[number].mixing_time_second
-        if guess is None or abs(np.log(middle / guess)) > _WELL_INSIDE:
-            again[number] = replace(requests[number], mixing_time_second=middle)
+        if guess is None or not found.size:
+            continue
+        found = np.where(np.isfinite(found) & (found > 0), found, guess)
+        middle = np.full(found.shape, np.exp(np.log(found).mean()))
+        # one centre for the run's injections saves passes over its log, as long as it stays near each of them
+        better = middle if _near(found, middle) else found
+        if not _near(better, guess):
+            again[number] = replace(requests[number], mixing_time_second=better)
     return again
 
 
-# the interpolation of the mixed current reaches a factor 1.5 (0.405 in ln) either side of its centre
+# the interpolation of the mixed current reaches a factor 1.5 (0.405 in ln) either side of its centre; staying near it
+# leaves room for the draws of a Monte Carlo
 _WELL_INSIDE = 0.1
+
+
+def _near(tau_second: FloatArray, centre_second: FloatArray) -> bool:
+    return bool((np.abs(np.log(tau_second / centre_second)) <= _WELL_INSIDE).all())
 
 
 def _equal(group: IntArray, groups: int) -> FloatArray:

@@ -22,7 +22,9 @@ class TraceRequest:
     sampling_time_second: FloatArray  # (m,) infinite: end of the window
     current_window_second: float
     dead_time_second: float
-    mixing_time_second: float | None  # a guess of the headspace's time constant; None without headspace
+    mixing_time_second: (
+        FloatArray | None
+    )  # (k,) guesses of the headspace's time constant; None without headspace
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -88,7 +90,7 @@ def figures_of(trace: Trace, request: TraceRequest) -> TraceFigures:
             mean = seen[usable]
             slope[usable] = (moves_high * (last - mean) - moves_low * (first - mean)) / (b - a)
     elif len(moment):
-        mixed = MixedCurrent.of_trace(time, trace.current_ampere, start, held, request.mixing_time_second)
+        mixed = _mixed(trace, start, held, request.mixing_time_second)
         seen[usable], weight[usable], slope[usable] = now[usable], 0.0, 0.0
     until = np.clip(request.sampling_time_second, None, stop)
     sampled = np.maximum(until, start)
@@ -108,4 +110,17 @@ def figures_of(trace: Trace, request: TraceRequest) -> TraceFigures:
         -current.integral(np.full(sampled.shape, start), sampled),
         until - start,
         mixed,
+    )
+
+
+def _mixed(trace: Trace, start: float, at: FloatArray, centre: FloatArray) -> MixedCurrent:
+    """Current that a headspace remembers at each injection; one pass over the log per distinct guess."""
+    time, current = trace.time_second, trace.current_ampere
+    if np.ptp(centre) == 0:
+        return MixedCurrent.of_trace(time, current, start, at, float(centre[0]))
+    return MixedCurrent.join(
+        [
+            MixedCurrent.of_trace(time, current, start, at[k : k + 1], float(tau))
+            for k, tau in enumerate(centre)
+        ]
     )

@@ -194,6 +194,14 @@ def report_doubts(settled: Settled, status: list[str], closure: list[str], findi
                 f"FE comes out as {efficiency[row] * 100:.3g} %; it is counted as it is",
                 "look at the blank, the curve's intercept and the integration limits",
             )
+    for declared, moved in zip(plan.settings.declared, settled.inputs.moved, strict=True):
+        if not moved:
+            findings.add(
+                "uncertainty-not-used",
+                declared.origin,
+                f"the uncertainty of {declared.quantity} (shared: {declared.shared}) moves no result of this day",
+                "check the quantity and the sharing, or take the entry out",
+            )
     total = nominal(outcome.total)
     has_products = np.bincount(plan.products.run, minlength=len(plan.runs)) > 0
     u = standard_uncertainty(outcome.total)
@@ -209,7 +217,7 @@ def report_doubts(settled: Settled, status: list[str], closure: list[str], findi
             findings.add(
                 "balance-open",
                 f"run {run.name}",
-                f"total FE is {total[number] * 100:.1f} % with a standard uncertainty of {u[number] * 100:.2g} %: "
+                f"total FE is {total[number] * 100:.1f} % with a standard uncertainty of {u[number] * 100:#.2g} %: "
                 f"{closure[number]}",
                 "check outlet flow, window, curves and internal standard; declare the uncertainties that are missing",
             )

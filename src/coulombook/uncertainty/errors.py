@@ -84,13 +84,13 @@ class Inputs:
     """The blocks as numbers for the measurement function.
 
     ``numbers`` holds a `Linearised` for every block that carries an error and a plain array for the rest;
-    ``sources`` names each error column; ``unused`` lists declarations that moved nothing.
+    ``sources`` names each error column; ``moved`` tells of each declaration whether it moved anything.
     """
 
     numbers: Mapping[str, Number]
     nominal: Mapping[str, FloatArray]
     sources: tuple[Source, ...]
-    unused: tuple[Declaration, ...]
+    moved: tuple[bool, ...]
     reserved: int  # first of the reserved columns
 
     def draw(self, normals: FloatArray) -> dict[str, FloatArray]:
@@ -135,12 +135,11 @@ def build_inputs(
     for block in blocks:
         by_quantity.setdefault(block.quantity, []).append(block)
     columns = _Columns()
-    unused = []
+    moved = []
     for declaration in declarations:
         if declaration.shared not in (DAY, RUN, READING):
             raise ValueError(f"shared must be day, run or reading, not {declaration.shared!r}")
-        if not _declare(columns, by_quantity.get(declaration.quantity, ()), declaration):
-            unused.append(declaration)
+        moved.append(_declare(columns, by_quantity.get(declaration.quantity, ()), declaration))
     for group in correlated:
         first = columns.open(group.source, group.factor.shape[1])
         for (name, element), row in zip(group.rows, group.factor, strict=True):
@@ -159,7 +158,7 @@ def build_inputs(
         shape = (len(block.values), len(columns.sources))
         numbers[block.name] = Linearised(block.values, sparse_map(rows, places, values, shape))
     nominal = {block.name: block.values for block in blocks}
-    return Inputs(numbers, nominal, tuple(columns.sources), tuple(unused), reserved)
+    return Inputs(numbers, nominal, tuple(columns.sources), tuple(moved), reserved)
 
 
 def _declare(columns: _Columns, blocks: Sequence[Block], declaration: Declaration) -> bool:
