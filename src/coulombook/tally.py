@@ -69,7 +69,7 @@ def tally(
     folder, places = _folders(path, calibrations)
     findings = Findings()
     source = open_day(folder, places, findings)
-    settled = _work(source, findings, progress or _silent)
+    settled = settle_day(source, findings, progress)
     findings.raise_stops()
     assert settled is not None  # without faults there is an account
     assert source.day is not None
@@ -100,7 +100,7 @@ def check(path: str | os.PathLike[str], *, calibrations: Sequence[str | os.PathL
     folder, places = _folders(path, calibrations)
     findings = Findings()
     source = open_day(folder, places, findings)
-    settled = _work(source, findings, _silent)
+    settled = settle_day(source, findings)
     lines = () if source.day is None else forecast(source.day, settled)
     return Checked(tuple(findings), tuple(lines))
 
@@ -118,8 +118,9 @@ def _silent(what: str, done: int, of: int) -> None:
     pass
 
 
-def _work(source: DaySource, findings: Findings, progress: Progress) -> Settled | None:
+def settle_day(source: DaySource, findings: Findings, progress: Progress | None = None) -> Settled | None:
     """Everything between the tables and the book; None when faults stand in the way."""
+    progress = progress or _silent
     day = source.day
     if day is None:
         return None
