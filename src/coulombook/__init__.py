@@ -25,8 +25,8 @@ if TYPE_CHECKING:
     from coulombook.findings import DayFaults as DayFaults
     from coulombook.findings import Finding as Finding
     from coulombook.species import Species as Species
-    from coulombook.species import electrons_of as electrons_of
     from coulombook.species import load_species as load_species
+    from coulombook.species import parse_formula as parse_formula
     from coulombook.tally import check as check
     from coulombook.tally import tally as tally
 
@@ -42,11 +42,11 @@ _MODULE_OF = {
     "Table": "book",
     "charge_coulomb": "cell.charge",
     "check": "tally",
-    "electrons_of": "species",
     "find_reference": "cell.potential",
     "fit_curve": "curves.fit",
     "invert": "curves.inverse",
     "load_species": "species",
+    "parse_formula": "species",
     "reference_names": "cell.potential",
     "tally": "tally",
 }

@@ -69,7 +69,7 @@ examples:
 
 def main(arguments: Sequence[str] | None = None) -> int:
     """Run the command and return its exit status; ``arguments`` default to those of the process."""
-    _tolerate_characters(sys.stdout, sys.stderr)
+    _prepare_streams()
     try:
         try:
             return _run(sys.argv[1:] if arguments is None else list(arguments))
@@ -77,6 +77,9 @@ def main(arguments: Sequence[str] | None = None) -> int:
             _flush(sys.stdout)
     except SystemExit as stop:  # argparse: the help, or a wrong call
         return stop.code if isinstance(stop.code, int) else WRONG_CALL
+    except _OutputError as error:
+        _say(f"coulombook: the output cannot be written: {error}")
+        return WRONG_CALL
     except KeyboardInterrupt:
         _say("coulombook: interrupted")
         return INTERRUPTED
@@ -221,8 +224,14 @@ def _as_typed(text: str) -> str:
 
 
 def _say(text: str) -> None:
-    with _quiet_pipe():
+    from contextlib import suppress
+
+    with suppress(OSError):  # nobody is left to be told
         print(text, file=sys.stderr)
+
+
+class _OutputError(Exception):
+    """What we print cannot be written where it was sent, such as a full disk."""
 
 
 class _quiet_pipe:
@@ -232,20 +241,30 @@ class _quiet_pipe:
         pass
 
     def __exit__(self, kind: type[BaseException] | None, error: BaseException | None, _: object) -> bool:
+        if isinstance(error, OSError) and not isinstance(error, BrokenPipeError):
+            raise _OutputError(error.strerror) from error
         return isinstance(error, BrokenPipeError)
 
 
 def _flush(stream: TextIO) -> None:
     try:
-        stream.flush()
-    except BrokenPipeError:
-        # the interpreter flushes once more when it ends, and must find a pipe that takes it
-        os.dup2(os.open(os.devnull, os.O_WRONLY), stream.fileno())
+        with _quiet_pipe():
+            try:
+                stream.flush()
+            except OSError:
+                # the interpreter flushes once more when it ends, and must find a place that takes it
+                os.dup2(os.open(os.devnull, os.O_WRONLY), stream.fileno())
+                raise
+    except ValueError:  # a caller within Python has closed it
+        pass
 
 
-def _tolerate_characters(*streams: TextIO) -> None:
+def _prepare_streams() -> None:
     """Show a character that the terminal's encoding lacks by its number, instead of failing on it."""
-    for stream in streams:
+    for name in ("stdout", "stderr"):
+        if getattr(sys, name) is None:  # closed by whoever started us
+            setattr(sys, name, open(os.devnull, "w"))  # noqa: SIM115 - as long as the process
+        stream = getattr(sys, name)
         if hasattr(stream, "reconfigure"):
             stream.reconfigure(errors="backslashreplace")
 
@@ -312,7 +331,8 @@ class _Version(argparse.Action):
     def __call__(self, parser: argparse.ArgumentParser, *_: object) -> NoReturn:
         import coulombook
 
-        print(f"coulombook {coulombook.__version__}")
+        with _quiet_pipe():
+            print(f"coulombook {coulombook.__version__}")
         parser.exit()
 
 

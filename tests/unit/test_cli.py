@@ -1,6 +1,7 @@
 from __future__ import annotations
 
 import errno
+import io
 import os
 import subprocess
 import sys
@@ -345,6 +346,51 @@ def test_a_name_the_terminal_cannot_show_does_not_stop_the_message(tmp_path: Pat
     assert done.returncode == 2
     assert "\\u96fb\\u6975 \\u202e" in done.stderr
     assert "Traceback" not in done.stderr
+
+
+def test_a_full_disk_behind_the_output_is_named_and_is_no_fault_of_ours(
+    day: Path, work: Any, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    class Full(io.StringIO):
+        def write(self, text: str) -> int:
+            raise OSError(errno.ENOSPC, os.strerror(errno.ENOSPC))
+
+    work(sample_book())
+    monkeypatch.setattr(sys, "stdout", Full())
+    assert main(["tally", str(day)]) == 2
+    assert (
+        capsys.readouterr().err == f"coulombook: the output cannot be written: {os.strerror(errno.ENOSPC)}\n"
+    )
+    # the ledgers had been written before their report was
+    assert "ledger.csv" in files(day / "results")
+
+
+def test_a_report_that_nobody_reads_to_its_end_changes_no_status(
+    day: Path, work: Any, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    class Left(io.StringIO):
+        def write(self, text: str) -> int:
+            raise BrokenPipeError(errno.EPIPE, os.strerror(errno.EPIPE))
+
+    work(sample_book())
+    monkeypatch.setattr(sys, "stdout", Left())
+    assert main(["tally", str(day)]) == 0
+    work((FAULT,))
+    assert main(["check", str(day)]) == 1
+    assert capsys.readouterr().err == ""
+
+
+def test_a_process_without_output_still_does_its_work(
+    day: Path, work: Any, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    work(sample_book())
+    for name in ("stdout", "stderr"):
+        monkeypatch.setattr(sys, name, None)
+    status = main(["tally", str(day)])
+    sys.stdout.close()
+    sys.stderr.close()
+    assert status == 0
+    assert "ledger.csv" in files(day / "results")
 
 
 def test_a_reader_that_stops_early_is_no_fault() -> None:

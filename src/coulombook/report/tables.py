@@ -12,6 +12,7 @@ is. `original_text` takes the apostrophes away again, exactly.
 from __future__ import annotations
 
 import re
+from functools import lru_cache
 
 from coulombook.book import Cell, Table
 
@@ -42,11 +43,17 @@ def csv_cell(cell: Cell) -> str:
     if cell is None:
         return ""
     if isinstance(cell, str):
-        return _quoted(harmless_text(cell))
+        return _text_cell(cell)
     if isinstance(cell, float):
         # float.__repr__ and not repr: a numpy double would add its type
         return float.__repr__(cell)
     return str(int(cell))
+
+
+@lru_cache(maxsize=4096)
+def _text_cell(text: str) -> str:
+    # names of runs, catalysts and products come again on every row
+    return _quoted(harmless_text(text))
 
 
 def harmless_text(text: str) -> str:

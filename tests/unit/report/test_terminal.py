@@ -129,6 +129,11 @@ def test_no_encoding_of_the_terminal_stops_the_report(encoding: str) -> None:
     assert f"Written to {WRITTEN}" in text
 
 
+def test_a_terminal_without_lines_shows_the_same_table_with_a_rule_of_hyphens() -> None:
+    book = sample_book()
+    assert shown(book, 80, "ascii") == shown(book, 80).replace("─", "-")
+
+
 def test_a_book_without_products_or_runs_is_shown() -> None:
     assert "Written to" in shown(sample_book(catalysts=()))
 
@@ -152,8 +157,8 @@ def test_a_fault_names_place_found_expected_and_mend() -> None:
 
 def test_a_long_line_of_a_finding_hangs_under_its_own_beginning() -> None:
     lines = shown_findings([finding("missing-file", "a", "", "word " * 40)]).splitlines()
-    assert lines[2].startswith("  mend:     word word")
-    assert lines[3].startswith(" " * 12 + "word")
+    assert lines[1].startswith("  mend:     word word")
+    assert lines[2].startswith(" " * 12 + "word")
 
 
 def test_at_most_ten_of_one_kind_are_listed_and_the_rest_counted() -> None:
