@@ -14,7 +14,7 @@ from coulombook.intake.grid import Cell, Grid, cell_text, is_blank
 from coulombook.intake.schema import Column, Content, Schema
 from coulombook.units import Conversion, UnitError, conversion, nearest, parse_head
 
-_NUMBER = re.compile(r"[+-]?(\d+([.,]\d*)?|[.,]\d+)([eE][+-]?\d+)?")
+_NUMBER = re.compile(r"[+-]?(\d+([.,]\d*)?|[.,]\d+)([eE][+-]?\d+)?", re.ASCII)
 _PLAIN = re.compile(r"[0-9+\-.,eE\n]*", re.ASCII)
 _YES = frozenset(("yes", "y", "true", "1"))
 _NO = frozenset(("no", "n", "false", "0"))

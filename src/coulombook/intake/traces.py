@@ -48,6 +48,7 @@ class Layout:
     heads: tuple[str, ...]
     columns: Mapping[str, int]  # quantity -> place of its column
     careful: bool = False  # only the slow reader tells the rows apart rightly
+    lone_returns: bool = False  # lines that end in CR alone, which pandas miscounts when it skips them
 
 
 def read_trace(
@@ -185,7 +186,10 @@ def _layout(
     quotes = any('"' in line for line in below)
     # a stray quote in the free text would make a fast reader that minds quotes swallow rows
     careful = quotes and any('"' in line for line in lines[:place])
-    return Layout(encoding, separator, decimal, place + 1, quotes, tuple(heads), columns, careful)
+    lone_returns = any(line.endswith("\r") for line in lines[: place + 2])
+    return Layout(
+        encoding, separator, decimal, place + 1, quotes, tuple(heads), columns, careful, lone_returns
+    )
 
 
 def _first_lines(data: bytes, *, cut: bool) -> tuple[list[str], str]:
@@ -400,7 +404,8 @@ def _fast(path: Path, all_byte: int, layout: Layout) -> dict[str, FloatArray] | 
     if layout.careful:
         return None
     # a text in UTF-16 must be decoded in any case, which is what pandas would save
-    with_pandas = layout.encoding == "utf-8" and ("pandas" in sys.modules or all_byte >= PANDAS_PAYS_BYTE)
+    pays = "pandas" in sys.modules or all_byte >= PANDAS_PAYS_BYTE
+    with_pandas = pays and layout.encoding == "utf-8" and not layout.lone_returns
     try:
         values = _with_pandas(path, layout) if with_pandas else _with_numpy(path, layout)
     except (ValueError, OverflowError, IndexError):
