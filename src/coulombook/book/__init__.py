@@ -1,6 +1,7 @@
 """The book: everything a tally produced, and how the settled account is entered into its tables."""
 
 from coulombook.book.tables import (
+    BUDGET,
     CALIBRATIONS,
     FINDINGS,
     INJECTIONS,
@@ -16,6 +17,7 @@ from coulombook.book.tables import (
 )
 
 __all__ = [
+    "BUDGET",
     "CALIBRATIONS",
     "FINDINGS",
     "INJECTIONS",

@@ -13,6 +13,7 @@ from coulombook.balance.verdicts import closures, product_status
 from coulombook.book.tables import Cell, Table
 from coulombook.compare.series import pool_points, series_points
 from coulombook.findings import Finding
+from coulombook.uncertainty.budget import budget
 from coulombook.uncertainty.linearised import Number, nominal, standard_uncertainty
 
 PERCENT = 100.0
@@ -42,7 +43,7 @@ def level_of(run: Run) -> str:
     if run.level is not None:
         return run.level
     if run.set_potential_volt is not None:
-        return f"{run.set_potential_volt:g} V"
+        return f"{run.set_potential_volt:g}"  # in V, as a number that readers of the table can sort by
     if run.set_current_ampere is not None:
         return f"{run.set_current_ampere * MILLIAMPERE:g} mA"
     return run.name
@@ -59,6 +60,7 @@ def enter(settled: Settled, findings: Sequence[Finding]) -> dict[str, Table]:
         "series": _series(settled),
         "surface": _surface(settled),
         "calibrations": _calibrations(settled),
+        "budget": _budget(settled),
         "findings": [
             {
                 "severity": str(one.severity),
@@ -274,3 +276,36 @@ def _calibrations(settled: Settled) -> list[Row]:
                 row[f"u(a{power})"] = float(u[power] / unit**power)
         rows.append(row)
     return rows
+
+
+def _budget(settled: Settled) -> list[Row]:
+    """Contributions of each source to each product's FE, the total FE and C2+/C1 of every run."""
+    plan, outcome = settled.plan, settled.outcome
+    everything = np.arange(len(plan.runs))
+    outputs: list[tuple[Number, Sequence[str], Sequence[int]]] = [
+        (outcome.faradaic_efficiency, plan.products.species, plan.products.run.tolist()),
+        (outcome.total, ["total FE"] * len(plan.runs), everything.tolist()),
+        (outcome.ratio, ["C2+/C1"] * len(plan.runs), everything.tolist()),
+    ]
+    rows: list[tuple[int, int, Row]] = []
+    for kind, (number, names, runs) in enumerate(outputs):
+        found = budget(number, settled.inputs.sources)
+        share = found.share
+        unit = 1.0 if kind == 2 else PERCENT
+        for output, source in np.argwhere(np.nan_to_num(share) > 0).tolist():
+            rows.append(
+                (
+                    runs[output],
+                    kind,
+                    {
+                        "run": plan.runs[runs[output]].name,
+                        "output": names[output],
+                        "source": found.sources[source].name,
+                        "shared": found.sources[source].shared,
+                        "u / %": float(found.u[output, source] * unit),
+                        "share / %": float(share[output, source] * PERCENT),
+                    },
+                )
+            )
+    rows.sort(key=lambda row: row[:2])
+    return [row for _, _, row in rows]

@@ -46,6 +46,7 @@ CALIBRATIONS = (
     "residual sd", "lack of fit p", "detection limit / ppm", "quantification limit / ppm", "lowest / ppm",
     "highest / ppm",
 )  # fmt: skip
+BUDGET = ("run", "output", "source", "shared", "u / %", "share / %")
 FINDINGS = ("severity", "kind", "where", "text", "mend")
 
 TABLES: Mapping[str, tuple[str, ...]] = {
@@ -55,6 +56,7 @@ TABLES: Mapping[str, tuple[str, ...]] = {
     "series": SERIES,
     "surface": SURFACE,
     "calibrations": CALIBRATIONS,
+    "budget": BUDGET,
     "findings": FINDINGS,
 }
 
