@@ -25,6 +25,7 @@ if TYPE_CHECKING:
     from coulombook.findings import DayFaults as DayFaults
     from coulombook.findings import Finding as Finding
     from coulombook.species import Species as Species
+    from coulombook.species import electrons_of as electrons_of
     from coulombook.species import load_species as load_species
     from coulombook.species import parse_formula as parse_formula
     from coulombook.tally import check as check
@@ -43,6 +44,7 @@ _MODULE_OF = {
     "charge_coulomb": "cell.charge",
     "check": "tally",
     "find_reference": "cell.potential",
+    "electrons_of": "species",
     "fit_curve": "curves.fit",
     "invert": "curves.inverse",
     "load_species": "species",

@@ -212,6 +212,18 @@ def load_species() -> SpeciesTable:
     return SpeciesTable(_species(row) for row in _data()["species"])
 
 
+def electrons_of(name: str) -> int:
+    """Electrons per molecule of a species, called by its name, an alias, or its formula. [1]
+
+    Raises ValueError for a name that is neither in the table nor a formula of C, H and O.
+
+    >>> electrons_of("ethylene"), electrons_of("HCOO-"), electrons_of("C4H10O")
+    (12, 2, 24)
+    """
+    known = load_species().find(name)
+    return parse_formula(name).electrons if known is None else known.electrons
+
+
 @cache
 def _internal_standards() -> dict[str, str]:
     return {
