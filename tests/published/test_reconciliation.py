@@ -13,7 +13,9 @@ from typing import Any
 
 import numpy as np
 import pytest
+from scipy.sparse import csr_array
 
+from coulombook.uncertainty.linearised import Linearised
 from coulombook.uncertainty.reconcile import reconcile
 
 CASES = tomllib.loads((Path(__file__).parent / "reference_values.toml").read_text(encoding="utf-8"))["case"]
@@ -29,11 +31,12 @@ def test_exchanger_with_bypass(name: str) -> None:
     # the biased case has the data of the first with +4 on stream 2 (its title)
     base = _case("reconciliation_nj")["in"]
     y = np.array(base["y"]) + np.array([0, 4.0 if name.endswith("bias") else 0.0, 0, 0, 0, 0])
-    a = np.array(base["A"], dtype=float)
-    found = reconcile(y, np.eye(6), a, np.zeros(4))
+    a = csr_array(np.array(base["A"], dtype=float))
+    found = reconcile(Linearised(y, csr_array(np.eye(6))), a, np.zeros(4))
     actual = {"gamma": found.chi2, "dof": found.dof}
     actual |= {f"x{k + 1}": found.value[k] for k in range(6)}
-    actual |= {f"u{k + 1}": found.covariance[k, k] ** 0.5 for k in range(6)}
+    actual |= {f"u{k + 1}": found.u[k] for k in range(6)}
+    actual |= {f"nodal{k + 1}": found.constraint_z[k] for k in range(4)}
     actual |= {f"z{k + 1}": found.z[k] for k in range(6)}
     checked = 0
     for expected in case["expect"]:
@@ -44,16 +47,26 @@ def test_exchanger_with_bypass(name: str) -> None:
             assert actual[expected["name"]] == pytest.approx(expected["published"], abs=expected["abs_tol"])
         if "recomputed" in expected:
             assert actual[expected["name"]] == pytest.approx(expected["recomputed"], rel=1e-9)
-    assert checked >= 19
+    assert checked >= 23
+
+
+def _single(value: float, u: float) -> Linearised:
+    return Linearised(np.array([value]), csr_array(np.array([[u]])))
 
 
 def test_a_constraint_without_uncertainty_is_refused() -> None:
-    with pytest.raises(ValueError, match="only 0 of 1 constraints"):
-        reconcile(np.array([1.0]), np.zeros((1, 1)), np.array([[1.0]]), np.array([2.0]))
+    with pytest.raises(ValueError, match="constraint 0 has no uncertainty"):
+        reconcile(_single(1.0, 0.0), csr_array(np.eye(1)), np.array([2.0]))
+
+
+def test_constraints_that_repeat_one_another_are_refused() -> None:
+    with pytest.raises(ValueError, match="only 1 of 2 constraints are independent"):
+        reconcile(_single(1.0, 0.5), csr_array(np.ones((2, 1))), np.array([2.0, 2.0]))
 
 
 def test_slack_leaves_part_of_the_residual_standing() -> None:
     # S = 1, slack 1: V = 2, the value takes half of the residual
-    found = reconcile(np.array([3.0]), np.eye(1), np.eye(1), np.array([1.0]), 1.0)
+    found = reconcile(_single(3.0, 1.0), csr_array(np.eye(1)), np.array([1.0]), 1.0)
     assert found.value[0] == pytest.approx(2.0)
     assert found.chi2 == pytest.approx(2.0)
+    assert found.u[0] == pytest.approx(0.5**0.5)

@@ -225,9 +225,10 @@ def _demand_tracer(
         findings.add(
             "missing-value",
             injections.origin[number],
-            f"injection {injections.label[number]} of run {day.runs[injections.run[number]].name} has no peak of the "
-            f"tracer {tracer}",
-            "add the tracer's peak; the outlet flow of each injection is found from it",
+            "the outlet flow of each injection is found from its tracer's peak",
+            "add the peak, or mark every peak of the injection with use = no",
+            found=f"injection {injections.label[number]} of run {day.runs[injections.run[number]].name} without it",
+            expected=f"a peak of the tracer {tracer}",
         )
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from statistics import NormalDist
 
 import numpy as np
@@ -37,16 +38,18 @@ def report_faults(settled: Settled, findings: Findings) -> None:
                 f"the curve of {peak.analyte} on {peak.channel} does not reach this peak area on its rising branch",
                 "mark the peak with use = no, or calibrate over a range that holds it",
                 found=f"{peak.peak_area:g}",
-                expected="an area below the curve's turning point",
+                expected=_within_reach("an area", x, int(gas.peak_curve[number]), float(drift[number])),
             )
     for number in np.flatnonzero(~np.isfinite(nominal(settled.liquids.amount_ratio))):
         signal = plan.liquid.signals[number]
+        curve = int(plan.liquid.signal_curve[number])
         findings.add(
             "broken-curve",
             signal.origin.of("integral"),
             f"the curve of {signal.analyte} {signal.signal} does not reach this integral on its rising branch",
             "calibrate over a range that holds it",
             found=f"{signal.integral:g}",
+            expected=_within_reach("an integral ratio per proton", x, curve),
         )
     outlet = nominal(settled.readings.outlet_mol_per_s)
     current = nominal(settled.readings.current_ampere)
@@ -60,18 +63,29 @@ def report_faults(settled: Settled, findings: Findings) -> None:
             findings.add(
                 "not-allowed",
                 where,
-                f"the outlet flow comes out as {outlet[number] * 1e6:.4g} umol/s",
+                "the outlet flow is used up",
                 "check the flows, the tracer's peak and the carbonate uptake of the run",
+                found=f"{outlet[number] * 1e6:.4g} umol/s",
                 expected="a flow above zero",
             )
         elif not current[number] > 0:
             findings.add(
                 "anodic-run",
                 where,
-                f"the current that belongs to it is {current[number] * 1e3:.4g} mA for reduction",
+                "the current that belongs to the injection is not cathodic",
                 "check the sign of the current (cathodic is negative) and the time of the injection",
-                expected="a cathodic current",
+                found=f"{-current[number] * 1e3:.4g} mA",
+                expected="a cathodic current, which is negative",
             )
+
+
+def _within_reach(what: str, x: Mapping[str, FloatArray], curve: int, drift: float = 1.0) -> str:
+    """What a curve can be inverted at, in words: up to (or down to) the response at its turning point."""
+    a0, a1, a2 = (float(x[name][curve]) for name in ("a0", "a1", "a2"))
+    if a2 == 0.0:
+        return f"{what} that can be computed with"
+    side = "below" if a2 < 0 else "above"
+    return f"{what} {side} that of the curve's turning point, {drift * (a0 - a1**2 / (4.0 * a2)):.4g}"
 
 
 def closures(settled: Settled) -> tuple[list[str], FloatArray]:

@@ -6,24 +6,32 @@ Kuehn & Davidson, Chem. Eng. Prog. 57(6) (1961) 44; measurement test: Mah & Tamh
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
 
-from coulombook.uncertainty.linearised import FloatArray
+from coulombook.uncertainty.linearised import FloatArray, Linearised, squared_norms
+
+if TYPE_CHECKING:
+    from scipy.sparse import csr_array
+
+# rows of the values that are worked on at a time: bounds the memory of a day with thousands of runs
+_CHUNK = 2048
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Reconciled:
     """Adjusted values and the tests of the adjustment.
 
-    ``value`` (n,) and ``covariance`` (n, n) after adjustment; ``residual`` (m,) of the constraints before it;
-    ``chi2`` with ``dof`` degrees of freedom is the global test; ``z`` (n,) is the measurement test of each value, NaN
-    where the constraints cannot move it.
+    ``value`` and ``u`` (n,) after adjustment; ``residual`` (m,) of the constraints before it; ``chi2`` with ``dof`` degrees
+    of freedom and probability ``p`` is the global test; ``z`` (n,) is the measurement test of each value, NaN where
+    the constraints cannot move it; ``constraint_z`` (m,) is each residual over its own uncertainty.
     """
 
     value: FloatArray
-    covariance: FloatArray
+    u: FloatArray
     residual: FloatArray
+    constraint_z: FloatArray
     chi2: float
     dof: int
     p: float
@@ -31,23 +39,17 @@ class Reconciled:
 
 
 def reconcile(
-    value: FloatArray,
-    covariance: FloatArray,
-    constraints: FloatArray,
-    target: FloatArray,
-    slack: FloatArray | float = 0.0,
+    x: Linearised, constraints: csr_array, target: FloatArray, slack: FloatArray | float = 0.0
 ) -> Reconciled:
     """Least-squares adjustment of y so that A y = b, weighted by the full covariance S of y.
 
-    x = y - S A^T V^-1 (A y - b), cov(x) = S - S A^T V^-1 A S, with V = A S A^T + diag(slack^2).
+    y' = y - S A^T V^-1 (A y - b), cov(y') = S - S A^T V^-1 A S, with V = A S A^T + diag(slack^2).
 
     Parameters
     ----------
-    value : (n,) float array
-        Measured values y.
-    covariance : (n, n) float array
-        Their covariance S; may be singular as long as V is not.
-    constraints : (m, n) float array
+    x : (n,) Linearised
+        Measured values y; their derivatives J by unit errors give S = J J^T.
+    constraints : (m, n) sparse array
         A.
     target : (m,) float array
         b.
@@ -61,31 +63,35 @@ def reconcile(
     """
     from scipy.special import chdtrc
 
-    residual = constraints @ value - target
-    gain = covariance @ constraints.T
-    v = constraints @ gain + np.diag(np.broadcast_to(np.square(slack), target.shape))
-    rank = int(np.linalg.matrix_rank(v, hermitian=True)) if len(target) else 0
-    if rank < len(target):
-        raise ValueError(
-            f"only {rank} of {len(target)} constraints can be adjusted to: one has no uncertainty, or repeats another"
-        )
-    solved = (
-        np.linalg.solve(v, np.column_stack([residual, gain.T]))
-        if len(target)
-        else np.zeros((0, 1 + len(value)))
-    )
-    shift = gain @ solved[:, 0]
-    taken = gain @ solved[:, 1:]
-    spread = np.sqrt(np.clip(np.diag(taken), 0.0, None))
-    moved = spread > 1e-12 * np.sqrt(np.clip(np.diag(covariance), 0.0, None))
-    z = np.divide(shift, spread, out=np.full(shift.shape, np.nan), where=moved)
-    chi2 = float(residual @ solved[:, 0])
+    m, n = constraints.shape
+    residual = constraints @ x.value - target
+    of_constraints = constraints @ x.jacobian
+    v = (of_constraints @ of_constraints.T).toarray() + np.diag(np.broadcast_to(np.square(slack), (m,)))
+    scale = np.sqrt(np.diag(v))
+    if m and not (scale > 0).all():
+        raise ValueError(f"constraint {int(np.argmin(scale))} has no uncertainty to be adjusted with")
+    rank = int(np.linalg.matrix_rank(v / np.outer(scale, scale), hermitian=True)) if m else 0
+    if rank < m:
+        raise ValueError(f"only {rank} of {m} constraints are independent of one another")
+    inverse = np.linalg.inv(v)
+    solved = inverse @ residual
+    shift, taken = np.zeros(n), np.zeros(n)
+    for first in range(0, n, _CHUNK):
+        held = slice(first, first + _CHUNK)
+        gain = (x.jacobian[held] @ of_constraints.T).toarray()
+        shift[held] = gain @ solved
+        taken[held] = np.einsum("nm,mk,nk->n", gain, inverse, gain, optimize=True)
+    variance = squared_norms(x.jacobian)
+    spread = np.sqrt(np.clip(taken, 0.0, None))
+    moved = taken > 1e-24 * variance
+    chi2 = float(residual @ solved)
     return Reconciled(
-        value - shift,
-        covariance - taken,
+        x.value - shift,
+        np.sqrt(np.clip(variance - taken, 0.0, None)),
         residual,
+        residual / scale,
         chi2,
-        len(target),
-        float(chdtrc(len(target), chi2)) if len(target) else 1.0,
-        z,
+        m,
+        float(chdtrc(m, chi2)) if m else 1.0,
+        np.divide(shift, spread, out=np.full(n, np.nan), where=moved & (spread > 0)),
     )
