@@ -23,9 +23,9 @@ _CHUNK = 2048
 class Reconciled:
     """Adjusted values and the tests of the adjustment.
 
-    ``value`` and ``u`` (n,) after adjustment; ``residual`` (m,) of the constraints before it; ``chi2`` with ``dof`` degrees
-    of freedom and probability ``p`` is the global test; ``z`` (n,) is the measurement test of each value, NaN where
-    the constraints cannot move it; ``constraint_z`` (m,) is each residual over its own uncertainty.
+    ``value`` and ``u`` (n,) after adjustment; ``residual`` (m,) of the constraints before it; ``chi2`` with ``dof``
+    degrees of freedom and probability ``p`` is the global test; ``z`` (n,) is the measurement test of each value,
+    NaN where the constraints cannot move it; ``constraint_z`` (m,) is each residual over its own uncertainty.
     """
 
     value: FloatArray
