@@ -14,7 +14,7 @@ import numpy as np
 from coulombook.balance.gas_plan import list_injections
 from coulombook.balance.liquid_plan import list_samplings
 from coulombook.balance.make_plan import make_plan, recentred_requests, trace_requests
-from coulombook.balance.readings import Day, FloatArray
+from coulombook.balance.readings import Day, FloatArray, Run
 from coulombook.balance.settle import Settled, settle
 from coulombook.balance.trace_figures import TraceFigures, TraceRequest, figures_of
 from coulombook.balance.verdicts import closures, product_status, report_doubts, report_faults
@@ -156,7 +156,10 @@ def _read_traces(
     def read(number: int) -> TraceFigures | Findings:
         run, own = day.runs[number], Findings()
         try:
-            figures = figures_of(source.trace(run), requests[number])
+            trace = source.trace(run)
+            if _report_window(run, trace.time_second, own):
+                return own
+            figures = figures_of(trace, requests[number])
         except DayFaults as faults:
             own.extend(faults.findings)
             return own
@@ -164,8 +167,10 @@ def _read_traces(
             own.add(
                 "broken-trace",
                 run.trace,
-                f"run {run.name}: {error}",
+                f"run {run.name} cannot be integrated",
                 "check the run's start and stop and its log",
+                found=str(error),
+                expected="a log that covers the run's window",
             )
             return own
         if not figures.charge_coulomb > 0:
@@ -178,15 +183,8 @@ def _read_traces(
                 expected="a negative (cathodic) charge",
             )
             return own
-        early = figures.sampling_duration_second <= 0
-        if early.any():
-            own.add(
-                "not-allowed",
-                f"run {run.name}, vials",
-                "a vial was taken before any charge had passed",
-                "correct the time of the vial; a sample from before the run is a blank (role = blank)",
-                expected=f"a time after {figures.start_second:g} s, the start of the run's window",
-            )
+        if (figures.sampling_duration_second <= 0).any():
+            _report_early_vials(day, run, figures.start_second, own)
             return own
         return figures
 
@@ -197,6 +195,41 @@ def _read_traces(
         else:
             found[number] = one
     return found
+
+
+def _report_window(run: Run, time_second: FloatArray, findings: Findings) -> bool:
+    """Whether an end of the run's window, as entered, lies outside its log; each such end is a fault."""
+    first, last = float(time_second[0]), float(time_second[-1])
+    ends = (
+        ("start", run.start_second, run.start_second is None or first <= run.start_second < last),
+        ("stop", run.stop_second, run.stop_second is None or first < run.stop_second <= last),
+    )
+    for quantity, entered, inside in ends:
+        if not inside:
+            findings.add(
+                "not-allowed",
+                run.origin.of(quantity),
+                f"the {quantity} of run {run.name} lies outside its trace",
+                "correct the time or its unit, or leave the cell blank for the whole trace",
+                found=f"{entered:g} s",
+                expected=f"a time within {run.trace}, which runs from {first:g} s to {last:g} s",
+            )
+    return not all(inside for _, _, inside in ends)
+
+
+def _report_early_vials(day: Day, run: Run, start_second: float, findings: Findings) -> None:
+    for vial in day.vials:
+        if vial.run != run.name or not vial.used or vial.blank or vial.time_second is None:
+            continue
+        if vial.time_second <= start_second:
+            findings.add(
+                "not-allowed",
+                vial.origin.of("time"),
+                "the vial was taken before any charge had passed",
+                "correct the time; a sample from before the run is a blank (role = blank)",
+                found=f"{vial.time_second:g} s",
+                expected=f"a time after {start_second:g} s, the start of run {run.name}",
+            )
 
 
 def _read_scans(source: DaySource, day: Day, findings: Findings, progress: Progress) -> FloatArray:

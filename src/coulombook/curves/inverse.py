@@ -46,7 +46,9 @@ def invert(a0: Number, a1: Number, a2: Number, y: Number) -> Number:
         x in the unit the curve was fitted in. NaN where `invertible` says no.
     """
     rise = y - a0
-    return 2.0 * rise / (a1 + np.sqrt(a1**2 + 4.0 * a2 * rise))
+    # NaN is the answer there, and `invertible` tells of it; a warning of numpy's would be noise on the screen
+    with np.errstate(invalid="ignore", divide="ignore"):
+        return 2.0 * rise / (a1 + np.sqrt(a1**2 + 4.0 * a2 * rise))
 
 
 def invertible(a0: FloatArray, a1: FloatArray, a2: FloatArray, y: FloatArray) -> NDArray[np.bool_]:

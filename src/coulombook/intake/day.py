@@ -301,7 +301,8 @@ def _day(
         _scan_files(home, scan_table, long_files, findings)
     if vial_table is not None and liquid is not None:
         broken = frozenset(liquid.words("vial")[place] for place in liquid.broken)
-        if "analyte" in liquid.heads and "vial" in liquid.heads:
+        needed = {"vial", "analyte", "protons", "integral"}
+        if needed <= liquid.heads.keys() and not needed & liquid.unread:
             crosschecks.standards(vials, signals, broken, findings)
     _check_doubles(peaks, signals, scans, checks, findings)
     crosschecks.windows(runs, scans, findings)
@@ -342,7 +343,8 @@ def _signals(
     if vial_table is not None:
         # from the table, not the records: a vial with a fault elsewhere still names its standard
         for vial, text in zip(vial_table.words("vial"), vial_table.words("standard"), strict=True):
-            standards[vial] = names.standard(text)
+            if text:
+                standards[vial] = names.standard(text)
     return records.signals(liquid, standards, names, signal_of)
 
 

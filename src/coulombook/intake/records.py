@@ -39,6 +39,8 @@ class Names:
 
     def required(self, table: TypedTable, place: int, text: str) -> str | None:
         """The trade name of an analyte, or None with a fault."""
+        if not text:
+            return None  # a blank cell or an absent column, told of where the table is read
         found = self.find(text)
         if found is not None:
             return found.name
@@ -160,7 +162,8 @@ def vials(table: TypedTable, names: Names, findings: Findings) -> tuple[Vial, ..
                 ("run", bool(runs[place]), "the run the sample was taken from"),
                 ("compartment volume", volumes[place] is not None, "a number above zero"),
             ):
-                if not given and not (place in table.broken and quantity in table.heads):
+                told = quantity in table.unread or (place in table.broken and quantity in table.heads)
+                if not given and not told:
                     findings.add("missing-value", table.where(place, quantity), f"the sample has no {quantity}",
                                  f"fill in the {quantity}, or mark the vial as a blank", found="nothing",
                                  expected=known)  # fmt: skip

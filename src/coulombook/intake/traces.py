@@ -47,6 +47,7 @@ class Layout:
     quotes: bool  # whether cells of the body may stand in quotes
     heads: tuple[str, ...]
     columns: Mapping[str, int]  # quantity -> place of its column
+    width: int  # cells in a row, blank ones at the end with them
     careful: bool = False  # only the slow reader tells the rows apart rightly
     lone_returns: bool = False  # lines that end in CR alone, which pandas miscounts when it skips them
 
@@ -69,6 +70,16 @@ def read_trace(
         return None
     values, layout = read
     time = values["t"]
+    if time.size < 2:
+        findings.add(
+            "broken-trace",
+            folder.name_of(path),
+            "the file holds a single reading",
+            "put in the log of this run, or delete its row",
+            found="one row of numbers",
+            expected="two rows or more, for charge is current over time",
+        )
+        return None
     wrong = np.flatnonzero(~(np.diff(time) > 0))
     if wrong.size:
         _report_time(folder, path, layout, time, wrong, findings)
@@ -186,9 +197,10 @@ def _layout(
     quotes = any('"' in line for line in below)
     # a stray quote in the free text would make a fast reader that minds quotes swallow rows
     careful = quotes and any('"' in line for line in lines[:place])
+    width = max(map(len, [heads, *cells]))
     lone_returns = any(line.endswith("\r") for line in lines[: place + 2])
     return Layout(
-        encoding, separator, decimal, place + 1, quotes, tuple(heads), columns, careful, lone_returns
+        encoding, separator, decimal, place + 1, quotes, tuple(heads), columns, width, careful, lone_returns
     )
 
 
@@ -420,7 +432,9 @@ def _fast(path: Path, all_byte: int, layout: Layout) -> dict[str, FloatArray] | 
 def _with_pandas(path: Path, layout: Layout) -> dict[str, FloatArray]:
     import pandas as pd
 
-    places = sorted(set(layout.columns.values()))
+    places = sorted(layout.columns.values())
+    # picking columns costs as much as reading one; a file of nothing else needs no picking
+    pick = None if places == list(range(layout.width)) else places
     # a path with UTF-8 is three times as fast as any other way; numbers are ASCII, whatever the free text is
     frame = pd.read_csv(
         path,
@@ -428,7 +442,7 @@ def _with_pandas(path: Path, layout: Layout) -> dict[str, FloatArray]:
         decimal=layout.decimal,
         header=None,
         names=None,
-        usecols=places,
+        usecols=pick,
         skiprows=layout.head_row,
         dtype=np.float64,
         engine="c",
@@ -436,7 +450,6 @@ def _with_pandas(path: Path, layout: Layout) -> dict[str, FloatArray]:
         quoting=0 if layout.quotes else 3,
         encoding="utf-8",
         encoding_errors="replace",
-        low_memory=False,
     )
     return {
         quantity: np.array(frame[place].to_numpy(), dtype=np.float64)
