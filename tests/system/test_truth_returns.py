@@ -376,3 +376,12 @@ def test_current_density_in_a_trace_is_taken_with_the_area(tmp_path: Path) -> No
         dense = [f"{t},{e},{float(i) / area!r}" for t, e, i in rows]
         path.write_text("\n".join(["t / s,E / V,j / mA cm^-2", *dense]) + "\n", encoding="utf-8")
     _assert_truth(coulombook.tally(folder), day, EXACT)
+
+
+def test_run_without_products_of_one_carbon_has_no_ratio_and_no_complaint(tmp_path: Path) -> None:
+    one = hold(0, efficiency={"ethylene": 0.3, "hydrogen": 0.5}, compartments=())
+    book = coulombook.tally(write_day(tmp_path, replace(small_day(), holds=(one,))))
+    row = book.summary.iloc[0]
+    assert pd.isna(row["C2+/C1"])
+    assert pd.isna(row["u(C2+/C1)"])
+    assert row["total FE / %"] == pytest.approx(80.0, rel=EXACT)
