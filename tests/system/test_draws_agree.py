@@ -32,7 +32,13 @@ def test_propagated_uncertainty_agrees_with_draws(settled: Settled) -> None:
     normals = np.random.default_rng(20430518).standard_normal((DRAWS, len(inputs.sources)))
     scatter = settled.scatter
     assert isinstance(scatter, Linearised)
-    drawn = evaluate(plan, inputs.draw(normals), settled.weights, (scatter.jacobian @ normals.T).T)
+    drawn = evaluate(
+        plan,
+        inputs.draw(normals),
+        settled.weights,
+        settled.detection.counted,
+        (scatter.jacobian @ normals.T).T,
+    )
     for name in ("faradaic_efficiency", "total", "c2_plus", "ratio"):
         stated = getattr(settled.outcome, name)
         values = getattr(drawn, name)
@@ -47,9 +53,8 @@ def test_propagated_uncertainty_agrees_with_draws(settled: Settled) -> None:
 
 
 def test_nominal_draw_reproduces_the_settled_account(settled: Settled) -> None:
-    single = evaluate(
-        settled.plan, settled.inputs.draw(np.zeros((1, len(settled.inputs.sources)))), settled.weights
-    )
+    nothing = np.zeros((1, len(settled.inputs.sources)))
+    single = evaluate(settled.plan, settled.inputs.draw(nothing), settled.weights, settled.detection.counted)
     np.testing.assert_allclose(single.total[0], nominal(settled.outcome.total), rtol=1e-12)
     np.testing.assert_allclose(
         single.electrical.potential_rhe_volt[0],

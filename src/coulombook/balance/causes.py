@@ -127,7 +127,7 @@ def _entered(settled: Settled) -> list[Cause]:
         rows, places = np.nonzero(sizes)
         matrix = sparse_map(rows, np.array(columns)[places], sizes[rows, places], (len(values), len(loads)))
         numbers[block] = Linearised(values, matrix)
-    total = evaluate(settled.plan, numbers, settled.weights).total
+    total = evaluate(settled.plan, numbers, settled.weights, settled.detection.counted).total
     if not isinstance(total, Linearised):
         return []
     patterns = total.jacobian.toarray()
@@ -142,10 +142,11 @@ def _lost(settled: Settled) -> list[Cause]:
     plan, outcome = settled.plan, settled.outcome
     products = plan.products
     n = len(plan.runs)
-    gas_part = nominal(settled.injections.mean)
-    gas = np.bincount(plan.gas.group_run, weights=gas_part, minlength=n).astype(np.float64)
-    liquid_part = nominal(settled.liquids.faradaic_efficiency)
-    liquid = np.bincount(plan.liquid.group_run, weights=liquid_part, minlength=n).astype(np.float64)
+    counted = settled.detection.counted
+    gas_part = counted * (products.from_gas @ nominal(settled.injections.mean))
+    gas = np.bincount(products.run, weights=gas_part, minlength=n).astype(np.float64)
+    liquid_part = counted * (products.from_liquid @ nominal(settled.liquids.faradaic_efficiency))
+    liquid = np.bincount(products.run, weights=liquid_part, minlength=n).astype(np.float64)
     causes = [
         Cause(
             "gas-lost", "", -gas[:, None], True, "pressure-test the gas line from the cell to the sample loop"

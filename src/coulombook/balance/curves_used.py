@@ -9,6 +9,7 @@ import numpy as np
 
 from coulombook.balance.readings import Calibration, FloatArray, StandardSet
 from coulombook.curves.fit import Curve, fit_curve
+from coulombook.curves.limits import Limits, limits
 from coulombook.findings import Findings
 
 GAS, LIQUID = "gas", "liquid"
@@ -35,6 +36,7 @@ class CurvesUsed:
         self._known: dict[tuple[str, str, str], StandardSet] = {}
         self._index: dict[tuple[str, str, str], int] = {}
         self.used: list[UsedCurve] = []
+        self._limits: dict[tuple[int, int], Limits | None] = {}
         self.kinds = set()
         for calibration in calibrations:
             self.kinds.add(calibration.kind)
@@ -82,7 +84,15 @@ class CurvesUsed:
             )
             return None
         try:
-            curve = fit_curve(standards.x, standards.y, standards.options.form, standards.options.weights)
+            curve = fit_curve(
+                standards.x,
+                standards.y,
+                standards.options.form,
+                standards.options.weights,
+                u_x=standards.u_x,
+                parent=standards.parent,
+                u_parent=standards.u_parent,
+            )
         except ValueError as error:
             self._findings.add(
                 "broken-curve",
@@ -101,6 +111,38 @@ class CurvesUsed:
                 "add standards or replicates",
             )
         return curve
+
+    def limits(self, index: int, repeats: int) -> Limits | None:
+        """Limits of a used curve for the mean of ``repeats`` readings; None where there are none to be had.
+
+        The line of slope 1 (index -1) has no scatter to derive limits from.
+        """
+        if index < 0:
+            return None
+        key = index, repeats
+        if key not in self._limits:
+            self._limits[key] = self._limits_of(self.used[index], repeats)
+        return self._limits[key]
+
+    def _limits_of(self, one: UsedCurve, repeats: int) -> Limits | None:
+        if one.curve is None or one.curve.degrees_of_freedom == 0:
+            return None
+        standards = one.standards
+        try:
+            return limits(
+                one.curve,
+                standards.options.limits,
+                repeats=repeats,
+                blank_responses=standards.y[standards.x == 0.0],
+            )
+        except ValueError as error:
+            self._findings.add(
+                "no-limits",
+                f"calibration {standards.calibration}",
+                f"{one.name} has no limits by {standards.options.limits}: {error}",
+                "choose another scheme under limits in calibration.toml",
+            )
+            return None
 
     def coefficients(self) -> tuple[FloatArray, FloatArray, FloatArray]:
         """a0, a1, a2 of the used curves, followed by the line of slope 1 (index -1 of each array)."""

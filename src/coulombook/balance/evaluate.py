@@ -171,12 +171,12 @@ def read_liquids(plan: Plan, x: Numbers, weights: SignalWeights) -> Liquids:
         linear_map(liquid.volume_mean, x["compartment volume"]),
         linear_map(liquid.withdrawn, concentration * aliquot),
     )
-    charge = _charge_to_sampling(plan, x)
+    charge = charge_to_sampling(plan, x)
     efficiency = liquid.electrons * FARADAY_CONSTANT * amount / gather(charge, liquid.product_sampling)
     return Liquids(ratio, concentration, amount, linear_map(liquid.compartments, efficiency))
 
 
-def _charge_to_sampling(plan: Plan, x: Numbers) -> Number:
+def charge_to_sampling(plan: Plan, x: Numbers) -> Number:
     """Charge passed up to each sampling, (M,)."""
     run = plan.liquid.samplings.run
     charge = np.concatenate([one.sampling_charge_coulomb for one in plan.figures])
@@ -297,8 +297,13 @@ def close_books(
     liquids: Liquids,
     readings: GasReadings,
     gas_efficiency: Number,
+    counted: FloatArray,
 ) -> Outcome:
-    """Sum up. ``gas_efficiency`` (GP,) is the mean over the used injections, scatter of the injections included."""
+    """Sum up.
+
+    ``gas_efficiency`` (GP,) is the mean over the used injections, scatter of the injections included; ``counted``
+    (Q,) is 1 for products that enter the totals and 0 for those below detection.
+    """
     products, surface = plan.products, plan.surface
     n_runs, n_products = len(plan.runs), len(products.run)
     efficiency = linear_map(products.from_gas, gas_efficiency) + linear_map(
@@ -311,15 +316,18 @@ def close_books(
     run_roughness = linear_map(surface.runs, roughness) + np.where(surface.run_has, 0.0, np.nan)
 
     def total(keep: FloatArray, what: Number) -> Number:
-        return linear_map(sparse_map(products.run, np.arange(n_products), keep, (n_runs, n_products)), what)
+        kept = keep * counted
+        return linear_map(sparse_map(products.run, np.arange(n_products), kept, (n_runs, n_products)), what)
 
     one = (products.carbon == 1).astype(float)
     more = (products.carbon > 1).astype(float)
     c1, c2_plus = total(one, efficiency), total(more, efficiency)
     feed = gather(x["feed co2"], _every(n_runs)) * readings.inlet_mol_per_s
     carbon_used = total(products.carbon * per_charge, efficiency) * electrical.mean_current_ampere
+    # without a C1 product there is nothing to divide by
+    has_c1 = np.where(nominal(total(one, np.ones(n_products))) > 0, 0.0, np.nan)
     with np.errstate(divide="ignore", invalid="ignore"):
-        ratio, ratio_molar = c2_plus / c1, total(more, amount) / total(one, amount)
+        ratio, ratio_molar = c2_plus / (c1 + has_c1), total(more, amount) / (total(one, amount) + has_c1)
         conversion = carbon_used / feed
     return Outcome(
         electrical,
@@ -370,13 +378,17 @@ def mean_over_injections(plan: Plan, readings: GasReadings) -> Number:
     return linear_map(average, gather(readings.faradaic_efficiency, gas.pooled_reading))
 
 
-def evaluate(plan: Plan, x: Numbers, weights: SignalWeights, scatter: Number | float = 0.0) -> Outcome:
+def evaluate(
+    plan: Plan, x: Numbers, weights: SignalWeights, counted: FloatArray, scatter: Number | float = 0.0
+) -> Outcome:
     """The whole measurement function.
 
+    ``counted`` (Q,) tells which products enter the totals: a decision of the day, taken once at the nominal point.
     ``scatter`` (GP,) is the error of each run's mean over injections that the readings' own errors do not explain;
     zero at the nominal point.
     """
     electrical = read_electrical(plan, x)
     liquids = read_liquids(plan, x, weights)
     readings = read_injections(plan, x, electrical, liquids)
-    return close_books(plan, x, electrical, liquids, readings, mean_over_injections(plan, readings) + scatter)
+    gas_efficiency = mean_over_injections(plan, readings) + scatter
+    return close_books(plan, x, electrical, liquids, readings, gas_efficiency, counted)

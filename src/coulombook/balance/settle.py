@@ -6,6 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from coulombook.balance.detection import Detection, detect
 from coulombook.balance.evaluate import (
     Electrical,
     GasReadings,
@@ -47,6 +48,7 @@ class Settled:
     readings: GasReadings
     injections: Pooled  # used readings of each gas product of a run
     scatter: Number  # (GP,) error of the mean over injections that the readings' own errors do not explain
+    detection: Detection
     outcome: Outcome
 
 
@@ -63,8 +65,12 @@ def settle(plan: Plan) -> Settled:
         gather(readings.faradaic_efficiency, gas.pooled_reading), gas.pooled_group, len(gas.group_run)
     )
     scatter = _scatter(plan, inputs, injections)
-    outcome = close_books(plan, x, electrical, liquids, readings, injections.mean + scatter)
-    return Settled(plan, inputs, weights, electrical, liquids, readings, injections, scatter, outcome)
+    detection = detect(plan, inputs, readings, liquids)
+    mean = injections.mean + scatter
+    outcome = close_books(plan, x, electrical, liquids, readings, mean, detection.counted)
+    return Settled(
+        plan, inputs, weights, electrical, liquids, readings, injections, scatter, detection, outcome
+    )
 
 
 def _scatter(plan: Plan, inputs: Inputs, injections: Pooled) -> Number:

@@ -15,6 +15,7 @@ from coulombook.findings import Findings
 from coulombook.uncertainty.linearised import nominal, standard_uncertainty
 
 QUANTIFIED, ABOVE, BELOW = "quantified", "above calibration", "below calibration"
+UNDETECTED = "below detection"
 CLOSED, SHORT, OVER = "closed", "short", "over"
 
 # a reading is outside the range when it is so by more than rounding
@@ -107,7 +108,7 @@ def closures(settled: Settled) -> tuple[list[str], FloatArray]:
 
 
 def product_status(settled: Settled) -> list[str]:
-    """Status of each row of the ledger, (Q,): within, above or below the range of its curve."""
+    """Status of each row of the ledger, (Q,): below detection, or within, above or below the range of its curve."""
     plan = settled.plan
     place = {
         key: row
@@ -120,6 +121,8 @@ def product_status(settled: Settled) -> list[str]:
             status[row] = ABOVE
         elif value < low - _SLACK * abs(low) and status[row] != ABOVE:
             status[row] = BELOW
+    for row in np.flatnonzero(~settled.detection.detected).tolist():
+        status[row] = UNDETECTED
     return status
 
 
@@ -201,6 +204,8 @@ def report_doubts(settled: Settled, status: list[str], closure: list[str], findi
                 if verdict == ABOVE
                 else "add lower standards to the calibration",
             )
+        if verdict == UNDETECTED:
+            continue
         if efficiency[row] < 0:
             findings.add(
                 "negative-amount",

@@ -93,6 +93,8 @@ def _run_cells(settled: Settled) -> list[Row]:
 def _ledger(settled: Settled, status: Sequence[str]) -> list[Row]:
     products, outcome = settled.plan.products, settled.outcome
     runs = _run_cells(settled)
+    detected = settled.detection.detected
+    limit = (settled.detection.efficiency_limit * PERCENT).tolist()
     amount = (nominal(outcome.amount_mol) * UMOL).tolist()
     fe = _Measured.of(outcome.faradaic_efficiency, PERCENT)
     j = _Measured.of(outcome.partial_current_density_ampere_per_m2, MA_PER_CM2)
@@ -111,6 +113,7 @@ def _ledger(settled: Settled, status: Sequence[str]) -> list[Row]:
             "u(j) / mA cm^-2": j.u[row],
             "j real / mA cm^-2": real.value[row],
             "u(j real) / mA cm^-2": _beside(real, row),
+            "FE limit / %": None if detected[row] else limit[row],
             "status": status[row],
         }
         for row in range(len(products.run))
@@ -252,7 +255,8 @@ def _surface(settled: Settled) -> list[Row]:
 
 def _calibrations(settled: Settled) -> list[Row]:
     rows: list[Row] = []
-    for one in settled.plan.curves.used:
+    for number, one in enumerate(settled.plan.curves.used):
+        limit = settled.plan.curves.limits(number, 1)
         if one.curve is None:
             continue
         curve, standards = one.curve, one.standards
@@ -267,6 +271,8 @@ def _calibrations(settled: Settled) -> list[Row]:
             "weights": curve.weights,
             "points": curve.points,
             "residual sd": curve.residual_sd,
+            "detection limit / ppm": None if limit is None else limit.detection * unit,
+            "quantification limit / ppm": None if limit is None else limit.quantification * unit,
             "lowest / ppm": curve.lowest * unit,
             "highest / ppm": curve.highest * unit,
         }

@@ -23,10 +23,11 @@ class Budget:
 
     @property
     def share(self) -> FloatArray:
-        """Share of each source in the variance of each output, (n_outputs, n_sources); zero without variance."""
+        """Share of each source in the variance of each output, (n_outputs, n_sources); zero without a finite variance."""
         square = self.u**2
         total = square.sum(axis=1, keepdims=True)
-        result: FloatArray = np.divide(square, total, out=np.zeros_like(square), where=total > 0)
+        known = np.isfinite(total) & (total > 0)
+        result: FloatArray = np.divide(square, total, out=np.zeros_like(square), where=known)
         return result
 
 
