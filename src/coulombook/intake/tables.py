@@ -111,7 +111,7 @@ def typed_table(
     """
     defaults = defaults or {}
     places = _place_columns(grid, schema, findings)
-    heads = {quantity: grid.heads[place] for quantity, place in places.items()}
+    heads = {quantity: shortened(grid.heads[place]) for quantity, place in places.items()}
     table = TypedTable(schema, grid.file, grid.sheet, grid.head_row, grid.numbers, heads)
     _carry(grid, schema, places, table, findings)
     _report_overlong_rows(grid, findings)
@@ -164,7 +164,7 @@ def _place_columns(grid: Grid, schema: Schema, findings: Findings) -> dict[str, 
 
 
 def _head_place(grid: Grid, head: str) -> Origin:
-    return Origin(grid.file, grid.sheet, grid.head_row, head)
+    return Origin(grid.file, grid.sheet, grid.head_row, shortened(head))
 
 
 def _carry(
@@ -326,7 +326,7 @@ def _conversion_of_head(grid: Grid, column: Column, head: str, findings: Finding
     try:
         return unit_conversion(column, unit)
     except UnitError as error:
-        found = f"unit '{unit}'" if unit is not None else "no unit in the head"
+        found = f"unit {quoted(unit)}" if unit is not None else "no unit in the head"
         mend = f"correct the unit in the head, as in '{column.head}'"
         if error.suggestion:
             mend += f"; did you mean '{error.suggestion}'?"
@@ -525,9 +525,23 @@ def _report_cell(
     findings.add(kind, where, text, mend, found=quoted(cell_text(cell)), expected=expected)
 
 
+def shortened(text: str) -> str:
+    """A text for a message, long ones cut."""
+    return text if len(text) <= _LONGEST_QUOTE else f"{text[:_LONGEST_QUOTE]}..."
+
+
 def quoted(text: str) -> str:
     """A cell for a message: in quotes, long ones cut."""
-    return f"'{text}'" if len(text) <= _LONGEST_QUOTE else f"'{text[:_LONGEST_QUOTE]}...'"
+    return f"'{shortened(text)}'"
 
 
-__all__ = ["Default", "TypedTable", "did_you_mean", "instant_of", "quoted", "typed_table", "unit_conversion"]
+__all__ = [
+    "Default",
+    "TypedTable",
+    "did_you_mean",
+    "instant_of",
+    "quoted",
+    "shortened",
+    "typed_table",
+    "unit_conversion",
+]

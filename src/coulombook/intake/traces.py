@@ -21,7 +21,7 @@ from coulombook.intake import schema, text
 from coulombook.intake.files import Folder, report_outside, unreadable
 from coulombook.intake.schema import Column, Schema
 from coulombook.intake.settings import TraceOptions
-from coulombook.intake.tables import quoted, unit_conversion
+from coulombook.intake.tables import quoted, shortened, unit_conversion
 from coulombook.units import UnitError, conversion, nearest, parse_head
 
 HEAD_BYTE = 65_536
@@ -213,7 +213,12 @@ def _first_lines(data: bytes, *, cut: bool) -> tuple[list[str], str]:
         # the cut may fall inside a character; an ASCII line end is never part of one
         data = data[: max(data.rfind(b"\n"), data.rfind(b"\r")) + 1] or data
     lines = text.lines_of(text.decode(data))
-    if cut and len(lines) > 1 and not lines[-1].endswith(("\n", "\r")):
+    if cut and lines and not lines[-1].endswith(("\n", "\r")):
+        if len(lines) == 1:
+            raise text.UnreadableText(
+                f"a line of more than {len(lines[0]) - 1} characters in row 1",
+                f"lines of at most {text.LONGEST_LINE} characters",
+            )
         lines.pop()
     return lines, "utf-16" if encoding == "utf-16" else "utf-8"
 
@@ -274,7 +279,7 @@ def _columns(
         if quantity in columns:
             findings.add(
                 "repeated-column",
-                Origin(name, None, row, head),
+                Origin(name, None, row, shortened(head)),
                 "two columns carry the same quantity",
                 "say which one counts: [read.traces] columns in day.toml",
                 found=f"'{heads[columns[quantity]]}' and '{head}'",
@@ -304,12 +309,12 @@ def _conversions(
             hint = f"; did you mean '{error.suggestion}'?" if error.suggestion else ""
             findings.add(
                 error.kind,
-                Origin(name, None, layout.head_row, head),
+                Origin(name, None, layout.head_row, shortened(head)),
                 "the unit measures something else" if error.kind == "wrong-dimension" else "the unit is not known"
                 if unit else "the head gives no unit",
                 f"write the head as '{column.head}', or map it in day.toml: "
-                f"[read.traces] columns = {{ \"{column.head}\" = \"{head}\" }}{hint}",
-                found=f"unit '{unit}'" if unit else "no unit in the head",
+                f"[read.traces] columns = {{ \"{column.head}\" = \"{shortened(head)}\" }}{hint}",
+                found=f"unit {quoted(unit)}" if unit else "no unit in the head",
                 expected=error.expected,
             )  # fmt: skip
     return factors if len(factors) == len(layout.columns) else None
@@ -361,7 +366,7 @@ def _report_no_heads(
         missing.append(table.by_quantity["i"])
     for column in missing:
         names = [head for head in heads if _quantity_of(head, table, options) is None]
-        near = nearest(column.head, names) or nearest(column.quantity, names)
+        near = _meant(column, names)
         findings.add(
             "missing-column",
             Origin(name, None, place + 1),
@@ -371,6 +376,17 @@ def _report_no_heads(
             found=", ".join(f"'{head}'" for head in heads)[:300],
             expected=f"'{column.head}'",
         )  # fmt: skip
+
+
+def _meant(column: Column, heads: Sequence[str]) -> str | None:
+    """The head that may be meant by a column: its words are near a name of the column, or begin with its symbol."""
+    for head in heads:
+        # "I/mA", "I [mA]" and "I (mA)" are how heads come from instruments
+        words = re.split(r"\s*[/\[(]", head, maxsplit=1)[0].casefold()
+        names = [column.quantity, *column.synonyms]
+        if nearest(words, names) or (len(words) <= 3 and words.startswith(column.quantity)):
+            return head
+    return None
 
 
 def _report_empty(findings: Findings, broken: str, name: str) -> None:

@@ -220,6 +220,28 @@ def test_an_endless_head_line_is_refused_without_reading_the_file(tmp_path: Path
     assert [one.kind for one in findings] == ["unreadable-file"]
 
 
+@pytest.mark.parametrize("above", ["", "one line\n"])
+def test_a_line_of_heads_that_never_ends_is_refused(read: Read, above: str) -> None:
+    trace, findings = read(above + "t / s,E / V,I / mA" + "x" * 200_000)
+    assert trace is None
+    (fault,) = findings
+    assert fault.kind == "unreadable-file"
+    assert "a line of more than" in fault.found
+
+
+def test_a_long_head_is_cut_in_messages(read: Read) -> None:
+    _, findings = read("t / s,E / V,I / mA" + "x" * 5000 + "\n0,-1,-1\n")
+    (fault,) = findings
+    assert len(fault.where + fault.found + fault.mend) < 500
+
+
+def test_the_head_that_may_be_meant_is_never_that_of_another_quantity(read: Read) -> None:
+    (fault,) = read("t / s,E / V,Q / mC\n0,-1,-1\n")[1]
+    assert "Q / mC" not in fault.mend
+    (fault,) = read("t / s,E / V,I [mA]\n0,-1,-1\n")[1]
+    assert "'I [mA]' as 'I / mA'" in fault.mend
+
+
 def test_a_head_line_far_down_is_found(read: Read) -> None:
     trace, findings = read("setting of the instrument, line after line\n" * 5000 + _text())
     assert findings == []
