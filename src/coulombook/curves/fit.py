@@ -4,6 +4,9 @@ The design matrix is scaled (and centred where the form has an intercept), facto
 refined with residuals summed exactly, so that badly scaled standards (mole fractions of 1e-6 against peak
 areas of 1e6) keep their digits. Normal equations are never formed.
 
+Errors of the standards themselves enter the covariance of every curve for which they are stated; with weights
+"both" they enter the fit as well (`coulombook.curves.both`).
+
 Sources: Golub & Van Loan, Matrix Computations, 4th ed. (2013), sect. 5.3; Bjorck, BIT 7 (1967) 257 (iterative
 refinement of least squares); Dekker, Numer. Math. 18 (1971) 224 (exact products).
 """
@@ -17,7 +20,15 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from coulombook.curves.weights import point_weights
+from coulombook.curves.both import DistanceFit, fit_distance
+from coulombook.curves.certificates import standard_errors
+from coulombook.curves.weights import (
+    WEIGHTS,
+    point_weights,
+    replicate_variance,
+    replicate_variance_function,
+    smooth_variance,
+)
 
 FloatArray = NDArray[np.float64]
 
@@ -51,10 +62,13 @@ class PolynomialFit:
 class Curve:
     """One fitted calibration curve, response = a0 + a1 x + a2 x^2.
 
-    ``coefficients`` (3,) holds a0, a1, a2, zero where the form has none; ``factor`` (3, n_free) is L with
+    ``coefficients`` (3,) holds a0, a1, a2, zero where the form has none; ``factor`` (3, n_errors) is L with
     covariance = L L^T, well conditioned in the scaled basis of the fit, so that draws and propagation need
-    no further factorisation. With no degree of freedom left nothing is known of the scatter:
-    ``residual_sd`` and ``covariance`` are then zero, and the caller should say so.
+    no further factorisation. ``certificate`` is the part of the covariance that stems from the standards' own
+    errors. ``scatter`` holds v0, v1, v2, c: a single reading at x has the variance
+    v0 + v1 x + v2 x^2 + c y^2, see `coulombook.curves.prediction.reading_variance`. With no degree of freedom left
+    nothing is known of the scatter: ``residual_sd`` and the rest of the covariance are then zero, and
+    the caller should say so.
     """
 
     form: str
@@ -65,10 +79,18 @@ class Curve:
     free: tuple[bool, bool, bool]
     coefficients: FloatArray  # (3,)
     covariance: FloatArray  # (3, 3)
-    factor: FloatArray  # (3, n_free)
-    degrees_of_freedom: int
+    factor: FloatArray  # (3, n_errors)
+    degrees_of_freedom: int  # of the scatter of the responses
     residual_sd: float  # of a point of mean weight, in the unit of the response
     r_squared: float
+    certificate: FloatArray  # (3, 3)
+    scatter: FloatArray  # (4,)
+    distance: DistanceFit | None = None  # of a fit with errors in both variables
+
+    @property
+    def powers(self) -> tuple[int, ...]:
+        """Powers of x that are free."""
+        return FORMS[self.form]
 
 
 def _split(a: FloatArray) -> tuple[FloatArray, FloatArray]:
@@ -107,6 +129,15 @@ def _to_plain(powers: tuple[int, ...], centre: float, scale: float) -> FloatArra
         for row in range(column + 1):
             matrix[row, column] = math.comb(power, row) * (-centre) ** (power - row) * scale**-power
     return matrix
+
+
+def scaled_design(x: FloatArray, powers: tuple[int, ...]) -> tuple[float, float, FloatArray]:
+    """Centre and scale that put x within -1 to 1, and the matrix from coefficients there to those of x^k."""
+    # a shift of x mixes all lower powers, so only a form that has them all may be centred
+    centred = powers == tuple(range(len(powers))) and len(powers) > 1
+    centre = 0.5 * float(x.min() + x.max()) if centred else 0.0
+    scale = float(np.abs(x - centre).max())
+    return centre, scale, _to_plain(powers, centre, scale)
 
 
 def fit_polynomial(
@@ -150,13 +181,9 @@ def fit_polynomial(
 
     weight = weight / weight.mean()
     root = np.sqrt(weight)
-    # a shift of x mixes all lower powers, so only a form that has them all may be centred
-    centred = powers == tuple(range(size)) and size > 1
-    centre = 0.5 * float(x.min() + x.max()) if centred else 0.0
-    scale = float(np.abs(x - centre).max())
+    centre, scale, plain = scaled_design(x, powers)
     scaled = root[:, None] * ((x - centre) / scale)[:, None] ** np.array(powers)
     q, r = np.linalg.qr(scaled)
-    plain = _to_plain(powers, centre, scale)
 
     design = root[:, None] * x[:, None] ** np.array(powers)
     target = root * y
@@ -191,7 +218,17 @@ def fit_polynomial(
     )
 
 
-def fit_curve(x: ArrayLike, y: ArrayLike, form: str = "line", weights: str = "equal") -> Curve:
+def fit_curve(
+    x: ArrayLike,
+    y: ArrayLike,
+    form: str = "line",
+    weights: str = "equal",
+    *,
+    u_x: ArrayLike | None = None,
+    parent: Sequence[str] | None = None,
+    u_parent: ArrayLike | None = None,
+    u_y: ArrayLike | None = None,
+) -> Curve:
     """Calibration curve through standards.
 
     Parameters
@@ -203,7 +240,14 @@ def fit_curve(x: ArrayLike, y: ArrayLike, form: str = "line", weights: str = "eq
     form : str
         "line", "line through zero" or "quadratic" (with intercept).
     weights : str
-        "equal", "1/x", "1/x^2" or "replicates"; see `coulombook.curves.weights.point_weights`.
+        "equal", "1/x", "1/x^2" or "replicates" (see `coulombook.curves.weights.point_weights`), or "both": errors in
+        the standards and in the responses (see `coulombook.curves.both`).
+    u_x, parent, u_parent : (n_points,) array_like, optional
+        Errors of the standards, see `coulombook.curves.certificates.standard_errors`. They always enter the
+        covariance; with "both" they weigh the points as well.
+    u_y : (n_points,) or (n_points, n_points) array_like, optional
+        Standard uncertainty of each response or their covariance, for "both" only. By default that of the
+        replicates (`replicate_variance`); without replicates, or when none differ, one sought in the residuals.
 
     Raises
     ------
@@ -211,6 +255,14 @@ def fit_curve(x: ArrayLike, y: ArrayLike, form: str = "line", weights: str = "eq
         An unknown form or weighting, too few points or different x for the form, standards the weighting
         cannot be used on, or a curve that does not rise over its whole range, which no reading could be
         inverted on.
+
+    Notes
+    -----
+    With any weights but "both" the errors of the standards are carried through the coefficients to first order,
+    G U G^T with G the derivatives of the coefficients with respect to x (JCGM 102:2011, 6.2). As far as they make
+    the points scatter about the curve they are in the residual variance already; that part, the trace of their
+    residuals' covariance, is taken out of it (never below the variance between replicates), so that nothing counts
+    twice. ``residual_sd`` stays what the residuals say.
 
     Examples
     --------
@@ -220,15 +272,24 @@ def fit_curve(x: ArrayLike, y: ArrayLike, form: str = "line", weights: str = "eq
     """
     if form not in FORMS:
         raise ValueError(f"form '{form}' is not available; choose from {', '.join(FORMS)}")
+    if weights not in WEIGHTS:
+        raise ValueError(f"weights '{weights}' are not available; choose from {', '.join(WEIGHTS)}")
     x, y = np.asarray(x, dtype=float), np.asarray(y, dtype=float)
     powers = FORMS[form]
     # before the weights are worked out, so that a curve without points is told so
     if x.size < len(powers):
         raise ValueError(f"{x.size} point(s) cannot fix the {len(powers)} coefficient(s) of a {form}")
-    fit = fit_polynomial(x, y, powers, point_weights(x, y, weights))
-    coefficients, factor = np.zeros(3), np.zeros((3, len(powers)))
-    coefficients[list(powers)] = fit.coefficients
-    factor[list(powers)] = fit.factor
+    errors = standard_errors(x, u_x, parent, u_parent)
+    if weights == "both":
+        found = _fit_both(x, y, powers, errors, None if u_y is None else np.asarray(u_y, dtype=float))
+    elif u_y is not None:
+        raise ValueError("uncertainties of the responses can be given with weights both only")
+    else:
+        found = _fit_weighted(x, y, powers, weights, errors)
+    rows = list(powers)
+    coefficients, factor, certificate = np.zeros(3), np.zeros((3, len(powers))), np.zeros((3, 3))
+    coefficients[rows], factor[rows] = found.coefficients, found.factor
+    certificate[np.ix_(rows, rows)] = found.certificate
     ends = np.array([x.min(), x.max()])
     slopes = coefficients[1] + 2.0 * coefficients[2] * ends
     if not (slopes > 0.0).all():
@@ -237,7 +298,7 @@ def fit_curve(x: ArrayLike, y: ArrayLike, form: str = "line", weights: str = "eq
             f"{slopes[1]:g} at {ends[1]:g}"
         )
     covariance = factor @ factor.T
-    for array in (coefficients, factor, covariance):
+    for array in (coefficients, factor, covariance, certificate, found.scatter):
         array.setflags(write=False)
     return Curve(
         form=form,
@@ -249,7 +310,127 @@ def fit_curve(x: ArrayLike, y: ArrayLike, form: str = "line", weights: str = "eq
         coefficients=coefficients,
         covariance=covariance,
         factor=factor,
+        degrees_of_freedom=found.degrees_of_freedom,
+        residual_sd=found.residual_sd,
+        r_squared=found.r_squared,
+        certificate=certificate,
+        scatter=found.scatter,
+        distance=found.distance,
+    )
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Found:
+    """What a fit, of either kind, hands over; coefficients in the order of the powers."""
+
+    coefficients: FloatArray
+    factor: FloatArray
+    certificate: FloatArray
+    degrees_of_freedom: int
+    residual_sd: float
+    r_squared: float
+    scatter: FloatArray
+    distance: DistanceFit | None
+
+
+def _fit_weighted(
+    x: FloatArray, y: FloatArray, powers: tuple[int, ...], weights: str, errors: FloatArray
+) -> _Found:
+    weight = point_weights(x, y, weights)
+    fit = fit_polynomial(x, y, powers, weight)
+    factor, certificate, variance = fit.factor, np.zeros((len(powers), len(powers))), fit.residual_sd**2
+    if errors.shape[1]:
+        factor, certificate, variance = _with_certificates(x, y, fit, weight, errors)
+    return _Found(
+        coefficients=fit.coefficients,
+        factor=factor,
+        certificate=certificate,
         degrees_of_freedom=fit.degrees_of_freedom,
         residual_sd=fit.residual_sd,
         r_squared=fit.r_squared,
+        scatter=_scatter(x, y, weights, variance),
+        distance=None,
+    )
+
+
+def _with_certificates(
+    x: FloatArray, y: FloatArray, fit: PolynomialFit, weight: FloatArray, errors: FloatArray
+) -> tuple[FloatArray, FloatArray, float]:
+    """Factor of the covariance, its part from the standards' errors, and the variance of the responses alone."""
+    powers = np.array(fit.powers)
+    centre, scale, plain = scaled_design(x, fit.powers)
+    root = np.sqrt(weight)[:, None]
+    q, r = np.linalg.qr(root * ((x - centre) / scale)[:, None] ** powers)
+    back = np.linalg.inv(r)
+    slope = (powers * x[:, None] ** np.maximum(powers - 1, 0)) @ fit.coefficients
+    moved = root * slope[:, None] * errors
+    along = q.T @ moved
+    variance = 0.0
+    if fit.degrees_of_freedom:
+        seen = float(np.sum(np.square(moved)) - np.sum(np.square(along)))
+        variance = max(fit.residual_sd**2 - seen / fit.degrees_of_freedom, _pure_variance(x, y, weight))
+    both = np.hstack((math.sqrt(variance) * back, back @ along))
+    triangle = np.linalg.qr(both.T)[1]
+    own = plain @ (back @ along)
+    return plain @ triangle.T, own @ own.T, variance
+
+
+def _pure_variance(x: FloatArray, y: FloatArray, weight: FloatArray) -> float:
+    """Variance of a response of weight 1 between replicates; 0 without replicates."""
+    _, member = np.unique(x, return_inverse=True)
+    member = member.reshape(-1)
+    freedom = x.size - int(member.max()) - 1
+    if freedom == 0:
+        return 0.0
+    mean = np.bincount(member, weights=y) / np.bincount(member)
+    return float(weight @ np.square(y - mean[member])) / freedom
+
+
+def _scatter(x: FloatArray, y: FloatArray, weights: str, variance: float) -> FloatArray:
+    """v0, v1, v2, c of the variance of a reading, from that of a point of mean weight."""
+    if weights == "equal":
+        return np.array([variance, 0.0, 0.0, 0.0])
+    if weights == "1/x":
+        return np.array([0.0, variance * float(np.mean(1.0 / x)), 0.0, 0.0])
+    if weights == "1/x^2":
+        return np.array([0.0, 0.0, variance * float(np.mean(1.0 / x**2)), 0.0])
+    c0, c1 = replicate_variance_function(x, y)
+    scale = variance * float(np.mean(1.0 / replicate_variance(x, y)))
+    return np.array([scale * c0, 0.0, 0.0, scale * c1])
+
+
+def _fit_both(
+    x: FloatArray, y: FloatArray, powers: tuple[int, ...], errors: FloatArray, u_y: FloatArray | None
+) -> _Found:
+    certain = np.flatnonzero(~errors.any(axis=1))
+    if certain.size:
+        raise ValueError(
+            f"weights both need an uncertainty above zero for every standard; that of x = {x[certain[0]]:g} is 0"
+            " (a zero gas has that of its impurities)"
+        )
+    freedom = x.size - len(powers)
+    scatter = None
+    if u_y is None and np.unique(x).size < x.size and _pure_variance(x, y, np.ones_like(x)) > 0.0:
+        u_y = np.sqrt(replicate_variance(x, y))
+        c0, c1 = replicate_variance_function(x, y)
+        scatter = np.array([c0, 0.0, 0.0, c1])
+        freedom = x.size - np.unique(x).size
+    fit = fit_distance(x, y, powers, errors, u_y)
+    variance = np.square(fit.u_y)
+    if scatter is None:
+        c0, c1 = smooth_variance(y, variance)
+        scatter = np.array([c0, 0.0, 0.0, c1])
+    residual = y - (x[:, None] ** np.array(powers)) @ fit.coefficients
+    weight = 1.0 / variance
+    middle = float(weight @ y / weight.sum()) if powers[0] == 0 else 0.0
+    total = float(weight @ np.square(y - middle))
+    return _Found(
+        coefficients=fit.coefficients,
+        factor=fit.factor,
+        certificate=fit.certificate @ fit.certificate.T,
+        degrees_of_freedom=freedom,
+        residual_sd=float(1.0 / math.sqrt(np.mean(weight))) if freedom else 0.0,
+        r_squared=1.0 - float(weight @ np.square(residual)) / total if total > 0.0 else math.nan,
+        scatter=scatter,
+        distance=fit,
     )

@@ -7,7 +7,8 @@ from numpy.typing import NDArray
 
 FloatArray = NDArray[np.float64]
 
-WEIGHTS = ("equal", "1/x", "1/x^2", "replicates")
+WEIGHTS = ("equal", "1/x", "1/x^2", "replicates", "both")
+POINT_WEIGHTS = WEIGHTS[:-1]  # errors in both variables need a fit of their own, not weights
 
 # From m replicates a level, weights 1/s^2 cost the estimate (m - 3)/(m - 5) in variance against known ones
 # (Carroll & Cline, Biometrika 75 (1988) 35, from memory): without bound at five, 1.4 at ten. ISO 8466-1
@@ -43,7 +44,7 @@ def point_weights(x: FloatArray, y: FloatArray, weights: str) -> FloatArray:
     elif weights == "replicates":
         raw = 1.0 / replicate_variance(x, y)
     else:
-        raise ValueError(f"weights '{weights}' are not available; choose from {', '.join(WEIGHTS)}")
+        raise ValueError(f"weights '{weights}' are not available; choose from {', '.join(POINT_WEIGHTS)}")
     scaled: FloatArray = raw / raw.mean()
     return scaled
 
@@ -63,30 +64,62 @@ def replicate_variance(x: FloatArray, y: FloatArray) -> FloatArray:
     ValueError
         No level has two points, or the replicates of no level differ.
     """
-    _, member = np.unique(x, return_inverse=True)
-    member = member.reshape(-1)
-    count = np.bincount(member).astype(float)
-    mean = np.bincount(member, weights=y) / count
-    spread = np.bincount(member, weights=np.square(y - mean[member]))
-    freedom = count - 1.0
-    replicated = freedom > 0.0
-    if not replicated.any():
+    levels = _Levels(x, y)
+    if not (levels.freedom > 0.0).any():
         raise ValueError("weights from replicates need at least two points of the same x; there are none")
-    if not (spread > 0.0).any():
+    if not (levels.spread > 0.0).any():
         raise ValueError("weights from replicates need replicates that differ; there is no variance")
-    variance = np.divide(spread, freedom, out=np.zeros_like(spread), where=replicated)
-    if count.min() >= ENOUGH_REPLICATES and (variance > 0.0).all():
-        return variance[member]
-    fitted = _variance_function(np.square(mean), variance, freedom)
-    return fitted[member]
+    if levels.count.min() >= ENOUGH_REPLICATES and (levels.spread > 0.0).all():
+        own: FloatArray = (levels.spread / levels.freedom)[levels.member]
+        return own
+    c0, c1 = levels.variance_function()
+    pooled: FloatArray = (c0 + c1 * np.square(levels.mean))[levels.member]
+    return pooled
 
 
-def _variance_function(square: FloatArray, variance: FloatArray, freedom: FloatArray) -> FloatArray:
-    """c0 + c1 square, fitted to level variances with their degrees of freedom; c0, c1 at or above zero."""
-    scale = square.max()
-    share = square / scale if scale > 0.0 else square
+def replicate_variance_function(x: FloatArray, y: FloatArray) -> tuple[float, float]:
+    """c0 and c1 of the variance c0 + c1 y^2 of a single response of mean y, from replicates.
+
+    The function `replicate_variance` describes, for readings that are no standards, however many replicates a
+    level has. Raises ValueError as that does.
+    """
+    levels = _Levels(x, y)
+    if not (levels.spread > 0.0).any():
+        raise ValueError("replicates that differ are needed; there are none")
+    return levels.variance_function()
+
+
+def smooth_variance(y: FloatArray, variance: FloatArray) -> tuple[float, float]:
+    """c0 and c1 of the variance c0 + c1 y^2 through variances given for each response."""
+    return _variance_function(np.square(y), variance, np.ones_like(variance))
+
+
+class _Levels:
+    """Points gathered by their x."""
+
+    __slots__ = ("count", "freedom", "mean", "member", "spread")
+
+    def __init__(self, x: FloatArray, y: FloatArray) -> None:
+        _, member = np.unique(x, return_inverse=True)
+        self.member = member.reshape(-1)
+        self.count = np.bincount(self.member).astype(float)
+        self.mean = np.bincount(self.member, weights=y) / self.count
+        self.spread = np.bincount(self.member, weights=np.square(y - self.mean[self.member]))
+        self.freedom = self.count - 1.0
+
+    def variance_function(self) -> tuple[float, float]:
+        known = self.freedom > 0.0
+        variance = np.divide(self.spread, self.freedom, out=np.zeros_like(self.spread), where=known)
+        return _variance_function(np.square(self.mean), variance, self.freedom)
+
+
+def _variance_function(square: FloatArray, variance: FloatArray, freedom: FloatArray) -> tuple[float, float]:
+    """c0 and c1 of c0 + c1 square, fitted to variances with their degrees of freedom; none is below zero."""
+    scale = square.max() if square.max() > 0.0 else 1.0
+    share = square / scale
     pooled = float(freedom @ variance / freedom.sum())
     fitted = np.full_like(variance, pooled)
+    c0, c1 = pooled, 0.0
     for _ in range(_STEPS):
         weight = freedom / fitted**2
         candidates = []
@@ -109,4 +142,4 @@ def _variance_function(square: FloatArray, variance: FloatArray, freedom: FloatA
         if np.allclose(following, fitted, rtol=1e-12, atol=0.0):
             break
         fitted = following
-    return fitted
+    return float(c0), float(c1 / scale)

@@ -136,7 +136,8 @@ def test_arrays_of_a_curve_cannot_be_changed() -> None:
         ([0.0, 1.0, 2.0], [0.0, 1.0, 2.0], "line", "1/x^2", r"weights 1/x\^2 need every x above zero"),
         ([1.0, 2.0, 3.0], [1.0, 2.0, 3.0], "line", "replicates", "at least two points of the same x"),
         ([1.0, 1.0, 2.0, 2.0], [1.0, 1.0, 2.0, 2.0], "line", "replicates", "there is no variance"),
-        ([1.0, 2.0, 3.0], [1.0, 2.0, 3.0], "line", "both", "choose from equal, 1/x, 1/x"),
+        ([1.0, 2.0, 3.0], [1.0, 2.0, 3.0], "line", "1/y", "choose from equal, 1/x, 1/x"),
+        ([1.0, 2.0, 3.0], [1.0, 2.0, 3.0], "line", "both", "an uncertainty above zero for every standard"),
         (
             [1.0, 2.0, 3.0],
             [1.0, 2.0, 3.0],
