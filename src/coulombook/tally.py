@@ -21,7 +21,7 @@ from coulombook.balance.verdicts import closures, product_status, report_doubts,
 from coulombook.book import Book, InputFile
 from coulombook.book.entries import enter
 from coulombook.book.forecast import forecast
-from coulombook.cell.capacitance import charging_current_ampere
+from coulombook.cell.capacitance import ScanError, charging_current_ampere
 from coulombook.findings import DayFaults, Finding, Findings
 from coulombook.intake.day import DaySource, open_day
 from coulombook.intake.digest import sha256_of
@@ -249,12 +249,14 @@ def _read_scans(source: DaySource, day: Day, findings: Findings, progress: Progr
             )
         except DayFaults as faults:
             own.extend(faults.findings)
-        except ValueError as error:
+        except ScanError as error:
             own.add(
                 "broken-scan",
                 f"{scan.file} ({scan.origin})",
-                str(error),
+                "the voltammogram gives no charging current",
                 "check the window, the cycle and the file",
+                found=str(error),
+                expected=error.expected,
             )
         return own
 

@@ -10,6 +10,7 @@ from pathlib import Path
 from typing import Any
 
 import pytest
+from tests.faults.day import TABLES
 
 from coulombook.cli import main
 
@@ -138,4 +139,4 @@ def hold(errors: Sequence[Said], faults: Sequence[Fault], text: str) -> None:
 
 def in_workbook(fault: Fault) -> Fault:
     """The same fault of a table that is a sheet of day.xlsx."""
-    return replace(fault, where=re.sub(r"(\w+)\.csv", r"day.xlsx, sheet '\1'", fault.where))
+    return replace(fault, where=re.sub(rf"\b({'|'.join(TABLES)})\.csv", r"day.xlsx, sheet '\1'", fault.where))

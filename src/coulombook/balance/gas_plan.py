@@ -139,7 +139,7 @@ def plan_gas(
     order = {
         key: place for place, key in enumerate(sorted(dict.fromkeys(product_of), key=lambda key: key[0]))
     }
-    check_curve, drift, undrifted = _plan_drift(day, peaks, peak_curve, curves)
+    check_curve, drift, undrifted = _plan_drift(day, peaks, peak_curve, curves, findings)
     return GasPlan(
         injections,
         tuple(peaks),
@@ -233,7 +233,7 @@ def _demand_tracer(
 
 
 def _plan_drift(
-    day: Day, peaks: list[Peak], peak_curve: list[int], curves: CurvesUsed
+    day: Day, peaks: list[Peak], peak_curve: list[int], curves: CurvesUsed, findings: Findings
 ) -> tuple[IntArray, csr_array, FloatArray]:
     """Curve of each check, weights (P, D) of the checks in the drift factor of each peak, and who has no check."""
     by_channel: dict[int, list[int]] = {}
@@ -243,6 +243,13 @@ def _plan_drift(
         if index is not None:
             check_curve[number] = index
             by_channel.setdefault(index, []).append(number)
+        elif not day.species[check.analyte].carrier:
+            findings.add(
+                "injection-left-out",
+                check.origin.of("analyte"),
+                f"the check gas {check.analyte} has no curve on channel {check.channel}; it corrects no drift",
+                "correct analyte and channel, or delete the row",
+            )
     undrifted = np.ones(len(peaks))
     started = {run.name: run.started for run in day.runs}
     members: dict[int, list[int]] = {}

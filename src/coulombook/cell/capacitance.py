@@ -25,6 +25,15 @@ _OUTER = 0.2
 _WHOLE = 0.9  # share of the path of the longest cycle that a whole one has at least
 # share of the middle a sweep must cover; the record of a cycle may lack the step that joins it to the next
 _CROSSED = 0.9
+_BOTH_WAYS = "a potential that rises and falls"
+
+
+class ScanError(ValueError):
+    """A voltammogram that gives no charging current; ``expected`` says what would do."""
+
+    def __init__(self, message: str, expected: str) -> None:
+        self.expected = expected
+        super().__init__(message)
 
 
 @dataclass(frozen=True, slots=True)
@@ -117,7 +126,7 @@ def charging_current_ampere(
 
     Raises
     ------
-    ValueError
+    ScanError
         Too few samples, a potential that does not move, no such cycle, or a sweep that does not cross the
         window.
 
@@ -131,11 +140,11 @@ def charging_current_ampere(
     """
     e, i = potential_volt, current_ampere
     if e.size < 5:
-        raise ValueError(f"the voltammogram has {e.size} sample(s); it needs a rise and a fall")
+        raise ScanError(f"the voltammogram has {e.size} sample(s); it needs a rise and a fall", _BOTH_WAYS)
     if not (np.isfinite(e).all() and np.isfinite(i).all()):
-        raise ValueError("the voltammogram holds a value that is not a finite number")
+        raise ScanError("the voltammogram holds a value that is not a finite number", "finite numbers")
     if e.min() == e.max():
-        raise ValueError("the potential of the voltammogram does not move")
+        raise ScanError("the potential of the voltammogram does not move", _BOTH_WAYS)
     directions = _directions(e)
     # a step belongs to the cycle of the sample it leads to
     owner = (_cycles(e, directions) if cycle is None else cycle)[1:]
@@ -150,22 +159,29 @@ def charging_current_ampere(
         chosen = chosen_cycle
     steps = np.flatnonzero(owner == chosen)
     if steps.size == 0:
-        raise ValueError(f"there is no cycle {chosen:g}; the last one is {owner.max():g}")
+        raise ScanError(
+            f"there is no cycle {chosen:g}; the last one is {owner.max():g}",
+            f"a cycle from {owner.min():g} to {owner.max():g}",
+        )
     lowest = float(min(e[steps].min(), e[steps + 1].min()))
     highest = float(max(e[steps].max(), e[steps + 1].max()))
     low = lowest if window_low_volt is None else window_low_volt
     high = highest if window_high_volt is None else window_high_volt
+    within = f"a window within {lowest:g} V to {highest:g} V that the potential crosses both ways"
     if not low < high:
-        raise ValueError(f"the window runs from {low:g} V to {high:g} V; it must start below where it ends")
+        raise ScanError(
+            f"the window runs from {low:g} V to {high:g} V; it must start below where it ends", within
+        )
     middle, half = 0.5 * (low + high), 0.5 * MIDDLE_SHARE * (high - low)
     slack = 0.5 * (1.0 - _CROSSED) * (high - low)
     means = []
     for sign, name in ((1.0, "rising"), (-1.0, "falling")):
         mean, covered = _sweep_mean(e, i, steps[directions[steps] == sign], middle - half, middle + half)
         if lowest > low + slack or highest < high - slack or covered < _CROSSED:
-            raise ValueError(
+            raise ScanError(
                 f"the {name} sweep of cycle {chosen:g} does not cross the window {low:g} V to {high:g} V; "
-                f"the cycle runs from {lowest:g} V to {highest:g} V"
+                f"the cycle runs from {lowest:g} V to {highest:g} V",
+                within,
             )
         means.append(mean)
     return 0.5 * (means[0] - means[1])
