@@ -63,7 +63,7 @@ def tally(
 
     Examples
     --------
-    >>> book = tally("example_experiments/2043-05-18-mesh")  # doctest: +SKIP
+    >>> book = tally("example_experiments/2043-05-18-mesh-foil-foam")  # doctest: +SKIP
     >>> book.summary[["run", "total FE / %", "closure"]]  # doctest: +SKIP
     """
     folder, places = _folders(path, calibrations)

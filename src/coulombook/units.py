@@ -7,6 +7,7 @@ that an ordinary day never pays for pint's registry (about 0.4 s); every entry o
 from __future__ import annotations
 
 import difflib
+import math
 import re
 from collections.abc import Sequence
 from dataclasses import dataclass
@@ -61,6 +62,7 @@ DIMENSIONS: dict[str, Dimension] = {
         Dimension("potential per temperature", ("V/K",), ("mV/K", "V/K")),
         Dimension("capacitance per area", ("F/m^2",), ("uF/cm^2", "F/m^2")),
         Dimension("frequency", ("1/s",), ("Hz", "kHz")),
+        Dimension("angle", ("1",), ("deg", "rad")),
     )
 }
 
@@ -87,7 +89,7 @@ _EVERYDAY: dict[str, dict[str, float | tuple[float, float]]] = {
         "mmol/min": 1e-3 / 60, "mmol/h": 1e-3 / 3600,
     },
     "V/s": {"mV/s": 1e-3, "V/s": 1.0},
-    "1": {"1": 1.0, "%": 1e-2, "percent": 1e-2, "ppm": 1e-6},
+    "1": {"1": 1.0, "%": 1e-2, "percent": 1e-2, "ppm": 1e-6, "rad": 1.0, "deg": math.pi / 180.0},
     "V/K": {"mV/K": 1e-3, "V/K": 1.0, "mV/degC": 1e-3},
     "F/m^2": {"uF/cm^2": 1e-2, "mF/cm^2": 10.0, "F/m^2": 1.0},
     "1/s": {"Hz": 1.0, "kHz": 1e3, "MHz": 1e6, "mHz": 1e-3},

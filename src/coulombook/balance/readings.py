@@ -149,7 +149,10 @@ class Vial:
 
 @dataclass(frozen=True, slots=True)
 class Signal:
-    """One integrated signal of a vial: a row of ``liquid``. ``analyte`` equals the vial's ``standard`` for its rows."""
+    """One integrated signal of a vial: a row of ``liquid``. ``analyte`` equals the vial's ``standard`` for its rows.
+
+    The last three are given together or not at all; they tell how far the signal was saturated.
+    """
 
     vial: str
     analyte: str
@@ -157,6 +160,9 @@ class Signal:
     protons: float
     integral: float
     origin: RowOrigin
+    relaxation_second: float | None = None  # T1
+    repetition_second: float | None = None
+    flip_angle_radian: float | None = None  # 90 degrees when T1 is given without it
 
 
 @dataclass(frozen=True, slots=True)

@@ -199,6 +199,7 @@ def signals(
     """Integrated signals; ``standards`` maps a vial to its standard, whose rows carry the standard's name."""
     vials, analytes, words = table.words("vial"), table.words("analyte"), table.words("signal")
     protons, integrals = table.numbers("protons"), table.numbers("integral")
+    relaxation, repetition, flip = (table.numbers(head) for head in ("t1", "repetition time", "flip angle"))
     found: list[Signal] = []
     for place in _whole(table):
         text, standard = analytes[place], standards.get(vials[place])
@@ -213,7 +214,17 @@ def signals(
         if analyte is None or count is None or integral is None:
             continue
         found.append(
-            Signal(vials[place], analyte, signal_of(words[place]), count, integral, table.row_origin(place))
+            Signal(
+                vials[place],
+                analyte,
+                signal_of(words[place]),
+                count,
+                integral,
+                table.row_origin(place),
+                relaxation[place],
+                repetition[place],
+                flip[place],
+            )
         )
     return tuple(found)
 

@@ -196,6 +196,9 @@ LIQUID = Schema(
         words("signal"),
         number("protons", None, ABOVE_ZERO, needed=True),
         number("integral", needed=True, raw=True),
+        number("T1 / s", "time", ABOVE_ZERO, synonyms=("relaxation time",)),
+        number("repetition time / s", "time", ABOVE_ZERO),
+        number("flip angle / deg", "angle", ABOVE_ZERO),
     ),
 )
 SCANS = Schema(

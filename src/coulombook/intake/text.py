@@ -12,7 +12,6 @@ from collections.abc import Callable, Sequence
 SEPARATORS = ("\t", ";", ",")
 LONGEST_LINE = 65_536  # characters; a line of the bench's tables has some hundred
 
-_LINE_END = re.compile("\r\n|\n|\r")
 _NEVER_IN_TEXT = re.compile(r"[\x00-\x08\x0b\x0e-\x1f]")
 
 
@@ -65,13 +64,8 @@ def lines_of(text: str) -> list[str]:
 
     Raises `UnreadableText` when a line is longer than any table has.
     """
-    lines: list[str] = []
-    start = 0
-    for match in _LINE_END.finditer(text):
-        lines.append(text[start : match.end()])
-        start = match.end()
-    if start < len(text):
-        lines.append(text[start:])
+    # newline="" splits at exactly these three and keeps them; str.splitlines knows more
+    lines = list(io.StringIO(text, newline=""))
     longest = max(map(len, lines), default=0)
     if longest > LONGEST_LINE:
         row = next(number for number, line in enumerate(lines, 1) if len(line) == longest)
