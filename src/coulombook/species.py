@@ -16,6 +16,8 @@ from functools import cache
 from importlib.resources import files
 from typing import Any
 
+from coulombook.constants import FARADAY_CONSTANT, GAS_CONSTANT
+
 _PIECE = re.compile(r"([A-Z][a-z]?)(\d*)")
 _CHARGE = re.compile(r"(?:\^(\d*)|)([+-])$")
 TABLE_TEMPERATURE_KELVIN = 298.15  # of every tabulated Gibbs energy
@@ -264,8 +266,6 @@ def equilibrium_potential_she_volt(species: Species, pH: float = 0.0, state: str
     ValueError
         No Gibbs energy is known, for this state or at all, or the species is no product of CO2.
     """
-    from scipy.constants import N_A, R, e
-
     found = [one for one in species.gibbs if state is None or one.state == state]
     if not found or species.carrier:
         known = ", ".join(one.state for one in species.gibbs if not species.carrier) or "none"
@@ -275,8 +275,8 @@ def equilibrium_potential_she_volt(species: Species, pH: float = 0.0, state: str
     water, dioxide = table["water"].gibbs[0].joule_per_mol, table["carbon dioxide"].gibbs[0].joule_per_mol
     reaction = found[0].joule_per_mol + (2 * made.carbon - made.oxygen) * water - made.carbon * dioxide
     # every proton shifts G by RT ln a(H+)
-    reaction += (made.electrons + made.charge) * R * TABLE_TEMPERATURE_KELVIN * math.log(10.0) * pH
-    return float(-reaction / (made.electrons * N_A * e))
+    reaction += (made.electrons + made.charge) * GAS_CONSTANT * TABLE_TEMPERATURE_KELVIN * math.log(10.0) * pH
+    return float(-reaction / (made.electrons * FARADAY_CONSTANT))
 
 
 def equilibrium_potential_rhe_volt(species: Species, pH: float = 0.0, state: str | None = None) -> float:
@@ -292,8 +292,6 @@ def equilibrium_potential_rhe_volt(species: Species, pH: float = 0.0, state: str
     >>> round(equilibrium_potential_rhe_volt(table["formate"], 6.8), 3)
     -0.024
     """
-    from scipy.constants import N_A, R, e
-
     # the hydrogen electrode itself, -RT ln 10 pH / F against SHE
-    hydrogen = -R * TABLE_TEMPERATURE_KELVIN * math.log(10.0) * pH / (N_A * e)
+    hydrogen = -GAS_CONSTANT * TABLE_TEMPERATURE_KELVIN * math.log(10.0) * pH / FARADAY_CONSTANT
     return equilibrium_potential_she_volt(species, pH, state) - float(hydrogen)

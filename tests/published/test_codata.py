@@ -3,8 +3,10 @@
 from __future__ import annotations
 
 import pytest
+import scipy.constants
 from tests.published.reference import case
 
+from coulombook import constants
 from coulombook.amounts import gas
 from coulombook.cell import potential
 
@@ -12,14 +14,25 @@ VALUES = case("constants").expected
 
 
 def test_faraday_and_gas_constant_are_the_exact_ones() -> None:
-    for module in (gas, potential):
-        VALUES["F"].check(module.FARADAY_CONSTANT)
-        VALUES["R"].check(module.GAS_CONSTANT)
+    VALUES["F"].check(constants.FARADAY_CONSTANT)
+    VALUES["R"].check(constants.GAS_CONSTANT)
     # a second fact: the charge of a mole of elementary charges
     n_a, e = VALUES["N_A"].recomputed, VALUES["e"].recomputed
     assert n_a is not None
     assert e is not None
-    assert n_a * e == pytest.approx(potential.FARADAY_CONSTANT, rel=1e-10)
+    assert n_a * e == pytest.approx(constants.FARADAY_CONSTANT, rel=1e-10)
+
+
+def test_the_constants_are_those_of_the_codata_tables_of_scipy() -> None:
+    # exact by definition, so equal to the last bit of the doubles; products are rounded once
+    assert scipy.constants.e == constants.ELEMENTARY_CHARGE
+    assert constants.AVOGADRO_CONSTANT == scipy.constants.N_A
+    assert scipy.constants.k == constants.BOLTZMANN_CONSTANT
+    assert pytest.approx(scipy.constants.R, rel=1e-15) == constants.GAS_CONSTANT
+    # older editions of the table print the exact value cut off after ten digits
+    faraday, unit, _ = scipy.constants.physical_constants["Faraday constant"]
+    assert pytest.approx(faraday, rel=1e-9) == constants.FARADAY_CONSTANT
+    assert unit == "C mol^-1"
 
 
 def test_slope_of_the_rhe_scale() -> None:

@@ -8,7 +8,8 @@ from __future__ import annotations
 
 from tests.published.reference import case
 
-from coulombook.amounts.gas import FARADAY_CONSTANT, charge_rate_ampere, molar_density
+from coulombook.amounts.gas import charge_rate_ampere, molar_density
+from coulombook.constants import FARADAY_CONSTANT
 from coulombook.species import load_species
 
 DATA = case("flow_to_current")

@@ -17,6 +17,7 @@ SOURCE = Path(_SPEC.origin).parent
 
 ROOMS = (
     "data",
+    "constants",
     "units",
     "species",
     "findings",

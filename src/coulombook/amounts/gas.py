@@ -7,12 +7,8 @@ carries an error of 0.5 % by the ideal law; standard flows of meters are defined
 
 from __future__ import annotations
 
-from scipy.constants import R as GAS_CONSTANT
-from scipy.constants import physical_constants
-
+from coulombook.constants import FARADAY_CONSTANT, GAS_CONSTANT
 from coulombook.uncertainty.linearised import Number
-
-FARADAY_CONSTANT: float = physical_constants["Faraday constant"][0]  # C/mol
 
 
 def molar_density(pressure_pascal: Number, temperature_kelvin: Number) -> Number:

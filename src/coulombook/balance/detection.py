@@ -11,10 +11,11 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from coulombook.amounts.gas import FARADAY_CONSTANT, charge_rate_ampere
+from coulombook.amounts.gas import charge_rate_ampere
 from coulombook.balance.evaluate import GasReadings, Liquids, charge_to_sampling
 from coulombook.balance.plan import Plan
 from coulombook.balance.readings import FloatArray
+from coulombook.constants import FARADAY_CONSTANT
 from coulombook.uncertainty.errors import Inputs
 from coulombook.uncertainty.linearised import nominal
 

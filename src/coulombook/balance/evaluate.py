@@ -13,7 +13,6 @@ from dataclasses import dataclass
 import numpy as np
 
 from coulombook.amounts.gas import (
-    FARADAY_CONSTANT,
     charge_rate_ampere,
     dry_share,
     mixing_time_second,
@@ -31,6 +30,7 @@ from coulombook.amounts.water import saturated_water_vapour_pascal
 from coulombook.balance.plan import FlowPlan, Plan
 from coulombook.balance.readings import FloatArray, OutletFlow
 from coulombook.cell.potential import potential_rhe_volt, reference_potential_volt
+from coulombook.constants import FARADAY_CONSTANT
 from coulombook.curves.inverse import invert, response
 from coulombook.uncertainty.linearised import (
     IntArray,

@@ -13,12 +13,9 @@ from dataclasses import dataclass
 from functools import cache
 from importlib.resources import files
 
-from scipy.constants import R as GAS_CONSTANT
-from scipy.constants import physical_constants
-
+from coulombook.constants import FARADAY_CONSTANT, GAS_CONSTANT
 from coulombook.uncertainty.linearised import Number
 
-FARADAY_CONSTANT: float = physical_constants["Faraday constant"][0]  # C/mol
 TABLE_TEMPERATURE_KELVIN = 298.15  # of every tabulated reference potential
 
 
