@@ -73,7 +73,7 @@ def read_settings(folder: Folder, path: Path, findings: Findings) -> Settings | 
         _broken(
             findings,
             Origin(name, None, row),
-            f"{line}{re.sub(r' *[(]at .*[)]', '', message)}".lower(),
+            f"{line}{re.sub(r' *[(]at .*[)]', '', message[:1].lower() + message[1:])}",
             "correct the line; text stands in quotes, a key with blanks too",
         )
         return None
