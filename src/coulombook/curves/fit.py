@@ -84,6 +84,7 @@ class Curve:
     residual_sd: float  # of a point of mean weight, in the unit of the response
     r_squared: float
     certificate: FloatArray  # (3, 3)
+    response_variance: float  # of a point of mean weight, without what the standards' own errors add
     scatter: FloatArray  # (4,)
     distance: DistanceFit | None = None  # of a fit with errors in both variables
 
@@ -314,6 +315,7 @@ def fit_curve(
         residual_sd=found.residual_sd,
         r_squared=found.r_squared,
         certificate=certificate,
+        response_variance=found.response_variance,
         scatter=found.scatter,
         distance=found.distance,
     )
@@ -329,6 +331,7 @@ class _Found:
     degrees_of_freedom: int
     residual_sd: float
     r_squared: float
+    response_variance: float
     scatter: FloatArray
     distance: DistanceFit | None
 
@@ -348,6 +351,7 @@ def _fit_weighted(
         degrees_of_freedom=fit.degrees_of_freedom,
         residual_sd=fit.residual_sd,
         r_squared=fit.r_squared,
+        response_variance=variance,
         scatter=_scatter(x, y, weights, variance),
         distance=None,
     )
@@ -431,6 +435,7 @@ def _fit_both(
         degrees_of_freedom=freedom,
         residual_sd=float(1.0 / math.sqrt(np.mean(weight))) if freedom else 0.0,
         r_squared=1.0 - float(weight @ np.square(residual)) / total if total > 0.0 else math.nan,
+        response_variance=float(1.0 / np.mean(weight)),
         scatter=scatter,
         distance=fit,
     )
