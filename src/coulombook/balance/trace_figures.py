@@ -74,6 +74,9 @@ def figures_of(trace: Trace, request: TraceRequest) -> TraceFigures:
     usable = high > low if mixing is None else (moment > start) & (moment <= latest)
     held = np.clip(moment, start, latest)
     seen, weight, slope, now = (np.full(moment.shape, np.nan) for _ in range(4))
+    # of the whole window and of the injections' windows in one pass over the log
+    averaged = usable if mixing is None else np.zeros_like(usable)
+    weights = sample_weight(time, np.append(start, low[averaged]), np.append(stop, high[averaged]))
     mixed = None
     if usable.any():
         now[usable] = -interpolate(time, trace.current_ampere, held[usable])
@@ -81,7 +84,7 @@ def figures_of(trace: Trace, request: TraceRequest) -> TraceFigures:
         if usable.any():
             a, b = low[usable], high[usable]
             seen[usable] = -current.mean(a, b)
-            weight[usable] = sample_weight(time, a, b)
+            weight[usable] = weights[1:]
             edges = interpolate(time, trace.current_ampere, np.concatenate((a, b)))
             first, last = -edges[: len(a)], -edges[len(a) :]
             # an end that is clipped to the run's window stays there when the injection is shifted
@@ -100,7 +103,7 @@ def figures_of(trace: Trace, request: TraceRequest) -> TraceFigures:
         -float(current.integral(start, stop)),
         float(potential),
         float(voltage),
-        float(sample_weight(time, start, stop)),
+        float(weights[0]),
         usable,
         seen,
         weight,

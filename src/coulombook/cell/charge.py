@@ -241,9 +241,10 @@ def sample_weight(time_second: FloatArray, start_second: ArrayLike, stop_second:
     whole = np.zeros_like(t)
     whole[1:-1] = 0.5 * (t[2:] - t[:-2])
     running = np.concatenate(([0.0], np.cumsum(whole * whole)))
-    total = np.where(k > j + 2, running[k] - running[j + 2], 0.0)
-    for sample, counts in ((j, j >= 0), (j + 1, j >= 0), (k, k > j + 1), (k + 1, k > j)):
-        weight = _hat_integral(t, sample, stop) - _hat_integral(t, sample, start)
-        total = total + np.where(counts, weight * weight, 0.0)
+    inside = np.where(k > j + 2, running[k] - running[j + 2], 0.0)
+    edges = np.stack((j, j + 1, k, k + 1))
+    counts = np.stack((k >= j, k >= j, k > j + 1, k > j))  # a sample that is two of the four counts once
+    weight = _hat_integral(t, edges, stop) - _hat_integral(t, edges, start)
+    total = inside + np.where(counts, weight * weight, 0.0).sum(axis=0)
     result: FloatArray = np.sqrt(total) / (stop - start)
     return result.reshape(np.broadcast_shapes(np.shape(start_second), np.shape(stop_second)))
