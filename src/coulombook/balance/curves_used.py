@@ -15,6 +15,19 @@ from coulombook.findings import Findings
 GAS, LIQUID = "gas", "liquid"
 
 
+# What a curve needs, in words: for its form, and for its weights on top of that.
+_WANTED = {
+    "line": "standards at two levels or more, on a line that rises",
+    "line through zero": "a standard above zero or more, on a line that rises",
+    "quadratic": "standards at three levels or more, on a curve that rises over its whole range",
+}
+_WANTED_TOO = {
+    "1/x": ", every level above zero",
+    "1/x^2": ", every level above zero",
+    "replicates": ", with replicates that differ",
+}
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class UsedCurve:
     """A fitted curve with the standards it came from; ``curve`` is None when it could not be fitted."""
@@ -96,11 +109,12 @@ class CurvesUsed:
         except ValueError as error:
             self._findings.add(
                 "broken-curve",
-                where,
-                f"{name}: {error}",
+                standards.origins[0] if standards.origins else where,
+                f"the curve {name} ({len(standards.x)} standards, form '{standards.options.form}', "
+                f"weights '{standards.options.weights}') cannot be fitted",
                 "correct the standards or choose another form or weights in calibration.toml",
-                found=f"{len(standards.x)} standards, form '{standards.options.form}', "
-                f"weights '{standards.options.weights}'",
+                found=str(error),
+                expected=_WANTED[standards.options.form] + _WANTED_TOO.get(standards.options.weights, ""),
             )
             return None
         if curve.degrees_of_freedom == 0:

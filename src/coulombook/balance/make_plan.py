@@ -70,8 +70,8 @@ def make_plan(
     gas = plan_gas(day, injections, usable, curves, findings)
     liquid = plan_liquid(day, curves, findings)
     return Plan(
-        day.settings,
-        day.runs,
+        day,
+        charging_current_ampere,
         tuple(figures),
         curves,
         plan_flow([run.inlet_flow for run in day.runs]),

@@ -76,8 +76,10 @@ class ProductPlan:
 class Plan:
     """Fixed structure of a day."""
 
-    settings: DaySettings
-    runs: tuple[Run, ...]
+    day: Day
+    charging_current_ampere: (
+        FloatArray  # (n_scans,) in the order of ``day.scans``; NaN for a scan that was not read
+    )
     figures: tuple[TraceFigures, ...]
     curves: CurvesUsed
     inlet: FlowPlan
@@ -88,6 +90,16 @@ class Plan:
     surface: SurfacePlan
     products: ProductPlan
     headspace: NDArray[np.bool_]  # (R,)
+
+    @property
+    def settings(self) -> DaySettings:
+        """What day.toml says."""
+        return self.day.settings
+
+    @property
+    def runs(self) -> tuple[Run, ...]:
+        """The runs, in the order of their table."""
+        return self.day.runs
 
     @property
     def outlet_flow(self) -> OutletFlow:

@@ -23,7 +23,10 @@ class Budget:
 
     @property
     def share(self) -> FloatArray:
-        """Share of each source in the variance of each output, (n_outputs, n_sources); zero without a finite variance."""
+        """Share of each source in the variance of each output, (n_outputs, n_sources).
+
+        Zero where there is no finite variance.
+        """
         square = self.u**2
         total = square.sum(axis=1, keepdims=True)
         known = np.isfinite(total) & (total > 0)
