@@ -314,7 +314,7 @@ def test_day_folder_lists_every_key_of_a_calibration(tmp_path: Path, asked: dict
 
 
 def test_calibrations_tell_of_every_form_and_weighting() -> None:
-    told = set(quoted(text_of("docs/how_to_calibrations.md")))
+    told = set(quoted(prose(text_of("docs/how_to_calibrations.md"))))
     assert told >= {*FORMS, *WEIGHTS}
 
 
@@ -328,7 +328,7 @@ def test_results_list_every_column_of_a_table(name: str) -> None:
 
 
 def test_results_explain_every_status_and_verdict() -> None:
-    told = set(quoted(text_of("docs/results.md")))
+    told = set(quoted(prose(text_of("docs/results.md"))))
     assert told >= {QUANTIFIED, ABOVE, BELOW, CLOSED, SHORT, OVER}
 
 
