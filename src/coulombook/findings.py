@@ -110,6 +110,11 @@ KINDS: dict[str, tuple[Severity, str]] = {
     "above-calibration": (Severity.WARN, "a reading lies above the calibrated range"),
     "below-calibration": (Severity.WARN, "a reading lies below the calibrated range"),
     "curve-without-scatter": (Severity.WARN, "a curve has no standards to spare, so that its scatter is unknown"),
+    "propagation-not-validated": (
+        Severity.WARN,
+        "draws show that the law of propagation is not good enough for an output",
+    ),
+    "not-reconciled": (Severity.WARN, "the readings cannot be adjusted to the balance"),
     "no-limits": (Severity.WARN, "the detection limit of a curve cannot be found by the scheme chosen"),
     "no-curve": (Severity.WARN, "a signal has no curve in the calibration; proton counting was used"),
     "injection-left-out": (Severity.WARN, "an injection cannot be used and was left out"),

@@ -11,6 +11,8 @@ from typing import TypeVar
 
 import numpy as np
 
+from coulombook.balance.draws import draw_day
+from coulombook.balance.explain import explain
 from coulombook.balance.gas_plan import list_injections
 from coulombook.balance.liquid_plan import list_samplings
 from coulombook.balance.make_plan import make_plan, recentred_requests, trace_requests
@@ -19,8 +21,14 @@ from coulombook.balance.settle import Settled, settle
 from coulombook.balance.trace_figures import TraceFigures, TraceRequest, figures_of
 from coulombook.balance.verdicts import closures, product_status, report_doubts, report_faults
 from coulombook.book import Book, InputFile
-from coulombook.book.entries import enter
+from coulombook.book.entries import Row, enter
 from coulombook.book.forecast import forecast
+from coulombook.book.judgements import (
+    explanation_rows,
+    interval_rows,
+    reconciliation_rows,
+    series_groups,
+)
 from coulombook.cell.capacitance import ScanError, charging_current_ampere
 from coulombook.findings import DayFaults, Finding, Findings
 from coulombook.intake.day import DaySource, open_day
@@ -36,6 +44,9 @@ def tally(
     path: str | os.PathLike[str],
     *,
     calibrations: Sequence[str | os.PathLike[str]] = (),
+    draws: int = 0,
+    seed: int = 1,
+    reconcile: bool = False,
     progress: Progress | None = None,
 ) -> Book:
     """Tally a day folder: from its files to the book.
@@ -46,8 +57,14 @@ def tally(
         The day folder.
     calibrations : sequence of paths
         Folders that hold calibrations, looked at after ``<day>/calibrations`` and before ``./calibrations``.
+    draws : int
+        Number of Monte Carlo draws for coverage intervals (JCGM 101 asks for 1e4/(1 - level) and more); 0: none.
+    seed : int
+        The same seed gives the same draws.
+    reconcile : bool
+        Adjust the day's readings to totals of 100 %, in a table beside the measured ones.
     progress : callable, optional
-        Called as progress(what, done, of) while the long files are read.
+        Called as progress(what, done, of) while the long files are read and draws are made.
 
     Returns
     -------
@@ -73,15 +90,43 @@ def tally(
     findings.raise_stops()
     assert settled is not None  # without faults there is an account
     assert source.day is not None
-    inputs = _fingerprints(source)
+    judgements = _judge(settled, findings, draws, seed, reconcile, progress or _silent)
     return Book(
         source.day.name,
         source.day.settings.title,
-        enter(settled, tuple(findings)),
+        enter(settled, tuple(findings), judgements),
         tuple(findings),
-        inputs,
-        {"calibrations": os.pathsep.join(map(str, calibrations))},
+        _fingerprints(source),
+        {
+            "calibrations": os.pathsep.join(map(str, calibrations)),
+            "draws": str(draws),
+            "seed": str(seed),
+            "reconcile": "yes" if reconcile else "no",
+        },
     )
+
+
+def _judge(
+    settled: Settled, findings: Findings, draws: int, seed: int, reconcile: bool, progress: Progress
+) -> dict[str, list[Row]]:
+    """The tables that judge the day: why it does not close, and what was asked for beyond."""
+    judgements = {"explanations": explanation_rows(explain(settled))}
+    if draws:
+        turns = draw_day(
+            settled, series_groups(settled), draws, seed, lambda done, of: progress("draws", done, of)
+        )
+        judgements["intervals"] = interval_rows(settled, turns, draws, findings)
+    if reconcile:
+        try:
+            judgements["reconciliation"] = reconciliation_rows(settled)
+        except ValueError as error:
+            findings.add(
+                "not-reconciled",
+                "[balance]",
+                f"the day cannot be adjusted to its balance: {error}",
+                "declare the uncertainties of the readings, or [balance] unaccounted",
+            )
+    return judgements
 
 
 @dataclass(frozen=True, slots=True)

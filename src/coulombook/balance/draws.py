@@ -24,7 +24,9 @@ from coulombook.uncertainty.linearised import IntArray, Linearised, Number, nomi
 # of one turn: rows of draws that are evaluated at a time
 CHUNK = 4096
 
-# quantities that cannot be negative: drawn from a lognormal distribution of the same mean and standard deviation
+# Quantities that cannot be negative. Where a normal distribution would put more than 3e-7 of its draws below zero (zero
+# within five standard deviations), a lognormal one of the same mean and standard deviation takes its place.
+_NEAR_ZERO = 0.2
 _POSITIVE = (
     "peak area", "check area", "check mole fraction", "integral", "standard integral", "standard amount", "aliquot",
     "compartment volume", "electrode area", "scan area", "scan rate", "inlet flow", "outlet flow", "tracer flow",
@@ -149,16 +151,15 @@ class _Rows:
             return np.broadcast_to(self.value, shape)
         held = self._jacobian[:, self.columns]
         moved = (held @ normals[np.searchsorted(columns, self.columns)]).T
-        if not self._positive:
-            result: FloatArray = self.value + moved
-            return result
-        # lognormal with the mean and the standard deviation of the input (JCGM 101:2008, 6.4.1): ln x is normal with
-        # variance ln(1 + (u/x)^2)
-        u = np.sqrt(np.asarray(held.multiply(held).sum(axis=1)).ravel())
-        spread = np.sqrt(np.log1p((u / self.value) ** 2))
-        unit = np.divide(moved, u, out=np.zeros(shape), where=u > 0)
-        lognormal: FloatArray = self.value * np.exp(spread * unit - 0.5 * spread**2)
-        return lognormal
+        drawn: FloatArray = self.value + moved
+        if self._positive:
+            u = np.sqrt(np.asarray(held.multiply(held).sum(axis=1)).ravel())
+            near = u > _NEAR_ZERO * self.value
+            # lognormal with the mean and the standard deviation of the input: ln x is normal with variance
+            # ln(1 + (u/x)^2)
+            spread = np.sqrt(np.log1p((u[near] / self.value[near]) ** 2))
+            drawn[:, near] = self.value[near] * np.exp(spread * moved[:, near] / u[near] - 0.5 * spread**2)
+        return drawn
 
 
 def _renormalised(weights: FloatArray, group: IntArray) -> FloatArray:

@@ -25,6 +25,8 @@ TOLD_APART = 2.0 * np.log(10.0)
 PRIOR_SD = 0.10  # of a relative error or a lost share
 _ACCUSED_BY_CHANCE = 0.05
 _CHANCE_DAYS = 2000
+# chance gives the best of a hundred candidates 2 ln of a Bayes factor of this size in less than one day in a thousand
+_BEYOND_CHANCE = 25.0
 _SEED = 20430518
 # scatter between runs that the stated uncertainties do not hold, tried as a fraction FE
 _SCATTERS = np.concatenate(([0.0], np.geomspace(0.002, 0.3, 15)))
@@ -142,7 +144,8 @@ def rank(residual: FloatArray, v: FloatArray, causes: Sequence[Cause]) -> Explai
     whitened = _Whitened(v)
     gains = whitened.gain(residual[None, :], causes)[0].tolist()
     scatter = int(whitened.deviance(residual[None, :])[0].argmin())
-    closes = not gains or max(gains) <= _chance_gain(whitened, causes, scatter)
+    best = max(gains, default=0.0)
+    closes = best <= 0 or (best < _BEYOND_CHANCE and best <= _chance_gain(whitened, causes, scatter))
     fits = [whitened.estimate(residual, cause) for cause in causes]
     labels = names(causes)
     order = sorted(range(len(causes)), key=lambda number: -gains[number])

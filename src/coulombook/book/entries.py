@@ -49,8 +49,10 @@ def level_of(run: Run) -> str:
     return run.name
 
 
-def enter(settled: Settled, findings: Sequence[Finding]) -> dict[str, Table]:
-    """Every table of the book."""
+def enter(
+    settled: Settled, findings: Sequence[Finding], judgements: Mapping[str, list[Row]] | None = None
+) -> dict[str, Table]:
+    """Every table of the book; ``judgements`` are the rows of tables that judge the day, by name."""
     status = product_status(settled)
     closure, _ = closures(settled)
     tables: Mapping[str, list[Row]] = {
@@ -61,6 +63,7 @@ def enter(settled: Settled, findings: Sequence[Finding]) -> dict[str, Table]:
         "surface": _surface(settled),
         "calibrations": _calibrations(settled),
         "budget": _budget(settled),
+        **(judgements or {}),
         "findings": [
             {
                 "severity": str(one.severity),

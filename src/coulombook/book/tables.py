@@ -47,6 +47,15 @@ CALIBRATIONS = (
     "highest / ppm",
 )  # fmt: skip
 BUDGET = ("run", "output", "source", "shared", "u / %", "share / %")
+EXPLANATIONS = (
+    "rank", "cause", "where", "estimate / %", "u(estimate) / %", "evidence", "told apart", "bench test",
+)  # fmt: skip
+INTERVALS = (
+    "run", "output", "value / %", "u / %", "u(draws) / %", "low / %", "high / %", "propagation",
+)  # fmt: skip
+RECONCILIATION = (
+    "run", "product", "FE / %", "u(FE) / %", "adjusted FE / %", "u(adjusted FE) / %", "z",
+)  # fmt: skip
 FINDINGS = ("severity", "kind", "where", "text", "mend")
 
 TABLES: Mapping[str, tuple[str, ...]] = {
@@ -57,6 +66,9 @@ TABLES: Mapping[str, tuple[str, ...]] = {
     "surface": SURFACE,
     "calibrations": CALIBRATIONS,
     "budget": BUDGET,
+    "explanations": EXPLANATIONS,
+    "intervals": INTERVALS,
+    "reconciliation": RECONCILIATION,
     "findings": FINDINGS,
 }
 

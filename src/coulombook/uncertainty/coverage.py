@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from statistics import NormalDist
 
 import numpy as np
 from numpy.typing import NDArray
@@ -56,12 +57,38 @@ def numerical_tolerance(u: float, digits: int = SIGNIFICANT_DIGITS) -> float:
 
 
 def propagation_validated(
-    value: FloatArray, u: FloatArray, factor: float, low: FloatArray, high: FloatArray
+    value: FloatArray, u: FloatArray, level: float, low: FloatArray, high: FloatArray, n_draws: int
 ) -> NDArray[np.bool_]:
-    """Whether value +- factor u agrees with the drawn interval within the numerical tolerance (JCGM 101:2008, 8.1)."""
-    tolerance = np.array([numerical_tolerance(one) for one in u])
+    """Whether value +- k u agrees with the drawn interval (JCGM 101:2008, 8.1).
+
+    Each end may differ by the numerical tolerance of u (two digits) and by twice the sampling error that n_draws leave
+    to a quantile of a normal distribution.
+
+    Parameters
+    ----------
+    value, u : (n_outputs,) float arrays
+        By the law of propagation.
+    level : float
+        Level of confidence.
+    low, high : (n_outputs,) float arrays
+        Quantiles (1 - level)/2 and (1 + level)/2 of the draws.
+    n_draws : int
+    """
+    normal = NormalDist()
+    tail = (1.0 - level) / 2.0
+    factor = normal.inv_cdf(1.0 - tail)
+    sampling = math.sqrt(tail * (1.0 - tail) / n_draws) / normal.pdf(factor)
+    tolerance = np.array([numerical_tolerance(one) for one in u.tolist()]) + 2.0 * sampling * u
     with np.errstate(invalid="ignore"):
         below = np.abs(value - factor * u - low) <= tolerance
         above = np.abs(value + factor * u - high) <= tolerance
     result: NDArray[np.bool_] = below & above
     return result
+
+
+def symmetric_interval(sorted_draws: FloatArray, level: float) -> tuple[FloatArray, FloatArray]:
+    """Quantiles (1 - level)/2 and (1 + level)/2 of draws (n_outputs, n_draws) that are sorted already."""
+    n = sorted_draws.shape[-1]
+    tail = (1.0 - level) / 2.0
+    low = min(max(round(tail * n), 0), n - 1)
+    return sorted_draws[:, low], sorted_draws[:, n - 1 - low]
