@@ -152,7 +152,8 @@ def _tables(
     """The tables that could be read, and the names of all that are there."""
     defaults = file.defaults if file else {}
     files = _table_files(home, findings)
-    sheets = _sheet_grids(home, defaults, findings)
+    read = _sheet_grids(home, defaults, findings)
+    sheets = read or {}
     tables: dict[str, TypedTable] = {}
     for name, columns in schema.DAY_TABLES.items():
         given = defaults if name == "runs" else {}
@@ -169,7 +170,8 @@ def _tables(
             grid = sheets.get(name)
         if grid is not None:
             tables[name] = typed_table(grid, columns, findings, given)
-    there = frozenset(files) | frozenset(sheets)
+    # a workbook that cannot be read may hold any table, and none must be called missing
+    there = frozenset(files) | (frozenset(sheets) if read is not None else frozenset(schema.DAY_TABLES))
     if schema.SPECTRA in there:
         place = (
             home.name_of(files[schema.SPECTRA][0])
@@ -211,16 +213,17 @@ def _text_grid(home: Folder, path: Path, score: Callable[..., float], findings: 
         return None
 
 
-def _sheet_grids(home: Folder, defaults: Mapping[str, object], findings: Findings) -> dict[str, Grid]:
+def _sheet_grids(home: Folder, defaults: Mapping[str, object], findings: Findings) -> dict[str, Grid] | None:
+    """The tables among the sheets of day.xlsx; None when it is there and cannot be read."""
     path = home.root / WORKBOOK
     if not path.exists() and not path.is_symlink():
         return {}
     data = read_bytes(home, path, LARGEST_TABLE_BYTE, findings)
     if data is None:
-        return {}
+        return None
     sheets = read_sheets(data, WORKBOOK, lambda name: name.strip().casefold() in _TABLES, findings)
     if sheets is None:
-        return {}
+        return None
     for name in sheets.unread:
         _report_unread(findings, f"{WORKBOOK}, sheet '{name}'", name)
     grids: dict[str, Grid] = {}

@@ -34,6 +34,12 @@ class Grid:
         return Origin(self.file, self.sheet, self.numbers[place], head)
 
 
+class FaultyCell(str):
+    """A blank in place of a cell whose fault has been told already."""
+
+    __slots__ = ()
+
+
 def is_blank(cell: Cell) -> bool:
     """Whether a cell holds nothing but blanks."""
     return cell is None or (isinstance(cell, str) and not cell.strip())

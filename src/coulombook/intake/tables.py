@@ -10,7 +10,7 @@ from datetime import date, datetime
 
 from coulombook.findings import Findings, Origin, RowOrigin
 from coulombook.intake.files import did_you_mean
-from coulombook.intake.grid import Cell, Grid, cell_text, is_blank
+from coulombook.intake.grid import Cell, FaultyCell, Grid, cell_text, is_blank
 from coulombook.intake.schema import Column, Content, Schema
 from coulombook.units import Conversion, UnitError, conversion, nearest, parse_head
 
@@ -299,6 +299,8 @@ def _read_column(
         values = [text or None for text in map(cell_text, cells)]
     kinds = [how.flow_kind if how else None] * len(cells)
     blank = [place for place, cell in enumerate(cells) if is_blank(cell)]
+    told = {place for place in blank if isinstance(cells[place], FaultyCell)}
+    table.broken |= told
     if default is not None:
         for place in blank:
             values[place] = default.value
@@ -306,7 +308,7 @@ def _read_column(
     elif column.needed and how is not None:
         for place in blank:
             table.broken.add(place)
-            if place not in unused:
+            if place not in unused and place not in told:
                 findings.add(
                     "missing-value",
                     table.where(place, quantity),

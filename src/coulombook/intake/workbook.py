@@ -12,7 +12,7 @@ from typing import Any
 
 from coulombook.findings import Findings, Origin
 from coulombook.intake.files import unreadable
-from coulombook.intake.grid import Cell
+from coulombook.intake.grid import Cell, FaultyCell
 
 Rows = list[tuple[int, Sequence[Cell]]]
 
@@ -35,7 +35,7 @@ def read_sheets(data: bytes, file: str, wanted: Callable[[str], bool], findings:
     """Rows of every wanted sheet, trailing blank cells removed; None after a fault that makes the file unreadable.
 
     Cells hold what the workbook last computed. A cell with an error, or with a formula nobody has computed, is a
-    fault that names it, and reads as blank.
+    fault that names it, and reads as a `FaultyCell`.
     """
     if not _sound(data, file, findings):
         return None
@@ -54,12 +54,15 @@ def read_sheets(data: bytes, file: str, wanted: Callable[[str], bool], findings:
     unread = tuple(name for name, rows in sheets.items() if rows and not wanted(name))
     sheets = {name: rows for name, rows in sheets.items() if wanted(name)}
     for name, rows in sheets.items():
-        written = dict(formulas.get(name, []))
-        for place, (number, cells) in enumerate(rows):
-            rows[place] = (
+        # a row of formulas that nobody has computed holds no value, and would be missed
+        held, written = dict(rows), dict(formulas.get(name, []))
+        rows[:] = [
+            (
                 number,
-                _checked(cells, written.get(number, ()), Origin(file, name, number), findings),
+                _checked(held.get(number, ()), written.get(number, ()), Origin(file, name, number), findings),
             )
+            for number in sorted({*held, *written})
+        ]
     return Sheets(sheets, unread)
 
 
@@ -78,13 +81,11 @@ def _checked(
                 found=f"'{value}'",
                 expected="a value",
             )
-            values[column] = None
+            values[column] = FaultyCell()
     for column, formula in enumerate(written):
         # an array formula is an object of its own
         is_formula = formula.startswith("=") if isinstance(formula, str) else hasattr(formula, "ref")
         if values[column] is None and is_formula:
-            if column < len(cells) and isinstance(cells[column], str):
-                continue  # an error cell, told of above
             findings.add(
                 "not-a-number",
                 _cell_place(where, column),
@@ -93,6 +94,7 @@ def _checked(
                 found=f"'{getattr(formula, 'text', formula)!s:.60}'",
                 expected="a formula with its result, or a value",
             )
+            values[column] = FaultyCell()
     return values
 
 
