@@ -111,8 +111,8 @@ KINDS: dict[str, tuple[Severity, str]] = {
     "below-calibration": (Severity.WARN, "a reading lies below the calibrated range"),
     "curve-without-scatter": (Severity.WARN, "a curve has no standards to spare, so that its scatter is unknown"),
     "propagation-not-validated": (
-        Severity.WARN,
-        "draws show that the law of propagation is not good enough for an output",
+        Severity.NOTE,
+        "draws give another interval than the law of propagation, by more than the digits shown",
     ),
     "not-reconciled": (Severity.WARN, "the readings cannot be adjusted to the balance"),
     "no-limits": (Severity.WARN, "the detection limit of a curve cannot be found by the scheme chosen"),
