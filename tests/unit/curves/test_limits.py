@@ -14,10 +14,8 @@ from coulombook.curves.prediction import curve_response
 X = np.array([1.0, 2.0, 3.0, 4.0])
 # residuals (1, -1, -1, 1) are orthogonal to 1 and x: slope 10, intercept 5, s^2 = 4/2, Sxx = 5, mean x = 2.5
 LINE = fit_curve(X, 5.0 + 10.0 * X + np.array([1.0, -1.0, -1.0, 1.0]))
-T95, T975 = (
-    2.919985580355516,
-    4.302652729696142,
-)  # Student's t with 2 degrees of freedom, printed in any table
+# Student's t with 2 degrees of freedom, in closed form
+T95, T975 = 0.9 / math.sqrt(2.0 * 0.95 * 0.05), 0.95 / math.sqrt(2.0 * 0.975 * 0.025)
 
 
 def test_decision_limit_worked_by_hand() -> None:
