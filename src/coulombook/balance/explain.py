@@ -77,44 +77,51 @@ class _Whitened:
         base = self.deviance(r)
         best = np.full((len(r), len(causes)), np.inf)
         single = [number for number, cause in enumerate(causes) if cause.pattern.shape[1] == 1]
+        several = [number for number, cause in enumerate(causes) if cause.pattern.shape[1] > 1]
         z = r @ self.axes
+        turned = [self.axes.T @ causes[number].pattern for number in several]
+        d = self.axes.T @ np.column_stack([causes[number].pattern for number in single]) if single else None
         for scatter, weights in enumerate(self.weights):
-            if single:
-                d = self.axes.T @ np.column_stack([causes[number].pattern for number in single])
+            if d is not None:
                 right = (z * weights) @ d
                 information = weights @ d**2
                 gained = right**2 / (information + PRIOR_SD**-2) - np.log1p(PRIOR_SD**2 * information)
                 forbidden = np.array([causes[number].only_positive for number in single]) & (right < 0)
                 found = base[:, [scatter]] - np.where(forbidden, -np.log1p(PRIOR_SD**2 * information), gained)
                 best[:, single] = np.minimum(best[:, single], found)
-            for number in set(range(len(causes))).difference(single):
-                gained = self._gain_of_several(z, weights, causes[number])
+            for number, pattern in zip(several, turned, strict=True):
+                gained = _gain_of_several(z, weights, pattern, causes[number].only_positive)
                 best[:, number] = np.minimum(best[:, number], base[:, scatter] - gained)
         result: FloatArray = base.min(axis=1)[:, None] - best
         return result
 
-    def _gain_of_several(self, z: FloatArray, weights: FloatArray, cause: Cause) -> FloatArray:
-        d = self.axes.T @ cause.pattern
-        right = (z * weights) @ d
-        information = (d.T * weights) @ d
-        k = d.shape[1]
-        inside = np.linalg.solve(information + np.eye(k) * PRIOR_SD**-2, right.T).T
-        occam = np.linalg.slogdet(np.eye(k) + PRIOR_SD**2 * information)[1]
-        gained = (inside * right).sum(axis=1)
-        result: FloatArray = np.where(cause.only_positive & (inside[:, 0] < 0), 0.0, gained) - occam
-        return result
+    def estimates(self, r: FloatArray, causes: Sequence[Cause]) -> list[tuple[float, float]]:
+        """Generalised-least-squares estimate of each first parameter, with its u, at its best scatter for r (R,)."""
+        if not causes:
+            return []
+        z = r @ self.axes
+        # all patterns turned at once: the axes of a long day are large
+        turned = self.axes.T @ np.concatenate([cause.pattern for cause in causes], axis=1)
+        ends = np.cumsum([cause.pattern.shape[1] for cause in causes])
+        return [self._estimate(z, d) for d in np.split(turned, ends[:-1], axis=1)]
 
-    def estimate(self, r: FloatArray, cause: Cause) -> tuple[float, float]:
-        """Generalised-least-squares estimate of the first parameter, with its u, at the best scatter for r (R,)."""
-        d, z = self.axes.T @ cause.pattern, r @ self.axes
-        found = []
-        for weights, logdet in zip(self.weights, self.logdet, strict=True):
-            inverse = np.linalg.pinv((d.T * weights) @ d, hermitian=True)
-            theta = inverse @ (d.T @ (weights * z))
-            deviance = weights @ (z - d @ theta) ** 2 + logdet
-            found.append((float(deviance), float(theta[0]), float(np.sqrt(inverse[0, 0]))))
-        _, theta0, u = min(found)
-        return theta0, u
+    def _estimate(self, z: FloatArray, d: FloatArray) -> tuple[float, float]:
+        inverse = np.linalg.pinv(d.T @ (self.weights[:, :, None] * d), hermitian=True)  # (S, k, k)
+        theta = (inverse @ ((self.weights * z) @ d)[:, :, None])[:, :, 0]  # (S, k)
+        deviance = (self.weights * (z - theta @ d.T) ** 2).sum(axis=1) + self.logdet
+        best = int(deviance.argmin())
+        return float(theta[best, 0]), float(np.sqrt(inverse[best, 0, 0]))
+
+
+def _gain_of_several(z: FloatArray, weights: FloatArray, d: FloatArray, only_positive: bool) -> FloatArray:
+    right = (z * weights) @ d
+    information = (d.T * weights) @ d
+    k = d.shape[1]
+    inside = np.linalg.solve(information + np.eye(k) * PRIOR_SD**-2, right.T).T
+    occam = np.linalg.slogdet(np.eye(k) + PRIOR_SD**2 * information)[1]
+    gained = (inside * right).sum(axis=1)
+    result: FloatArray = np.where(only_positive & (inside[:, 0] < 0), 0.0, gained) - occam
+    return result
 
 
 def explain(settled: Settled) -> Explained:
@@ -146,7 +153,7 @@ def rank(residual: FloatArray, v: FloatArray, causes: Sequence[Cause]) -> Explai
     scatter = int(whitened.deviance(residual[None, :])[0].argmin())
     best = max(gains, default=0.0)
     closes = best <= 0 or (best < _BEYOND_CHANCE and best <= _chance_gain(whitened, causes, scatter))
-    fits = [whitened.estimate(residual, cause) for cause in causes]
+    fits = whitened.estimates(residual, causes)
     labels = names(causes)
     order = sorted(range(len(causes)), key=lambda number: -gains[number])
     ranked = []

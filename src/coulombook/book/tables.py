@@ -6,7 +6,6 @@ show it. pandas is imported when a frame is first asked for.
 
 from __future__ import annotations
 
-import math
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
@@ -92,7 +91,7 @@ class Table:
         for row in rows:
             if not row.keys() <= known:
                 raise KeyError(f"table {name} has no head {sorted(row.keys() - known)}")
-        return cls(name, heads, tuple(tuple(_absent(row.get(head)) for head in heads) for row in rows))
+        return cls(name, heads, tuple(tuple(map(_absent, map(row.get, heads))) for row in rows))
 
     def __len__(self) -> int:
         return len(self.rows)
@@ -115,7 +114,8 @@ class Table:
 
 
 def _absent(cell: Cell) -> Cell:
-    return None if isinstance(cell, float) and math.isnan(cell) else cell
+    # NaN alone differs from itself
+    return None if cell != cell else cell
 
 
 @dataclass(frozen=True, slots=True, eq=False)
