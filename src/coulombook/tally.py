@@ -19,7 +19,14 @@ from coulombook.balance.make_plan import make_plan, recentred_requests, trace_re
 from coulombook.balance.readings import Day, FloatArray, Run
 from coulombook.balance.settle import Settled, settle
 from coulombook.balance.trace_figures import TraceFigures, TraceRequest, figures_of
-from coulombook.balance.verdicts import closures, product_status, report_doubts, report_faults
+from coulombook.balance.verdicts import (
+    closures,
+    product_status,
+    report_checks,
+    report_doubts,
+    report_faults,
+    report_signals,
+)
 from coulombook.book import Book, InputFile
 from coulombook.book.entries import Row, enter
 from coulombook.book.forecast import forecast
@@ -190,6 +197,8 @@ def settle_day(source: DaySource, findings: Findings, progress: Progress | None 
         return None
     closure, _ = closures(settled)
     report_doubts(settled, product_status(settled), closure, findings)
+    report_signals(settled, findings)
+    report_checks(settled, findings)
     return settled
 
 

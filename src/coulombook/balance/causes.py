@@ -12,17 +12,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from coulombook.balance.evaluate import evaluate
-from coulombook.balance.readings import FloatArray, OutletFlow
+from coulombook.balance.readings import FloatArray
 from coulombook.balance.settle import Settled
 from coulombook.uncertainty.linearised import Linearised, Number, nominal, sparse_map
-
-# what is entered as the outlet flow in each mode
-_FLOW = {
-    OutletFlow.INLET: "inlet flow",
-    OutletFlow.MEASURED: "outlet flow",
-    OutletFlow.TRACER: "tracer flow",
-    OutletFlow.BALANCE: "inlet flow",
-}
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -60,7 +52,7 @@ class _Load:
 def _loads(settled: Settled) -> Iterator[_Load]:
     plan, x = settled.plan, settled.inputs.nominal
     gas, liquid = plan.gas, plan.liquid
-    flow = _FLOW[plan.outlet_flow]
+    flow = plan.outlet_flow.entered
     yield _Load("outlet-flow", "", flow, x[flow], "measure the outlet flow with the cell at open circuit")
     channels = np.array([" ".join(peak.channel.split()) for peak in gas.peaks], dtype=object)
     products = np.array([peak.analyte for peak in gas.peaks], dtype=object)

@@ -8,7 +8,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from coulombook.balance.readings import Calibration, FloatArray, StandardSet
+from coulombook.curves.carbon_number import relative_response, scale_curve
 from coulombook.curves.fit import Curve, fit_curve
+from coulombook.curves.judgement import Judgement, judge
 from coulombook.curves.limits import Limits, limits
 from coulombook.findings import Findings
 
@@ -30,10 +32,16 @@ _WANTED_TOO = {
 
 @dataclass(frozen=True, slots=True, eq=False)
 class UsedCurve:
-    """A fitted curve with the standards it came from; ``curve`` is None when it could not be fitted."""
+    """A fitted curve with the standards it came from; ``curve`` is None when it could not be fitted.
+
+    ``judgement`` is None for a curve without standards of its own: one made like another, whose place in
+    `CurvesUsed.used` is ``like``.
+    """
 
     standards: StandardSet
     curve: Curve | None
+    judgement: Judgement | None = None
+    like: int | None = None
 
     @property
     def name(self) -> str:
@@ -73,8 +81,10 @@ class CurvesUsed:
         standards = self._known.get(key)
         if standards is None:
             return None
+        made = self._borrow(standards) if standards.options.like is not None else self._make(standards)
+        # after its reference, if it has one
         self._index[key] = len(self.used)
-        self.used.append(UsedCurve(standards, self._fit(standards)))
+        self.used.append(made)
         return self._index[key]
 
     def channels(self, kind: str, analyte: str) -> tuple[str, ...]:
@@ -85,17 +95,60 @@ class CurvesUsed:
             if key[0] == kind and key[2] == analyte
         )
 
-    def _fit(self, standards: StandardSet) -> Curve | None:
-        where = standards.origins[0].file if standards.origins else f"calibration {standards.calibration}"
-        name = f"{standards.analyte}@{standards.channel}"
-        if standards.options.like is not None:
+    def _borrow(self, standards: StandardSet) -> UsedCurve:
+        """The curve of another analyte on the same channel, scaled by effective carbon numbers."""
+        like = standards.options.like or ""
+        reference = like.partition("@")[0]
+        where = f"calibration {standards.calibration}"
+        index = self.index(standards.kind, standards.channel, reference)
+        source = None if index is None else self.used[index]
+        if source is None or source.curve is None or source.like is not None:
             self._findings.add(
                 "broken-curve",
                 where,
-                f"{name} is to be made like {standards.options.like}, which this version cannot do yet",
+                f"{standards.analyte}@{standards.channel} is to be made like {like}, which has no standards of its own",
+                "name a curve with standards",
+                found=like,
+            )
+            return UsedCurve(standards, None)
+        try:
+            factor, u_factor = relative_response(standards.analyte, reference)
+            curve = scale_curve(source.curve, factor, u_factor)
+        except ValueError as error:
+            self._findings.add(
+                "broken-curve",
+                where,
+                f"{standards.analyte}@{standards.channel} cannot be made like {like}: {error}",
                 f"add standards of {standards.analyte}, or mark its peaks with use = no",
             )
-            return None
+            return UsedCurve(standards, None)
+        self._findings.add(
+            "borrowed-curve",
+            where,
+            f"{standards.analyte}@{standards.channel} is {like} times {factor:.4g} by effective carbon numbers, with a "
+            f"relative standard uncertainty of {u_factor / factor * 100:.2g} %",
+            f"add standards of {standards.analyte}",
+        )
+        return UsedCurve(standards, curve, like=index)
+
+    def _make(self, standards: StandardSet) -> UsedCurve:
+        curve = self._fit(standards)
+        if curve is None:
+            return UsedCurve(standards, None)
+        judgement = judge(
+            curve,
+            standards.x,
+            standards.y,
+            u_x=standards.u_x,
+            parent=standards.parent,
+            u_parent=standards.u_parent,
+        )
+        report_judgement(standards, curve, judgement, self._findings)
+        return UsedCurve(standards, curve, judgement)
+
+    def _fit(self, standards: StandardSet) -> Curve | None:
+        where = standards.origins[0].file if standards.origins else f"calibration {standards.calibration}"
+        name = f"{standards.analyte}@{standards.channel}"
         try:
             curve = fit_curve(
                 standards.x,
@@ -163,6 +216,50 @@ class CurvesUsed:
         rows = [one.curve.coefficients if one.curve else (0.0, 1.0, 0.0) for one in self.used]
         table = np.array([*rows, (0.0, 1.0, 0.0)], dtype=float)
         return table[:, 0], table[:, 1], table[:, 2]
+
+
+def report_judgement(standards: StandardSet, curve: Curve, judgement: Judgement, findings: Findings) -> None:
+    """What the standards say against their curve."""
+    name = f"{standards.analyte}@{standards.channel}"
+    where = f"calibration {standards.calibration}, {name}"
+    if judgement.outlier is not None:
+        point = standards.origins[judgement.outlier]
+        findings.add(
+            "standard-outlying",
+            point,
+            f"this standard of {name} lies {abs(float(judgement.deleted[judgement.outlier])):.3g} of its standard "
+            "deviations from the curve through the others",
+            "prepare and measure it again; leave it out only for a reason that can be written down",
+        )
+    if judgement.lack_of_fit is not None and judgement.lack_of_fit.p < 1.0 - judgement.level:
+        findings.add(
+            "curve-misfit",
+            where,
+            f"replicates scatter less than the levels lie off the {curve.form} (lack of fit, p = "
+            f"{judgement.lack_of_fit.p:.2g})",
+            "choose another form, or look for a wrong standard",
+        )
+    elif not judgement.fits:
+        findings.add(
+            "curve-misfit",
+            where,
+            f"the {curve.form} lies further off its standards than their uncertainties allow (ISO 6143)",
+            "choose another form, or look at the certificates",
+        )
+    if judgement.bends and curve.form != "quadratic":
+        findings.add(
+            "curve-bends",
+            where,
+            f"a quadratic fits significantly better than the {curve.form} (Mandel test, {judgement.level:.0%})",
+            'set form = "quadratic" in calibration.toml, or narrow the range',
+        )
+    if judgement.suggested_weights is not None:
+        findings.add(
+            "weights-suggested",
+            where,
+            f"the scatter does not follow the weights '{curve.weights}'; '{judgement.suggested_weights}' fits better",
+            f'set weights = "{judgement.suggested_weights}" in calibration.toml if that makes sense to you',
+        )
 
 
 def _key(kind: str, channel: str, analyte: str) -> tuple[str, str, str]:

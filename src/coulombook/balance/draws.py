@@ -102,6 +102,7 @@ def _draw_group(
     weights = SignalWeights(
         _renormalised(settled.weights.standard[rows["standard integral"]], plan.liquid.standard_vial),
         _renormalised(settled.weights.analyte[rows["integral"]], plan.liquid.signal_analyte),
+        settled.weights.u_ratio[rows["integral"]],
     )
     counted = settled.detection.counted[rows["product"]]
     products, n_runs = len(plan.products.run), len(runs)
@@ -198,6 +199,8 @@ def _labels(plan: Plan) -> dict[str, list[Hashable]]:
         (run[number], label) for number, label in zip(gas.injections.run, gas.injections.label, strict=True)
     ]
     vials: list[Hashable] = [vial.name for vial in liquid.vials]
+    signals: list[Hashable] = [(one.vial, one.analyte, one.signal) for one in liquid.signals]
+    standards: list[Hashable] = [(one.vial, one.analyte, one.signal) for one in liquid.standard_signals]
     curves: list[Hashable] = [*((one.standards.calibration, one.name) for one in plan.curves.used), "slope 1"]
     checks: list[Hashable] = list(range(len(gas.check_area)))
     scans: list[Hashable] = list(range(len(surface.scan_electrode)))
@@ -218,8 +221,8 @@ def _labels(plan: Plan) -> dict[str, list[Hashable]]:
         **dict.fromkeys(("check area", "check mole fraction"), checks),
         **dict.fromkeys(("injection delay", "injection current noise"), injections),
         **dict.fromkeys(("compartment volume", "aliquot", "standard amount"), vials),
-        "integral": [(one.vial, one.analyte, one.signal) for one in liquid.signals],
-        "standard integral": [(one.vial, one.analyte, one.signal) for one in liquid.standard_signals],
+        **dict.fromkeys(("integral", "t1"), signals),
+        **dict.fromkeys(("standard integral", "standard t1"), standards),
         **dict.fromkeys(("scan area", "scan rate", "charging current"), scans),
         "capacitance scatter": list[Hashable](surface.electrodes),
         "group": [

@@ -7,7 +7,7 @@ it is arithmetic along the plan: plain arrays give nominal values, arrays (n_dra
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -28,10 +28,11 @@ from coulombook.amounts.liquid import (
 )
 from coulombook.amounts.water import saturated_water_vapour_pascal
 from coulombook.balance.plan import FlowPlan, Plan
-from coulombook.balance.readings import FloatArray, OutletFlow
+from coulombook.balance.readings import FloatArray, OutletFlow, Signal
 from coulombook.cell.potential import potential_rhe_volt, reference_potential_volt
 from coulombook.constants import FARADAY_CONSTANT
 from coulombook.curves.inverse import invert, response
+from coulombook.curves.nmr import saturation_factor
 from coulombook.uncertainty.linearised import (
     IntArray,
     Number,
@@ -126,19 +127,54 @@ def read_electrical(plan: Plan, x: Numbers) -> Electrical:
     return Electrical(current * duration, current, potential, current / x["electrode area"])
 
 
-def signal_ratios(plan: Plan, x: Numbers, standard: Number) -> Number:
-    """Amount ratio of each signal (S,) to its internal standard, whose integral per proton (V,) is given."""
+@dataclass(frozen=True, slots=True, eq=False)
+class PerProton:
+    """Integrals per proton: as measured, and as full relaxation would have given them where T1 is known."""
+
+    measured: Number
+    relaxed: Number
+
+
+def _per_proton(signals: Sequence[Signal], integral: Number, t1: Number) -> PerProton:
+    protons = np.array([signal.protons for signal in signals], dtype=float)
+    known = np.array([signal.relaxation_second is not None for signal in signals], dtype=bool)
+    measured = integral_per_proton(integral, protons)
+    if not known.any():
+        return PerProton(measured, measured)
+    repetition = np.array([signal.repetition_second or 1.0 for signal in signals], dtype=float)
+    flip = np.array([signal.flip_angle_radian or np.pi / 2 for signal in signals], dtype=float)
+    return PerProton(measured, select(known, measured / saturation_factor(repetition, t1, flip), measured))
+
+
+def standard_signals(plan: Plan, x: Numbers) -> PerProton:
+    """Each signal of an internal standard, (T,)."""
+    return _per_proton(plan.liquid.standard_signals, x["standard integral"], x["standard t1"])
+
+
+def signal_ratios(plan: Plan, x: Numbers, standard: PerProton) -> Number:
+    """Amount ratio of each signal (S,) to its internal standard (V,).
+
+    Through the signal's curve, which holds the saturation of its standards already; without a curve by counting
+    protons, saturation corrected for.
+    """
     liquid = plan.liquid
-    protons = np.array([signal.protons for signal in liquid.signals], dtype=float)
-    response_ratio = integral_per_proton(x["integral"], protons) / gather(standard, liquid.signal_vial)
+    signal = _per_proton(liquid.signals, x["integral"], x["t1"])
+    counted = liquid.signal_curve < 0
+    response_ratio = select(
+        counted,
+        signal.relaxed / gather(standard.relaxed, liquid.signal_vial),
+        signal.measured / gather(standard.measured, liquid.signal_vial),
+    )
     a0, a1, a2 = (gather(x[name], liquid.signal_curve) for name in ("a0", "a1", "a2"))
     return invert(a0, a1, a2, response_ratio)
 
 
-def standard_signals(plan: Plan, x: Numbers) -> Number:
-    """Integral per proton of each signal of an internal standard, (T,)."""
-    protons = np.array([signal.protons for signal in plan.liquid.standard_signals], dtype=float)
-    return integral_per_proton(x["standard integral"], protons)
+def standards_of_vials(plan: Plan, standards: PerProton, weights: FloatArray) -> PerProton:
+    """Signals of each vial's internal standard combined, (V,)."""
+    liquid = plan.liquid
+    n = len(liquid.standard_signals)
+    average = sparse_map(liquid.standard_vial, np.arange(n), weights, (len(liquid.vials), n))
+    return PerProton(linear_map(average, standards.measured), linear_map(average, standards.relaxed))
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -147,16 +183,16 @@ class SignalWeights:
 
     standard: FloatArray  # (T,)
     analyte: FloatArray  # (S,)
+    u_ratio: (
+        FloatArray  # (S,) standard uncertainty of each signal's ratio, without what signals of a vial share
+    )
 
 
 def read_liquids(plan: Plan, x: Numbers, weights: SignalWeights) -> Liquids:
     """From integrals to the Faradaic efficiency of liquid products."""
     liquid = plan.liquid
-    n_standard, n_signal = len(liquid.standard_signals), len(liquid.signals)
-    average = sparse_map(
-        liquid.standard_vial, np.arange(n_standard), weights.standard, (len(liquid.vials), n_standard)
-    )
-    standard = linear_map(average, standard_signals(plan, x))
+    n_signal = len(liquid.signals)
+    standard = standards_of_vials(plan, standard_signals(plan, x), weights.standard)
     ratio = signal_ratios(plan, x, standard)
     combine = sparse_map(
         liquid.signal_analyte, np.arange(n_signal), weights.analyte, (len(liquid.analyte_vial), n_signal)

@@ -111,6 +111,7 @@ def recentred_requests(plan: Plan, requests: Sequence[TraceRequest]) -> dict[int
     equal = SignalWeights(
         _equal(plan.liquid.standard_vial, len(plan.liquid.vials)),
         _equal(plan.liquid.signal_analyte, len(plan.liquid.analyte_vial)),
+        np.zeros(len(plan.liquid.signals)),
     )
     electrical = read_electrical(plan, x)
     readings = read_injections(plan, x, electrical, read_liquids(plan, x, equal))

@@ -13,10 +13,11 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
+from coulombook.balance.assumed import assumed_declarations
 from coulombook.balance.curves_used import CurvesUsed
 from coulombook.balance.gas_plan import GasPlan
 from coulombook.balance.liquid_plan import LiquidPlan
-from coulombook.balance.readings import Day, DaySettings, FloatArray, Flow, FlowKind, OutletFlow, Run
+from coulombook.balance.readings import Day, DaySettings, FloatArray, Flow, FlowKind, OutletFlow, Run, Signal
 from coulombook.balance.surface_plan import SurfacePlan
 from coulombook.balance.trace_figures import TraceFigures
 from coulombook.uncertainty.errors import (
@@ -149,7 +150,7 @@ def plan_products(day: Day, gas: GasPlan, liquid: LiquidPlan) -> ProductPlan:
 
 
 def make_inputs(plan: Plan) -> Inputs:
-    """All inputs of the measurement function with their declared and estimated errors."""
+    """All inputs of the measurement function with their declared, assumed and estimated errors, in this order."""
     settings = plan.settings
     declarations = [
         Declaration(one.quantity, one.relative, one.absolute, one.shared) for one in settings.declared
@@ -164,7 +165,7 @@ def make_inputs(plan: Plan) -> Inputs:
     ]
     return build_inputs(
         blocks,
-        declarations,
+        [*declarations, *assumed_declarations(settings)],
         [*_curve_errors(plan), *_capacitance_errors(plan)],
         (INJECTION_SCATTER, len(plan.gas.injections.label)),
     )
@@ -284,7 +285,16 @@ def _liquid_blocks(plan: Plan) -> list[Block]:
             np.array([signal.integral for signal in liquid.standard_signals], dtype=float),
             owner[liquid.standard_vial],
         ),
+        _relaxation("t1", liquid.signals, owner[liquid.signal_vial]),
+        _relaxation("standard t1", liquid.standard_signals, owner[liquid.standard_vial]),
     ]
+
+
+def _relaxation(name: str, signals: Sequence[Signal], owner: IntArray) -> Block:
+    """T1 of each signal; one second, without error and without effect, where it is not known."""
+    known = np.array([signal.relaxation_second is not None for signal in signals], dtype=bool)
+    values = np.array([signal.relaxation_second or 1.0 for signal in signals], dtype=float)
+    return Block(name, "t1", values, owner, np.where(known, values, 0.0), known.astype(np.float64))
 
 
 def _surface_blocks(plan: Plan) -> list[Block]:
@@ -318,17 +328,32 @@ def _curve_blocks(plan: Plan) -> list[Block]:
 
 
 def _curve_errors(plan: Plan) -> list[Correlated]:
+    """Errors of the coefficients. A curve made like another shares that one's errors and adds one of its own."""
     errors = []
     for number, one in enumerate(plan.curves.used):
-        if one.curve is not None:
-            errors.append(
-                Correlated(
-                    Source(f"curve {one.name}", DAY),
-                    (("a0", number), ("a1", number), ("a2", number)),
-                    one.curve.factor,
+        if one.curve is None or one.like is not None:
+            continue
+        own = one.curve.factor.shape[1]
+        rows, factors = [_coefficients(number)], [one.curve.factor]
+        for place, other in enumerate(plan.curves.used):
+            if other.like == number and other.curve is not None:
+                rows.append(_coefficients(place))
+                factors.append(other.curve.factor[:, :own])
+                errors.append(
+                    Correlated(
+                        Source(f"carbon number {other.name}", DAY),
+                        _coefficients(place),
+                        other.curve.factor[:, own:],
+                    )
                 )
-            )
+        errors.append(
+            Correlated(Source(f"curve {one.name}", DAY), tuple(sum(rows, ())), np.concatenate(factors))
+        )
     return errors
+
+
+def _coefficients(number: int) -> tuple[tuple[str, int], ...]:
+    return (("a0", number), ("a1", number), ("a2", number))
 
 
 def _capacitance_errors(plan: Plan) -> list[Correlated]:

@@ -44,6 +44,17 @@ class OutletFlow(StrEnum):
     TRACER = "tracer"
     BALANCE = "balance"
 
+    @property
+    def entered(self) -> str:
+        """The quantity that is entered to find it."""
+        match self:
+            case OutletFlow.MEASURED:
+                return "outlet flow"
+            case OutletFlow.TRACER:
+                return "tracer flow"
+            case _:
+                return "inlet flow"
+
 
 @dataclass(frozen=True, slots=True)
 class Declared:

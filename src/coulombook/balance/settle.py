@@ -12,6 +12,7 @@ from coulombook.balance.evaluate import (
     GasReadings,
     Liquids,
     Outcome,
+    PerProton,
     SignalWeights,
     close_books,
     read_electrical,
@@ -19,6 +20,7 @@ from coulombook.balance.evaluate import (
     read_liquids,
     signal_ratios,
     standard_signals,
+    standards_of_vials,
 )
 from coulombook.balance.plan import Plan, make_inputs
 from coulombook.balance.readings import FloatArray
@@ -28,7 +30,6 @@ from coulombook.uncertainty.linearised import (
     Linearised,
     Number,
     gather,
-    linear_map,
     nominal,
     sparse_map,
     standard_uncertainty,
@@ -101,12 +102,11 @@ def signal_weights(plan: Plan, inputs: Inputs) -> SignalWeights:
     """
     liquid = plan.liquid
     standards = standard_signals(plan, inputs.numbers)
-    standard = _weights(plan, standards, liquid.standard_vial, len(liquid.vials))
-    n = len(liquid.standard_signals)
-    average = sparse_map(liquid.standard_vial, np.arange(n), standard, (len(liquid.vials), n))
-    reference = linear_map(average, nominal(standards))
-    ratios = signal_ratios(plan, inputs.numbers, reference)
-    return SignalWeights(standard, _weights(plan, ratios, liquid.signal_analyte, len(liquid.analyte_vial)))
+    standard = _weights(plan, standards.relaxed, liquid.standard_vial, len(liquid.vials))
+    fixed = PerProton(nominal(standards.measured), nominal(standards.relaxed))
+    ratios = signal_ratios(plan, inputs.numbers, standards_of_vials(plan, fixed, standard))
+    analyte = _weights(plan, ratios, liquid.signal_analyte, len(liquid.analyte_vial))
+    return SignalWeights(standard, analyte, standard_uncertainty(ratios))
 
 
 def _weights(plan: Plan, x: Number, group: IntArray, groups: int) -> FloatArray:

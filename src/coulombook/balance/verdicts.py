@@ -10,13 +10,18 @@ import numpy as np
 from coulombook.balance.evaluate import drift_factor
 from coulombook.balance.readings import FloatArray
 from coulombook.balance.settle import Settled
+from coulombook.curves.control import ACTION, control_chart
 from coulombook.curves.inverse import invertible
+from coulombook.curves.nmr import signal_agreement
 from coulombook.findings import Findings
 from coulombook.uncertainty.linearised import nominal, standard_uncertainty
 
 QUANTIFIED, ABOVE, BELOW = "quantified", "above calibration", "below calibration"
 UNDETECTED = "below detection"
 CLOSED, SHORT, OVER = "closed", "short", "over"
+
+# signals are called odd when chance alone would part them so in fewer than one vial in a thousand
+_ODD = 0.001
 
 # a reading is outside the range when it is so by more than rounding
 _SLACK = 1e-9
@@ -239,4 +244,62 @@ def report_doubts(settled: Settled, status: list[str], closure: list[str], findi
                 f"total FE is {total[number] * 100:.1f} % with a standard uncertainty of {u[number] * 100:#.2g} %: "
                 f"{closure[number]}",
                 "check outlet flow, window, curves and internal standard; declare the uncertainties that are missing",
+            )
+
+
+def report_signals(settled: Settled, findings: Findings) -> None:
+    """Signals of one analyte of a vial that give different amounts, by more than their own uncertainties."""
+    liquid = settled.plan.liquid
+    ratio, u = nominal(settled.liquids.amount_ratio), settled.weights.u_ratio
+    members: dict[int, list[int]] = {}
+    for number, analyte in enumerate(liquid.signal_analyte.tolist()):
+        members.setdefault(analyte, []).append(number)
+    for numbers in members.values():
+        if len(numbers) < 2 or not (u[numbers] > 0).all() or not np.isfinite(ratio[numbers]).all():
+            continue
+        found = signal_agreement(ratio[numbers], u[numbers])
+        if found.p >= _ODD:
+            continue
+        first = liquid.signals[numbers[0]]
+        odd = None if found.odd is None else liquid.signals[numbers[found.odd]]
+        which = f"; {odd.signal} is the odd one" if odd is not None else ""
+        findings.add(
+            "signals-disagree",
+            f"vial {first.vial}, {first.analyte} ({first.origin})",
+            f"its {len(numbers)} signals give different amounts (chi-square {found.chi_square:.3g} with "
+            f"{found.degrees_of_freedom} degrees of freedom, p = {found.p:.2g}){which}",
+            "look for overlap and for the flank of a suppressed solvent; leave the odd signal out if it is disturbed",
+        )
+
+
+def report_checks(settled: Settled, findings: Findings) -> None:
+    """Check injections on the control chart of their curve; what the drift correction assumes about them."""
+    plan = settled.plan
+    by_curve: dict[int, list[int]] = {}
+    for number, curve in enumerate(plan.gas.check_curve.tolist()):
+        if curve >= 0:
+            by_curve.setdefault(curve, []).append(number)
+    for index, numbers in by_curve.items():
+        used = plan.curves.used[index]
+        if used.curve is None:
+            continue
+        checks = sorted((plan.day.checks[number] for number in numbers), key=lambda check: check.at)
+        chart = control_chart(
+            used.curve, [check.mole_fraction for check in checks], [check.peak_area for check in checks]
+        )
+        for check, zone, score in zip(checks, chart.zones, chart.score.tolist(), strict=True):
+            if zone == ACTION:
+                findings.add(
+                    "check-off",
+                    check.origin,
+                    f"the check of {used.name} lies {score:+.1f} standard deviations off its curve; the drift "
+                    "correction takes it for drift of the detector, linear in time between checks",
+                    "if it is no drift (wrong cylinder, leak), take the check out; if it is, recalibrate",
+                )
+        for signal in chart.runs:
+            findings.add(
+                "check-off",
+                checks[signal.check].origin,
+                f"{used.name}: {signal.rule}",
+                "recalibrate the channel",
             )

@@ -263,6 +263,7 @@ def _calibrations(settled: Settled) -> list[Row]:
         if one.curve is None:
             continue
         curve, standards = one.curve, one.standards
+        lack = one.judgement.lack_of_fit if one.judgement else None
         u = np.sqrt(np.diag(curve.covariance))
         # gas curves are fitted against mole fraction; the page shows ppm. Liquid curves have a pure ratio for x
         unit = PPM if standards.kind == "gas" else 1.0
@@ -274,6 +275,7 @@ def _calibrations(settled: Settled) -> list[Row]:
             "weights": curve.weights,
             "points": curve.points,
             "residual sd": curve.residual_sd,
+            "lack of fit p": None if lack is None else lack.p,
             "detection limit / ppm": None if limit is None else limit.detection * unit,
             "quantification limit / ppm": None if limit is None else limit.quantification * unit,
             "lowest / ppm": curve.lowest * unit,

@@ -110,7 +110,10 @@ class Table:
         """The table as a pandas frame; absent numbers are NaN."""
         import pandas as pd
 
-        return pd.DataFrame.from_records(list(self.rows), columns=list(self.heads))
+        frame = pd.DataFrame.from_records(list(self.rows), columns=list(self.heads))
+        # a column without any value would otherwise hold None, with which nothing can be computed
+        empty = [head for head in self.heads if len(frame) and frame[head].isna().all()]
+        return frame.astype(dict.fromkeys(empty, float))
 
 
 def _absent(cell: Cell) -> Cell:
