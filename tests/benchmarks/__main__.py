@@ -236,14 +236,15 @@ BENCHMARKS: dict[str, Callable[[Bench], list[Row]]] = {
 _TEXT = """\
 # Benchmarks
 
-Written by `python -m tests.benchmarks`. Both sides of a ratio ran in turns, {repeats} times each or more, after a first
-time that does not count; the ratio is that of the medians, and so does not depend much on the machine. Here: {machine}.
+Written by `python -m tests.benchmarks`. Both sides of a ratio ran in turns, {repeats} times each or more, after a
+first time that does not count; the ratio is that of the medians, and so depends less on the machine than the times do.
+Here: {machine}.
 
-The other side of the tallies is [`tests/benchmarks/by_hand.py`](../tests/benchmarks/by_hand.py), the Faradaic efficiencies
-alone as one writes them with pandas, without uncertainties, checks or units; before the times are compared, both must
-have given the same efficiencies and potentials to nine digits. Tallies and scripts start cold (a new process, its modules
-compiled before, files in the page cache); traces are read and uncertainties propagated in a running process, `pandas`
-being given the arguments the file needs. Peak memory is the largest resident size of the process.
+The other side of the tallies is [`tests/benchmarks/by_hand.py`](../tests/benchmarks/by_hand.py), the Faradaic
+efficiencies alone as one writes them with pandas, without uncertainties, checks or units; both must have given the
+same efficiencies and potentials to nine digits. Tallies and scripts start cold (a new process, its modules compiled
+before, files in the page cache); traces are read and uncertainties propagated in a running process, `pandas` being
+given the arguments the file needs. Peak memory is the largest resident size of the process.
 
 {table}
 """

@@ -79,6 +79,11 @@ standard = "1 %"
 shared = "day"
 
 [[uncertainty]]
+quantity = "i"
+standard = "0.2 %"
+shared = "day"
+
+[[uncertainty]]
 quantity = "electrode area"
 standard = "2 %"
 shared = "run"

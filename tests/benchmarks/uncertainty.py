@@ -21,13 +21,13 @@ from uncertainties.umath import sqrt
 
 from coulombook.balance.plan import Plan
 from coulombook.balance.settle import settle
+from coulombook.constants import FARADAY_CONSTANT, GAS_CONSTANT
 from coulombook.findings import Findings
 from coulombook.intake.day import open_day
 from coulombook.tally import settle_day
 from coulombook.uncertainty.linearised import Linearised, covariance, gather, nominal, standard_uncertainty
 
 RUNS = 375  # of eight products each
-FARADAY, GAS_CONSTANT = 96485.33212331001, 8.31446261815324
 Result = tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray, list[np.ndarray]]
 
 
@@ -60,7 +60,7 @@ def by_uncertainties(plan: Plan) -> Result:
     """The same by `uncertainties`, number by number."""
     gas, liquid, day = plan.gas, plan.liquid, plan.settings
     curves = [correlated_values(one.curve.coefficients, one.curve.covariance) for one in plan.curves.used]
-    flow_error, amount_error = ufloat(1, 0.01), ufloat(1, 0.01)
+    flow_error, amount_error, gain = ufloat(1, 0.01), ufloat(1, 0.01), ufloat(1, 0.002)
     check = [ufloat(area, 0.01 * area) for area in gas.check_area]
     factor = []
     for area, fraction, curve in zip(check, gas.check_mole_fraction, gas.check_curve, strict=True):
@@ -87,7 +87,7 @@ def by_uncertainties(plan: Plan) -> Result:
         outlet = plan.outlet.value[run] * density * flow_error
         rate = invert(gas.peak_curve[number], area / drifted) * outlet
         species = gas.reading_species[number]
-        value = species.electrons * FARADAY * rate / current[injection]
+        value = species.electrons * FARADAY_CONSTANT * rate / (current[injection] * gain)
         efficiency.setdefault((int(run), species.name), []).append(value)
 
     standards: dict[int, Any] = {}
@@ -109,8 +109,8 @@ def by_uncertainties(plan: Plan) -> Result:
             run = names.index(vial.run)
             amount = (value - blanks.get(name, 0.0)) * vial.compartment_volume_m3
             electrons = plan.products.electrons[plan.products.species.index(name)]
-            charge = plan.figures[run].charge_coulomb
-            efficiency[run, name] = [electrons * FARADAY * amount / charge]
+            charge = plan.figures[run].charge_coulomb * gain
+            efficiency[run, name] = [electrons * FARADAY_CONSTANT * amount / charge]
 
     products = plan.products
     means = [
