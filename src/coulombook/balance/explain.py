@@ -24,7 +24,7 @@ from coulombook.uncertainty.linearised import FloatArray, Linearised, covariance
 TOLD_APART = 2.0 * np.log(10.0)
 PRIOR_SD = 0.10  # of a relative error or a lost share
 _ACCUSED_BY_CHANCE = 0.05
-_CHANCE_DAYS = 2000
+_CHANCE_DAYS = 1000
 # chance gives the best of a hundred candidates 2 ln of a Bayes factor of this size in less than one day in a thousand
 _BEYOND_CHANCE = 25.0
 _SEED = 20430518
