@@ -14,9 +14,10 @@ import tempfile
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 
 from tests.benchmarks.days import BENCH, CALIBRATIONS, PLAIN, PROJECT, Dialect, copy_example
-from tests.benchmarks.measure import Cost, in_turns, process
+from tests.benchmarks.measure import Cost, Costs, in_turns, process
 
 BY_HAND = Path(__file__).with_name("by_hand.py")
 DOCUMENT = PROJECT / "docs" / "benchmarks.md"
@@ -70,12 +71,11 @@ class Bench:
             self.process("-m", "tests.benchmarks.days", folder, str(runs), str(rows))()
         return folder
 
-    def worker(self, module: str) -> dict:
+    def worker(self, module: str) -> dict[str, Any]:
         """What a benchmark within one process found."""
         folder = self.folder / module
         folder.mkdir()
         command = [sys.executable, "-m", f"tests.benchmarks.{module}", folder / "work", str(self.repeats)]
-        (folder / "work").mkdir() if module == "traces" else None
         return json.loads(subprocess.run(command, check=True, stdout=subprocess.PIPE).stdout)
 
 
@@ -103,6 +103,10 @@ def _ms(second: float) -> str:
     return f"{second * 1e3:.0f} ms" if second < 10 else f"{second:.1f} s"
 
 
+def _cold(cost: Costs) -> str:
+    return f"{_ms(cost.second)} (processor {_ms(cost.processor_second)})"
+
+
 def _mb(byte: float) -> str:
     return f"{byte / 1e6:.0f} MB"
 
@@ -117,11 +121,16 @@ def run_help(bench: Bench) -> list[Row]:
     return [Row("`coulombook --help`", "`python -c pass`", 2.5, ours / bare, _ms(ours), _ms(bare))]
 
 
-def _against_hand(bench: Bench, day: Path, dialect: Dialect) -> dict:
+def _against_hand(bench: Bench, day: Path, dialect: Dialect) -> dict[str, Costs]:
     sides = {"ours": bench.tally(day), "by hand": bench.by_hand(day, dialect)}
     costs = in_turns(sides, bench.repeats)
     assert_same_ledger(day)
     return costs
+
+
+def _compared(what: str, target: float, costs: dict[str, Costs]) -> Row:
+    ours, other = costs["ours"], costs["by hand"]
+    return Row(what, "FE table by hand", target, ours.second / other.second, _cold(ours), _cold(other))
 
 
 def run_example(bench: Bench) -> list[Row]:
@@ -129,22 +138,19 @@ def run_example(bench: Bench) -> list[Row]:
     day = bench.folder / "example"
     copy_example(day)
     costs = _against_hand(bench, day, BENCH)
-    ours, other = costs["ours"].second, costs["by hand"].second
-    return [
-        Row("tally of the example day, cold", "FE table by hand with pandas", 1.5, ours / other, _ms(ours), _ms(other))
-    ]  # fmt: skip
+    return [_compared("tally of the example day, cold", 1.5, costs)]
 
 
 def run_large(bench: Bench) -> list[Row]:
     """Two hundred long traces, time and memory."""
     costs = _against_hand(bench, bench.day(200, 100_000), PLAIN)
     ours, other = costs["ours"], costs["by hand"]
-    what, against = "200 runs of 100,000 rows", "FE table by hand with pandas"
+    what = "200 runs of 100,000 rows"
     return [
-        Row(what, against, 0.8, ours.second / other.second, _ms(ours.second), _ms(other.second)),
+        _compared(what, 0.8, costs),
         Row(
             f"{what}: peak memory",
-            against,
+            "FE table by hand",
             1.0,
             ours.peak_byte / other.peak_byte,
             _mb(ours.peak_byte),
@@ -238,12 +244,12 @@ _TEXT = """\
 
 Written by `python -m tests.benchmarks`. Both sides of a ratio ran in turns, {repeats} times each or more, after a
 first time that does not count; the ratio is that of the medians, and so depends less on the machine than the times do.
-Here: {machine}.
+Here: {machine}; {load}.
 
 The other side of the tallies is [`tests/benchmarks/by_hand.py`](../tests/benchmarks/by_hand.py), the Faradaic
 efficiencies alone as one writes them with pandas, without uncertainties, checks or units; both must have given the
 same efficiencies and potentials to nine digits. Tallies and scripts start cold (a new process, its modules compiled
-before, files in the page cache); traces are read and uncertainties propagated in a running process, `pandas` being
+before, files in the page cache), and their processor time, of all threads together, stands beside the time; traces are read and uncertainties propagated in a running process, `pandas` being
 given the arguments the file needs. Peak memory is the largest resident size of the process.
 
 {table}
@@ -283,6 +289,12 @@ def main() -> int:
     if unknown:
         parser.error(f"no benchmark is called {', '.join(unknown)}")
     rows: list[Row] = []
+    # what others do on the machine falls on both sides, but not alike on one thread and on two
+    load = (
+        f"{os.getloadavg()[1]:.0f} other processes were busy"
+        if os.getloadavg()[1] >= 0.5
+        else "otherwise idle"
+    )
     with tempfile.TemporaryDirectory() as folder:
         bench = Bench(Path(folder), options.repeats)
         for name in options.names or BENCHMARKS:
@@ -293,7 +305,8 @@ def main() -> int:
     print(table_of(rows))
     if not options.names and options.repeats >= FEWEST_REPEATS:
         DOCUMENT.write_text(
-            _TEXT.format(repeats=options.repeats, machine=machine(), table=table_of(rows)), encoding="utf-8"
+            _TEXT.format(repeats=options.repeats, machine=machine(), load=load, table=table_of(rows)),
+            encoding="utf-8",
         )
     return int(any(row.verdict == "miss" for row in rows))
 

@@ -14,9 +14,10 @@ from statistics import median
 
 @dataclass(frozen=True, slots=True)
 class Cost:
-    """Wall time and peak memory."""
+    """Wall time, processor time and peak memory."""
 
     second: float
+    processor_second: float = 0.0
     peak_byte: int = 0
 
 
@@ -25,11 +26,16 @@ class Costs:
     """Medians of several turns."""
 
     second: float
+    processor_second: float
     peak_byte: float
 
     @classmethod
     def of(cls, turns: Sequence[Cost]) -> Costs:
-        return cls(median(one.second for one in turns), median(one.peak_byte for one in turns))
+        return cls(
+            median(one.second for one in turns),
+            median(one.processor_second for one in turns),
+            median(one.peak_byte for one in turns),
+        )
 
 
 def in_turns(
@@ -80,6 +86,7 @@ def process(command: Sequence[str | Path], bytecode: Path) -> Callable[[], Cost]
             if child.returncode != 0:
                 said.seek(0)
                 raise RuntimeError(f"{command[0]} failed:\n{said.read().decode(errors='replace')}")
-        return Cost(second, usage.ru_maxrss * 1024)  # Linux counts in units of 1024 byte
+        # Linux counts memory in units of 1024 byte
+        return Cost(second, usage.ru_utime + usage.ru_stime, usage.ru_maxrss * 1024)
 
     return run

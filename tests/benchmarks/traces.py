@@ -53,6 +53,7 @@ def write(path: Path, separator: str, decimal: str, head: str, encoding: str) ->
 
 def measure(folder: Path, repeats: int) -> dict[str, dict[str, float]]:
     """Seconds of each dialect: ours with all checks, ours with the integration as well, and pandas."""
+    folder.mkdir()
     found = {}
     day = Folder(folder)
     request = TraceRequest(
