@@ -248,9 +248,10 @@ Here: {machine}; {load}.
 
 The other side of the tallies is [`tests/benchmarks/by_hand.py`](../tests/benchmarks/by_hand.py), the Faradaic
 efficiencies alone as one writes them with pandas, without uncertainties, checks or units; both must have given the
-same efficiencies and potentials to nine digits. Tallies and scripts start cold (a new process, its modules compiled
-before, files in the page cache), and their processor time, of all threads together, stands beside the time; traces are read and uncertainties propagated in a running process, `pandas` being
-given the arguments the file needs. Peak memory is the largest resident size of the process.
+same efficiencies and potentials to nine digits. Tallies and scripts start cold: a new process, its modules compiled
+before, files in the page cache. Their processor time, of all threads together, stands beside the time. Traces are
+read and uncertainties propagated in a running process, `pandas` being given the arguments the file needs. Peak memory
+is the largest resident size of the process.
 
 {table}
 """
