@@ -115,6 +115,20 @@ _QUANTITY = re.compile(r"\s*([+\-−]?\s*(?:\d+\.?\d*|\.\d+)(?:[eE][+\-−]?\d+)
 _LONGEST_UNIT = 60  # characters; no unit of the trade comes near
 
 
+# In any unit of the trade a number is zero or between these; beyond them sums and ratios overflow.
+LARGEST_NUMBER = 1e30
+SMALLEST_NUMBER = 1e-60
+
+
+def is_of_ordinary_size(number: float) -> bool:
+    """Whether a number is zero or of a size that can be computed with; False for NaN and infinity.
+
+    >>> is_of_ordinary_size(-6e23), is_of_ordinary_size(1e300), is_of_ordinary_size(float("nan"))
+    (True, False, False)
+    """
+    return number == 0.0 or SMALLEST_NUMBER <= abs(number) <= LARGEST_NUMBER
+
+
 class UnitError(ValueError):
     """A unit that cannot be used: ``kind`` is the kind of finding, the other fields its parts."""
 
@@ -198,8 +212,8 @@ def parse_quantity(text: str) -> ParsedQuantity:
     if match is None or match[2][:1] in {",", "."} or match[2][:1].isdigit():
         raise ValueError(f"'{text}' is no number with a unit")
     number = float(match[1].replace("−", "-").replace(" ", ""))
-    if number in (float("inf"), float("-inf")):
-        raise ValueError(f"'{text}' is too large a number")
+    if not is_of_ordinary_size(number):
+        raise ValueError(f"'{text}' is too large or too small a number")
     return ParsedQuantity(number, match[2])
 
 

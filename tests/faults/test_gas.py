@@ -47,6 +47,18 @@ CASES: Cases = {
             ),
         ),
     ),
+    "peak area is of no size that a detector gives": (
+        swap("hydrogen,71", "hydrogen,1e300"),
+        (
+            Fault(
+                "not-allowed",
+                "gas.csv, row 5, column 'peak area'",
+                "'1e\\+?300'",
+                "a size from 1e-60 to 1e\\+30",
+                "correct the value",
+            ),
+        ),
+    ),
     "peak area is blank": (
         swap("hydrogen,71", "hydrogen,"),
         (

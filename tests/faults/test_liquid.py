@@ -223,6 +223,18 @@ LIQUID: Cases = {
             ),
         ),
     ),
+    "signal has next to no protons": (
+        swap("v1,formate,CH,1,124", "v1,formate,CH,1e-200,124"),
+        (
+            Fault(
+                "not-allowed",
+                "liquid.csv, row 3, column 'protons'",
+                "'1e-200'",
+                "a size from 1e-60",
+                "correct the value",
+            ),
+        ),
+    ),
     "integral is a word": (
         swap("v1,formate,CH,1,124", "v1,formate,CH,1,traces"),
         (

@@ -426,3 +426,17 @@ def test_run_whose_current_is_zero_is_refused(command: Command, broken_day: Call
         day,
         [Fault("anodic-run", "run a2 (traces/a2.csv)", "0 C", "negative", "check the sign of the current")],
     )
+
+
+@pytest.mark.parametrize(("milliampere", "found"), [("0", "0 mA"), ("5", r"\d mA")])
+def test_injection_without_a_cathodic_current_is_refused(
+    milliampere: str, found: str, command: Command, broken_day: Callable[..., Path]
+) -> None:
+    # the cell rests from before the window of the first injection until after it, and works again for the second
+    rest = f"1600,-1.5,{milliampere}\n1900,-1.5,{milliampere}\n"
+    trace = TRACE.replace("1800,-1.5,-10\n", "1599,-1.5,-10\n" + rest + "1901,-1.5,-10\n")
+    day = broken_day({"traces/a1.csv": trace})
+    place = "run a1, injection 1 (gas.csv, row 2)"
+    command.refuses(
+        day, [Fault("anodic-run", place, found, "a cathodic current", "check the sign of the current")]
+    )

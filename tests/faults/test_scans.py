@@ -38,6 +38,18 @@ TABLE: Cases = {
             ),
         ),
     ),
+    "file has a name longer than a file system takes": (
+        swap("scans/m1-20.csv", "scans/" + "m" * 300),
+        (
+            Fault(
+                "missing-file",
+                "scans.csv, row 2, column 'file'",
+                "no file 'scans/mmm",
+                "a file 'scans/mmm",
+                "add the file",
+            ),
+        ),
+    ),
     "file stands twice": (
         swap("m1-40.csv", "m1-20.csv"),
         (

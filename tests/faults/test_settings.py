@@ -483,6 +483,30 @@ CASES: dict[str, tuple[Change, tuple[Fault, ...]]] = {
             ),
         ),
     ),
+    "calibration has a name longer than a file system takes": (
+        swap('"gases", "liquids"', f'"gases", "liquids", "{"c" * 300}"'),
+        (
+            Fault(
+                "missing-calibration",
+                at("calibrations", "day", "calibrations"),
+                "'ccc",
+                "a folder 'ccc",
+                "add the",
+            ),
+        ),
+    ),
+    "current window is of no size that a clock has": (
+        swap('"120 s"', '"1e300 s"'),
+        (
+            Fault(
+                "not-a-number",
+                at("current_window", "gas", "current_window"),
+                "'1e300 s'",
+                "its unit",
+                "correct the",
+            ),
+        ),
+    ),
     "calibration is named twice": (
         swap('["gases", "liquids"]', '["gases", "liquids", "gases"]'),
         (

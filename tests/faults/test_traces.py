@@ -101,6 +101,31 @@ CASES: dict[str, tuple[Changes, tuple[Fault, ...]]] = {
             ),
         ),
     ),
+    "potential is of no size that a cell has": (
+        {A1: swap("1800,-1.5,-10", "1800,-1e200,-10")},
+        (
+            Fault(
+                "not-a-number",
+                f"{A1}, row 4, column 'E / V'",
+                "'-1e200'",
+                r"of a size up to 1e\+30",
+                "correct",
+            ),
+        ),
+    ),
+    "name is longer than a file system takes": (
+        {
+            "runs.csv": swap("\na1,mesh", f"\n{'a' * 300},mesh"),
+            "gas.csv": None,
+            "vials.csv": None,
+            "liquid.csv": None,
+        },
+        (
+            Fault(
+                "missing-file", "runs.csv, row 2", "no file 'traces/aaa", "a file 'traces/aaa", "add the file"
+            ),
+        ),
+    ),
     "cell is blank in two rows": (
         {A1: swap("1800,-1.5,-10", "1800,-1.5,", "2700,-1.5,-10", "2700,-1.5,")},
         (

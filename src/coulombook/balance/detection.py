@@ -50,6 +50,8 @@ def _gas(plan: Plan, readings: GasReadings) -> tuple[FloatArray, FloatArray]:
     x = np.bincount(group, weights=nominal(readings.mole_fraction)[held], minlength=groups) / count
     injection = gas.reading_injection
     outlet, current = nominal(readings.outlet_mol_per_s), nominal(readings.current_ampere)
+    # an injection without current has no efficiency; the verdicts tell of it
+    current = np.where(current == 0.0, np.nan, current)
     per_x = nominal(charge_rate_ampere(gas.electrons, outlet[injection])) / current[injection]
     slope = np.bincount(group, weights=per_x[held], minlength=groups) / count
     # on several channels the one that sees least decides

@@ -252,9 +252,9 @@ def read_injections(plan: Plan, x: Numbers, electrical: Electrical, liquids: Liq
     current = _injection_current(plan, x, mixing)
     injection = gas.reading_injection
     rate = mole_fraction * gather(outlet, injection)
-    # an injection without current is a fault that the verdicts tell of; numpy must not warn of it on the screen
-    with np.errstate(divide="ignore", invalid="ignore"):
-        efficiency = charge_rate_ampere(gas.electrons, rate) / gather(current, injection)
+    # no current, no efficiency: NaN passes silently to the verdicts, which tell of it; infinity would make noise
+    idle = np.where(nominal(current) == 0.0, np.nan, 0.0)
+    efficiency = charge_rate_ampere(gas.electrons, rate) / gather(current + idle, injection)
     return GasReadings(mole_fraction, inlet, outlet, mixing, current, efficiency)
 
 

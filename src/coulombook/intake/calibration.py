@@ -15,6 +15,7 @@ from coulombook.intake.files import (
     LARGEST_TABLE_BYTE,
     Folder,
     did_you_mean,
+    is_folder,
     read_bytes,
     report_outside,
     unreadable,
@@ -68,7 +69,7 @@ def _locate(name: str, day: Folder, places: Sequence[Path], where: str, findings
         return None
     for place in places:
         path = place / name
-        if path.is_dir():
+        if is_folder(path):
             # a folder of calibrations may itself be a link when it was named on purpose; the day's own may not
             root = day.root if place == places[0] else place
             if not Folder(root).holds(path):

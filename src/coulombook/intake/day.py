@@ -15,6 +15,8 @@ from coulombook.intake.files import (
     LARGEST_TABLE_BYTE,
     Folder,
     did_you_mean,
+    is_file,
+    is_folder,
     read_bytes,
     report_outside,
     unreadable,
@@ -426,9 +428,9 @@ def _trace_names(home: Folder, table: TypedTable, long_files: list[Path], findin
         if not run and not given:
             continue
         path = home.inside(text)
-        if path is not None and not given and not path.exists():
+        if path is not None and not given and not is_file(path):
             others = [path.with_name(f"{run}{suffix}") for suffix in _TRACE_SUFFIXES]
-            path = next((one for one in others if one.exists()), path)
+            path = next((one for one in others if is_file(one)), path)
             names[-1] = home.name_of(path)
         _look_for(home, path, text, table, place, "trace", f"run '{run}'", long_files, findings)
     return names
@@ -455,9 +457,9 @@ def _look_for(
     where = table.where(place, quantity)
     if path is None:
         report_outside(findings, where, text)
-    elif not path.is_file():
+    elif not is_file(path):
         near = ""
-        if path.parent.is_dir() and home.holds(path.parent):
+        if is_folder(path.parent) and home.holds(path.parent):
             near = did_you_mean(path.name, sorted(one.name for one in path.parent.iterdir()))
         findings.add("missing-file", where, f"{what} has no {'trace' if quantity == 'trace' else 'voltammogram'}",
                      f"add the file, or correct its name{near}", found=f"no file '{text}'",

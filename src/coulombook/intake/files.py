@@ -46,6 +46,22 @@ class Folder:
             return False
 
 
+def is_file(path: Path) -> bool:
+    """Whether a path is that of a file; a name that the file system refuses, as one too long, is none."""
+    try:
+        return path.is_file()
+    except OSError:
+        return False
+
+
+def is_folder(path: Path) -> bool:
+    """Whether a path is that of a folder; see `is_file`."""
+    try:
+        return path.is_dir()
+    except OSError:
+        return False
+
+
 def report_outside(findings: Findings, where: object, found: str) -> None:
     """Fault: a path leads out of the folder."""
     findings.add(

@@ -15,7 +15,7 @@ from coulombook.intake.schema import Column, Content
 from coulombook.intake.tables import Default, instant_of, unit_conversion
 from coulombook.intake.toml_text import Section, Settings, fold, section, shown
 from coulombook.species import Species, SpeciesTable, parse_formula
-from coulombook.units import UnitError, conversion, parse_head, parse_quantity
+from coulombook.units import UnitError, conversion, is_of_ordinary_size, parse_head, parse_quantity
 
 _SECTIONS = (
     "day", "reference", "defaults", "gas", "liquid", "surface", "balance", "read", "uncertainty", "species",
@@ -404,7 +404,7 @@ def _default_number(part: Section, key: str, unit: str | None, column: Column, v
         return None
     number = number * how.factor + how.offset
     # the range test also turns away NaN and infinity, which TOML can write
-    if not abs(number) < float("inf") or (column.range and not column.range.holds(number)):
+    if not is_of_ordinary_size(number) or (column.range and not column.range.holds(number)):
         part.fault("not-allowed", key, "the value is not possible", value, expected)
         return None
     return Default(number, how.flow_kind)
@@ -567,7 +567,7 @@ def _size(
     part: Section, standard: Any, dimension: str, *, raw: bool, unit_needed: bool
 ) -> tuple[float | None, float | None, str | None] | None:
     """Relative size, absolute size in SI and kind of flow of a declared uncertainty; None after a fault."""
-    expected = "a number above zero with '%' (relative) or with a unit (absolute), such as '1.0 %'"
+    expected = "zero or a number above zero, with '%' (relative) or with a unit (absolute), such as '1.0 %'"
     if isinstance(standard, int | float) and not isinstance(standard, bool) and not unit_needed:
         number, unit = float(standard), ""
     else:
@@ -581,8 +581,8 @@ def _size(
             )
             return None
         number, unit = parsed.number, parsed.unit
-    if not 0 < number < float("inf"):
-        part.fault("not-allowed", "standard", "a standard uncertainty is above zero", standard, expected)
+    if not (number >= 0 and is_of_ordinary_size(number)):
+        part.fault("not-allowed", "standard", "a standard uncertainty is not negative", standard, expected)
         return None
     if unit == "%":
         return number / 100, None, None

@@ -12,7 +12,16 @@ from coulombook.findings import Findings, Origin, RowOrigin
 from coulombook.intake.files import did_you_mean
 from coulombook.intake.grid import Cell, FaultyCell, Grid, cell_text, is_blank
 from coulombook.intake.schema import Column, Content, Schema
-from coulombook.units import Conversion, UnitError, conversion, nearest, parse_head
+from coulombook.units import (
+    LARGEST_NUMBER,
+    SMALLEST_NUMBER,
+    Conversion,
+    UnitError,
+    conversion,
+    is_of_ordinary_size,
+    nearest,
+    parse_head,
+)
 
 _NUMBER = re.compile(r"[+-]?(\d+([.,]\d*)?|[.,]\d+)([eE][+-]?\d+)?", re.ASCII)
 _PLAIN = re.compile(r"[0-9+\-.,eE\n]*", re.ASCII)
@@ -381,7 +390,11 @@ def _numbers(
             value = float(cell)
         else:
             value = None
-        if value is not None and not math.isfinite(value):
+        if value is not None and not is_of_ordinary_size(value):
+            if math.isfinite(value):
+                _report_size(column, cell, place, unused, table, findings)
+                values.append(None)
+                continue
             value = None
         if value is None and not is_blank(cell):
             table.broken.add(place)
@@ -403,6 +416,22 @@ def _numbers(
                 )
         values.append(value)
     return values
+
+
+def _report_size(
+    column: Column, cell: Cell, place: int, unused: frozenset[int], table: TypedTable, findings: Findings
+) -> None:
+    table.broken.add(place)
+    if place not in unused:
+        _report_cell(
+            findings,
+            "not-allowed",
+            table.where(place, column.quantity),
+            "no quantity of the bench has this size",
+            cell,
+            f"zero, or a size from {SMALLEST_NUMBER:g} to {LARGEST_NUMBER:g}",
+            "correct the value",
+        )
 
 
 def _decimal_comma(grid: Grid, schema: Schema, places: Mapping[str, int]) -> bool:
@@ -430,7 +459,12 @@ def _all_plain(cells: Sequence[Cell], decimal_comma: bool) -> list[object] | Non
         values = list(map(float, joined.replace(",", ".").split("\n")))
     except ValueError:
         return None
-    return list(values) if all(map(math.isfinite, values)) else None
+    ordinary = (
+        max(values, default=0.0) <= LARGEST_NUMBER
+        and min(values, default=0.0) >= -LARGEST_NUMBER
+        and min(map(abs, filter(None, values)), default=1.0) >= SMALLEST_NUMBER
+    )
+    return list(values) if ordinary else None
 
 
 def _number_of_text(text: str, decimal_comma: bool) -> float | None:

@@ -13,7 +13,7 @@ from typing import Any
 from coulombook.findings import Findings, Origin
 from coulombook.intake.files import LARGEST_SETTINGS_BYTE, Folder, did_you_mean, read_bytes
 from coulombook.intake.tables import quoted
-from coulombook.units import UnitError, parse_quantity, quantity_to_si
+from coulombook.units import UnitError, is_of_ordinary_size, parse_quantity, quantity_to_si
 
 _HEADER = re.compile(r"\s*(\[\[?)\s*(.+?)\s*\]\]?\s*(#.*)?$")
 _KEY = re.compile(r"""\s*("[^"]*"|'[^']*'|[\w.\-]+)\s*=""")
@@ -226,7 +226,7 @@ class Section:
                 pass
         elif isinstance(value, int | float) and not isinstance(value, bool):
             number = float(value)
-        if number is None or not 0 <= number <= 1:
+        if number is None or not (0 <= number <= 1 and is_of_ordinary_size(number)):
             self.fault("not-allowed", key, "the value is not possible", value, expected)
             return None
         return number

@@ -22,7 +22,7 @@ from coulombook.intake.files import Folder, report_outside, unreadable
 from coulombook.intake.schema import Column, Schema
 from coulombook.intake.settings import TraceOptions
 from coulombook.intake.tables import quoted, shortened, unit_conversion
-from coulombook.units import UnitError, conversion, nearest, parse_head
+from coulombook.units import LARGEST_NUMBER, UnitError, conversion, nearest, parse_head
 
 HEAD_BYTE = 65_536
 _LONGEST_HEAD_BYTE = 4_194_304  # instruments that write their whole method above the heads stay well below
@@ -440,7 +440,10 @@ def _fast(path: Path, all_byte: int, layout: Layout) -> dict[str, FloatArray] | 
         return None
     arrays = list(values.values())
     # too few rows are the slow reader's to judge, and so is anything that is no finite number
-    if not arrays[0].size or not all(bool(np.isfinite(array).all()) for array in arrays):
+    if not arrays[0].size:
+        return None
+    # the extremes of an array with a NaN are NaN, and no comparison with it holds
+    if not all(array.min() >= -LARGEST_NUMBER and array.max() <= LARGEST_NUMBER for array in arrays):
         return None
     return values
 
@@ -536,7 +539,7 @@ def _slow(
     for quantity, place in layout.columns.items():
         cells = [cells[place] if place < len(cells) else "" for _, cells in rows]
         array = np.array([_number(cell, layout.decimal) for cell in cells])
-        wrong = np.flatnonzero(~np.isfinite(array))
+        wrong = np.flatnonzero(~(np.abs(array) <= LARGEST_NUMBER))
         if wrong.size:
             faults += 1
             first = int(wrong[0])
@@ -548,7 +551,8 @@ def _slow(
                 "the cell must hold a number",
                 "correct the cell, or delete the row; text below the last reading goes too",
                 found=(quoted(cells[first]) if cells[first] else "nothing") + more,
-                expected=f"a finite number with a decimal {sign}",
+                expected=f"a finite number with a decimal {sign}"
+                + (f", of a size up to {LARGEST_NUMBER:g}" if np.isfinite(array[first]) else ""),
             )
         values[quantity] = array
     return None if faults else values
