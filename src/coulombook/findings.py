@@ -134,6 +134,10 @@ KINDS: dict[str, tuple[Severity, str]] = {
     # --- notes: what was assumed or left aside ---
     "unread-column": (Severity.NOTE, "a column nobody knows was carried along unread"),
     "unread-table": (Severity.NOTE, "a file or sheet of the day folder is no table of a day and was left unread"),
+    "assumed-uncertainty": (
+        Severity.NOTE,
+        "nothing was declared about the uncertainty of a kind of reading; a usual one was taken",
+    ),
     "assumed-default": (Severity.NOTE, "a value was not given; the default was taken"),
     "left-out": (Severity.NOTE, "a row marked unused was left out"),
     "several-channels": (Severity.NOTE, "a product was measured on several channels; the mean was taken"),

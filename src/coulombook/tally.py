@@ -11,6 +11,7 @@ from typing import TypeVar
 
 import numpy as np
 
+from coulombook.balance.assumed import report_assumed
 from coulombook.balance.draws import draw_day
 from coulombook.balance.explain import explain
 from coulombook.balance.gas_plan import list_injections
@@ -195,6 +196,7 @@ def settle_day(source: DaySource, findings: Findings, progress: Progress | None 
     report_faults(settled, findings)
     if findings.stops:
         return None
+    report_assumed(day.settings, settled.inputs.moved, findings)
     closure, _ = closures(settled)
     report_doubts(settled, product_status(settled), closure, findings)
     report_signals(settled, findings)

@@ -30,7 +30,15 @@ class Group:
 def groups(outlet_flow: OutletFlow) -> tuple[Group, ...]:
     """The groups of a day that finds its outlet flow in this way."""
     gas = frozenset(
-        {"inlet flow", "outlet flow", "tracer flow", "peak area", "mole fraction", "headspace", "carbonate uptake"}
+        {
+            "inlet flow",
+            "outlet flow",
+            "tracer flow",
+            "peak area",
+            "mole fraction",
+            "headspace",
+            "carbonate uptake",
+        }
     )
     return (
         # one meter for the day, and the integration of each peak

@@ -218,8 +218,9 @@ def report_doubts(settled: Settled, status: list[str], closure: list[str], findi
                 f"FE comes out as {efficiency[row] * 100:.3g} %; it is counted as it is",
                 "look at the blank, the curve's intercept and the integration limits",
             )
-    for declared, moved in zip(plan.settings.declared, settled.inputs.moved, strict=True):
-        if not moved:
+    # behind the declared ones stand the assumed ones
+    for declared, moved in zip(plan.settings.declared, settled.inputs.moved, strict=False):
+        if not moved and (declared.relative or declared.absolute):  # a stated zero moves nothing, and is meant to
             findings.add(
                 "uncertainty-not-used",
                 declared.origin,
