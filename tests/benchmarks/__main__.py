@@ -52,23 +52,26 @@ class Bench:
     def bytecode(self) -> Path:
         return self.folder / "bytecode"
 
-    def process(self, *command: str | Path) -> Callable[[], Cost]:
+    def python(self, *command: str | Path) -> Callable[[], Cost]:
         return process([sys.executable, *command], self.bytecode)
 
+    def coulombook(self, *command: str | Path) -> Callable[[], Cost]:
+        """The command as it is installed beside the interpreter."""
+        return process([Path(sys.executable).with_name("coulombook"), *command], self.bytecode)
+
     def tally(self, day: Path) -> Callable[[], Cost]:
-        return self.process(
-            "-m", "coulombook", "tally", day, "--out", f"{day}-results", "--calibrations", CALIBRATIONS, "--quiet"
-        )  # fmt: skip
+        told = ("--out", f"{day}-results", "--calibrations", CALIBRATIONS, "--quiet")
+        return self.coulombook("tally", day, *told)
 
     def by_hand(self, day: Path, dialect: Dialect) -> Callable[[], Cost]:
         told = (dialect.separator, dialect.decimal, str(dialect.head_lines), dialect.encoding)
-        return self.process(BY_HAND, day, CALIBRATIONS, f"{day}-by-hand.csv", *told)
+        return self.python(BY_HAND, day, CALIBRATIONS, f"{day}-by-hand.csv", *told)
 
     def day(self, runs: int, rows: int) -> Path:
         """A day made for the purpose, by a process of its own: this one must stay small."""
         folder = self.folder / f"{runs}-runs-{rows}-rows"
         if not folder.exists():
-            self.process("-m", "tests.benchmarks.days", folder, str(runs), str(rows))()
+            self.python("-m", "tests.benchmarks.days", folder, str(runs), str(rows))()
         return folder
 
     def worker(self, module: str) -> dict[str, Any]:
@@ -114,7 +117,7 @@ def _mb(byte: float) -> str:
 def run_help(bench: Bench) -> list[Row]:
     """The help against the bare interpreter."""
     costs = in_turns(
-        {"ours": bench.process("-m", "coulombook", "--help"), "bare": bench.process("-c", "pass")},
+        {"ours": bench.coulombook("--help"), "bare": bench.python("-c", "pass")},
         3 * bench.repeats,
     )
     ours, bare = costs["ours"].second, costs["bare"].second
