@@ -227,18 +227,20 @@ def test_peak_without_its_tracer_is_refused(command: Command, broken_day: Callab
     command.refuses(day, [fault])
 
 
-def test_flow_that_the_balance_eats_up_is_refused(command: Command, broken_day: Callable[..., Path]) -> None:
+@pytest.mark.parametrize("headspace", [("", ""), (",headspace / mL", ",30")], ids=["plug flow", "headspace"])
+def test_flow_that_the_balance_eats_up_is_refused(
+    headspace: tuple[str, str], command: Command, broken_day: Callable[..., Path]
+) -> None:
+    # 20 sccm are 14.87 umol/s; the first run gives more than that to the electrolyte, the second a third of it
     day = broken_day(
         {
             "day.toml": swap('outlet_flow = "inlet"', 'outlet_flow = "balance"'),
-            "runs.csv": swap("resistance / ohm", "carbonate uptake / umol/s"),
+            "runs.csv": swap(
+                "resistance / ohm,inlet flow / sccm", f"carbonate uptake / umol/s,inlet flow / sccm{headspace[0]}",
+                "10,20\na2", f"16,20{headspace[1]}\na2", "10,20\n", f"5,20{headspace[1]}\n",
+            ),
         }
-    )
-    # 20 sccm are 14.87 umol/s; the first run is given more than that, the second a third of it
-    runs = (
-        (day / "runs.csv").read_text().replace("6.8,10,20", "6.8,16,20", 1).replace("6.8,10,20", "6.8,5,20")
-    )
-    (day / "runs.csv").write_text(runs)
+    )  # fmt: skip
     places = "run a1, injection 1 (gas.csv, row 2); run a1, injection 2 (gas.csv, row 5)"
     fault = Fault("not-allowed", places, r"-\d\.\d+ umol/s", "a flow above zero", "carbonate uptake")
     command.refuses(day, [fault])

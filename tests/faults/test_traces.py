@@ -113,6 +113,40 @@ CASES: dict[str, tuple[Changes, tuple[Fault, ...]]] = {
             ),
         ),
     ),
+    "name comes from a run that climbs": (
+        {
+            "runs.csv": swap("\na1,mesh", "\n../x,mesh"),
+            "gas.csv": None,
+            "vials.csv": None,
+            "liquid.csv": None,
+        },
+        (
+            Fault(
+                "missing-file",
+                "runs.csv, row 2",
+                "no file 'traces/../x.csv'",
+                "in the day folder",
+                "add the file",
+            ),
+        ),
+    ),
+    "name comes from a run that climbs out": (
+        {
+            "runs.csv": swap("\na1,mesh", "\n../../x,mesh"),
+            "gas.csv": None,
+            "vials.csv": None,
+            "liquid.csv": None,
+        },
+        (
+            Fault(
+                "outside-folder",
+                "runs.csv, row 2",
+                "'traces/../../x.csv'",
+                "inside the folder",
+                "copy the file",
+            ),
+        ),
+    ),
     "name is longer than a file system takes": (
         {
             "runs.csv": swap("\na1,mesh", f"\n{'a' * 300},mesh"),

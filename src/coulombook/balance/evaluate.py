@@ -248,11 +248,13 @@ def read_injections(plan: Plan, x: Numbers, electrical: Electrical, liquids: Liq
     inlet = molar_flow(plan.inlet, x, "inlet flow")
     outlet = _outlet(plan, x, inlet, mole_fraction, electrical, liquids)
     density = molar_density(x["pressure"], x["temperature"])
-    mixing = mixing_time_second(gather(x["headspace"], run), outlet, gather(density, run))
+    # no outlet flow, no mixing: NaN passes silently to the verdicts, which tell of it; infinity would make noise
+    dry = np.where(nominal(outlet) > 0.0, 0.0, np.nan)
+    mixing = mixing_time_second(gather(x["headspace"], run), outlet + dry, gather(density, run))
     current = _injection_current(plan, x, mixing)
     injection = gas.reading_injection
     rate = mole_fraction * gather(outlet, injection)
-    # no current, no efficiency: NaN passes silently to the verdicts, which tell of it; infinity would make noise
+    # likewise, no current, no efficiency
     idle = np.where(nominal(current) == 0.0, np.nan, 0.0)
     efficiency = charge_rate_ampere(gas.electrons, rate) / gather(current + idle, injection)
     return GasReadings(mole_fraction, inlet, outlet, mixing, current, efficiency)
@@ -316,7 +318,10 @@ def _injection_current(plan: Plan, x: Numbers, mixing: Number) -> Number:
 
 
 def mixed_current(plan: Plan, tau_second: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Current that the headspace remembers at each injection, with its derivative by tau; (..., K) each."""
+    """Current that the headspace remembers at each injection, with its derivative by tau; (..., K) each.
+
+    NaN where tau lies too far from what the log was read for.
+    """
     value = np.full(tau_second.shape, np.nan)
     slope = np.full(tau_second.shape, np.nan)
     first = 0
@@ -324,8 +329,15 @@ def mixed_current(plan: Plan, tau_second: FloatArray) -> tuple[FloatArray, Float
         held = slice(first, first + len(figures.injection_current_ampere))
         first = held.stop
         if figures.mixed is not None:
-            value[..., held], slope[..., held] = figures.mixed.value_and_slope(tau_second[..., held])
+            tau = tau_second[..., held]
+            value[..., held], slope[..., held] = figures.mixed.value_and_slope(tau)
+            value[..., held][~figures.mixed.covers(tau)] = np.nan
     return value, slope
+
+
+def dioxide_fed_mol_per_s(plan: Plan, x: Numbers, readings: GasReadings) -> Number:
+    """CO2 that enters with the feed of each run, (R,); NaN where no inlet flow is given. [mol/s]"""
+    return gather(x["feed co2"], _every(len(plan.runs))) * readings.inlet_mol_per_s
 
 
 def close_books(
@@ -360,7 +372,7 @@ def close_books(
     one = (products.carbon == 1).astype(float)
     more = (products.carbon > 1).astype(float)
     c1, c2_plus = total(one, efficiency), total(more, efficiency)
-    feed = gather(x["feed co2"], _every(n_runs)) * readings.inlet_mol_per_s
+    feed = dioxide_fed_mol_per_s(plan, x, readings)
     carbon_used = total(products.carbon * per_charge, efficiency) * electrical.mean_current_ampere
     # without a C1 product there is nothing to divide by
     has_c1 = np.where(nominal(total(one, np.ones(n_products))) > 0, 0.0, np.nan)

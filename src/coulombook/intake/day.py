@@ -429,8 +429,8 @@ def _trace_names(home: Folder, table: TypedTable, long_files: list[Path], findin
             continue
         path = home.inside(text)
         if path is not None and not given and not is_file(path):
-            others = [path.with_name(f"{run}{suffix}") for suffix in _TRACE_SUFFIXES]
-            path = next((one for one in others if is_file(one)), path)
+            others = [home.inside(f"traces/{run}{suffix}") for suffix in _TRACE_SUFFIXES]
+            path = next((one for one in others if one is not None and is_file(one)), path)
             names[-1] = home.name_of(path)
         _look_for(home, path, text, table, place, "trace", f"run '{run}'", long_files, findings)
     return names
