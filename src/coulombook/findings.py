@@ -128,6 +128,10 @@ KINDS: dict[str, tuple[Severity, str]] = {
     "injection-left-out": (Severity.WARN, "an injection cannot be used and was left out"),
     "uncertainty-not-used": (Severity.WARN, "a declared uncertainty acts on nothing in this day"),
     "resistance-missing": (Severity.WARN, "no solution resistance is given; 0 ohm was taken"),
+    "flow-matters": (
+        Severity.WARN,
+        "the inlet flow was taken for the outlet's, and that moves a total by more than its interval",
+    ),
     "no-products": (Severity.WARN, "a run has no gas peaks and no liquid readings"),
     "balance-open": (Severity.WARN, "the total Faradaic efficiency differs from 100 % by more than its uncertainty"),
     "negative-amount": (Severity.WARN, "a reading below its blank or intercept gives a negative amount"),

@@ -295,3 +295,12 @@ def equilibrium_potential_rhe_volt(species: Species, pH: float = 0.0, state: str
     # the hydrogen electrode itself, -RT ln 10 pH / F against SHE
     hydrogen = -GAS_CONSTANT * TABLE_TEMPERATURE_KELVIN * math.log(10.0) * pH / FARADAY_CONSTANT
     return equilibrium_potential_she_volt(species, pH, state) - float(hydrogen)
+
+
+def oxygen_potential_rhe_volt() -> float:
+    """Equilibrium potential of O2/H2O at 25 degC against RHE, at any pH: -G(water) / (2 F). [V]
+
+    >>> round(oxygen_potential_rhe_volt(), 4)
+    1.2287
+    """
+    return float(-load_species()["water"].gibbs[0].joule_per_mol / (2.0 * FARADAY_CONSTANT))

@@ -13,6 +13,7 @@ import numpy as np
 
 from coulombook.balance.assumed import report_assumed
 from coulombook.balance.draws import draw_day
+from coulombook.balance.efficiencies import carbon_account, product_efficiencies, report_flow
 from coulombook.balance.explain import explain
 from coulombook.balance.gas_plan import list_injections
 from coulombook.balance.liquid_plan import list_samplings
@@ -29,6 +30,7 @@ from coulombook.balance.verdicts import (
     report_signals,
 )
 from coulombook.book import Book, InputFile
+from coulombook.book.efficiencies import carbon_rows, efficiency_rows
 from coulombook.book.entries import Row, enter
 from coulombook.book.forecast import forecast
 from coulombook.book.judgements import (
@@ -118,7 +120,13 @@ def _judge(
     settled: Settled, findings: Findings, draws: int, seed: int, reconcile: bool, progress: Progress
 ) -> dict[str, list[Row]]:
     """The tables that judge the day: why it does not close, and what was asked for beyond."""
-    judgements = {"explanations": explanation_rows(explain(settled))}
+    account = carbon_account(settled)
+    report_flow(settled, account, findings)
+    judgements = {
+        "explanations": explanation_rows(explain(settled)),
+        "carbon": carbon_rows(settled, account),
+        "efficiencies": efficiency_rows(settled, product_efficiencies(settled)),
+    }
     if draws:
         turns = draw_day(
             settled, series_groups(settled), draws, seed, lambda done, of: progress("draws", done, of)

@@ -207,7 +207,7 @@ def _labels(plan: Plan) -> dict[str, list[Hashable]]:
     by_run = (
         "electrode area", "ph", "temperature", "pressure", "resistance", "compensated", "headspace", "carbonate uptake",
         "inlet flow", "outlet flow", "tracer flow", "current gain", "current offset", "current noise", "mean potential",
-        "potential noise",
+        "potential noise", "cell voltage",
     )  # fmt: skip
     once = (
         "potential", "temperature coefficient", "standard temperature", "standard pressure", "dead time", "feed co2",

@@ -210,6 +210,8 @@ def _run_blocks(plan: Plan) -> list[Block]:
     mean = np.array([one.charge_coulomb / (one.stop_second - one.start_second) for one in plan.figures])
     noise = np.array([one.noise_weight for one in plan.figures])
     potential = np.array([one.mean_potential_volt for one in plan.figures])
+    # some logs count the cell voltage from the other electrode
+    voltage = np.abs(np.array([one.mean_cell_voltage_volt for one in plan.figures], dtype=float))
     return [
         *(Block(name, name, values, owner) for name, values in columns.items()),
         # errors of the trace: a gain and an offset that a day or a run shares, and the noise of single samples,
@@ -218,6 +220,7 @@ def _run_blocks(plan: Plan) -> list[Block]:
         Block("current offset", "i", zero, owner, zero, one, (DAY, RUN)),
         Block("current noise", "i", zero, owner, mean * noise, noise, (READING,)),
         Block("mean potential", "e", potential, owner, sharings=(DAY, RUN)),
+        Block("cell voltage", "u", voltage, owner, None, np.isfinite(voltage).astype(float), (DAY, RUN)),
         Block("potential noise", "e", zero, owner, potential * noise, noise, (READING,)),
     ]
 

@@ -100,16 +100,20 @@ def closures(settled: Settled) -> tuple[list[str], FloatArray]:
     Closed when the total differs from 1 by no more than k u, k being the two-sided normal quantile of the level of
     confidence, and u the uncertainty of the total together with the share the day allows to be unaccounted for.
     """
-    settings = settled.plan.settings
     total = nominal(settled.outcome.total)
-    u = standard_uncertainty(settled.outcome.total)
-    allowed = NormalDist().inv_cdf(0.5 + settings.level_of_confidence / 2) * np.hypot(
-        u, settings.unaccounted or 0.0
-    )
-    # rounding alone must not open a balance that has no uncertainty
-    near = np.abs(total - 1.0) <= allowed + _SLACK
+    near = np.abs(total - 1.0) <= allowed_deviation(settled)
     verdict = np.where(near, CLOSED, np.where(total < 1.0, SHORT, OVER))
-    return [str(one) for one in verdict], u
+    return [str(one) for one in verdict], standard_uncertainty(settled.outcome.total)
+
+
+def allowed_deviation(settled: Settled) -> FloatArray:
+    """How far each run's total may lie off without being called so, (R,); see `closures`. [1]"""
+    settings = settled.plan.settings
+    u = standard_uncertainty(settled.outcome.total)
+    factor = NormalDist().inv_cdf(0.5 + settings.level_of_confidence / 2)
+    # rounding alone must not open a balance that has no uncertainty
+    result: FloatArray = factor * np.hypot(u, settings.unaccounted or 0.0) + _SLACK
+    return result
 
 
 def product_status(settled: Settled) -> list[str]:

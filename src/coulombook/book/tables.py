@@ -55,6 +55,15 @@ INTERVALS = (
 RECONCILIATION = (
     "run", "product", "FE / %", "u(FE) / %", "adjusted FE / %", "u(adjusted FE) / %", "z",
 )  # fmt: skip
+CARBON = (
+    "run", "CO2 conversion / %", "u(CO2 conversion) / %", "carbonate bound / %", "total FE at inlet flow / %",
+    "total FE at outlet flow / %", "outlet flow by",
+)  # fmt: skip
+EFFICIENCIES = (
+    "run", "product", "carbon efficiency / %", "u(carbon efficiency) / %", "share of converted CO2 / %",
+    "u(share of converted CO2) / %", "E equilibrium vs RHE / V", "cathodic energy efficiency / %",
+    "u(cathodic energy efficiency) / %", "full-cell energy efficiency / %", "u(full-cell energy efficiency) / %",
+)  # fmt: skip
 FINDINGS = ("severity", "kind", "where", "text", "mend")
 
 TABLES: Mapping[str, tuple[str, ...]] = {
@@ -68,6 +77,8 @@ TABLES: Mapping[str, tuple[str, ...]] = {
     "explanations": EXPLANATIONS,
     "intervals": INTERVALS,
     "reconciliation": RECONCILIATION,
+    "carbon": CARBON,
+    "efficiencies": EFFICIENCIES,
     "findings": FINDINGS,
 }
 
