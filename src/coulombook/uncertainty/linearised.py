@@ -30,6 +30,12 @@ def _scale_rows(jacobian: csr_array, factor: FloatArray) -> csr_array:
     return type(jacobian)((data, jacobian.indices, jacobian.indptr), shape=jacobian.shape)
 
 
+def _keep_rows(jacobian: csr_array, mask: NDArray[np.bool_]) -> csr_array:
+    """The rows where ``mask`` holds, the others zero even where they are NaN."""
+    data = np.where(np.repeat(mask, np.diff(jacobian.indptr)), jacobian.data, 0.0)
+    return type(jacobian)((data, jacobian.indices, jacobian.indptr), shape=jacobian.shape)
+
+
 class Linearised:
     """Values (n,) with the derivatives (n, n_errors) of each with respect to the unit errors.
 
@@ -160,7 +166,7 @@ def select(mask: NDArray[np.bool_], x: Number, otherwise: Number) -> Number:
         return np.where(mask, x, otherwise)
     kept = np.where(mask, nominal(x), nominal(otherwise))
     parts = [
-        _scale_rows(side.jacobian, held.astype(float))
+        _keep_rows(side.jacobian, held)
         for side, held in ((x, mask), (otherwise, ~mask))
         if isinstance(side, Linearised)
     ]

@@ -80,6 +80,13 @@ def test_a_draw_axis_passes_through_every_function() -> None:
     assert select(np.array([True, False, True]), draws, Y).shape == (2, 3)
 
 
+def test_a_number_not_selected_leaves_no_trace_even_where_it_is_unknown() -> None:
+    unknown = Linearised(np.array([np.nan, 2.0, 0.7]), np.nan * XS.jacobian)
+    kept = select(np.array([False, False, False]), unknown, YS)
+    np.testing.assert_array_equal(nominal(kept), Y)
+    np.testing.assert_array_equal(standard_uncertainty(kept), np.ones(3))
+
+
 def test_uncertainty_of_a_sum_carries_the_covariance_of_its_terms() -> None:
     # x and -x share their error, so that x + (-x) has none, while x + y adds in quadrature
     assert standard_uncertainty(XS + (-XS)) == pytest.approx([0.0, 0.0, 0.0])
