@@ -109,7 +109,10 @@ KINDS: dict[str, tuple[Severity, str]] = {
     "calibration-expired": (Severity.WARN, "a calibration is past its date of validity"),
     "above-calibration": (Severity.WARN, "a reading lies above the calibrated range"),
     "below-calibration": (Severity.WARN, "a reading lies below the calibrated range"),
-    "curve-without-scatter": (Severity.WARN, "a curve has no standards to spare, so that its scatter is unknown"),
+    "curve-without-scatter": (
+        Severity.WARN,
+        "a curve has no standards to spare, so that its scatter is unknown",
+    ),
     "propagation-not-validated": (
         Severity.NOTE,
         "draws give another interval than the law of propagation, by more than the digits shown",
@@ -117,10 +120,16 @@ KINDS: dict[str, tuple[Severity, str]] = {
     "standard-outlying": (Severity.WARN, "a standard lies too far from the curve through the others"),
     "curve-misfit": (Severity.WARN, "a curve lies further off its standards than their scatter explains"),
     "curve-bends": (Severity.WARN, "a quadratic fits the standards significantly better than the line"),
-    "weights-suggested": (Severity.NOTE, "the scatter of the standards speaks for other weights; nothing was changed"),
+    "weights-suggested": (
+        Severity.NOTE,
+        "the scatter of the standards speaks for other weights; nothing was changed",
+    ),
     "borrowed-curve": (Severity.WARN, "a curve was made like another analyte's by effective carbon numbers"),
     "signals-disagree": (Severity.WARN, "the signals of one analyte give different amounts"),
-    "saturation-in-curve": (Severity.NOTE, "T1 was given for a signal that is read by a curve; no correction was made"),
+    "saturation-in-curve": (
+        Severity.NOTE,
+        "T1 was given for a signal that is read by a curve; no correction was made",
+    ),
     "check-off": (Severity.WARN, "a check injection lies outside the limits of its curve"),
     "not-reconciled": (Severity.WARN, "the readings cannot be adjusted to the balance"),
     "no-limits": (Severity.WARN, "the detection limit of a curve cannot be found by the scheme chosen"),
@@ -133,11 +142,17 @@ KINDS: dict[str, tuple[Severity, str]] = {
         "the inlet flow was taken for the outlet's, and that moves a total by more than its interval",
     ),
     "no-products": (Severity.WARN, "a run has no gas peaks and no liquid readings"),
-    "balance-open": (Severity.WARN, "the total Faradaic efficiency differs from 100 % by more than its uncertainty"),
+    "balance-open": (
+        Severity.WARN,
+        "the total Faradaic efficiency differs from 100 % by more than its uncertainty",
+    ),
     "negative-amount": (Severity.WARN, "a reading below its blank or intercept gives a negative amount"),
     # --- notes: what was assumed or left aside ---
     "unread-column": (Severity.NOTE, "a column nobody knows was carried along unread"),
-    "unread-table": (Severity.NOTE, "a file or sheet of the day folder is no table of a day and was left unread"),
+    "unread-table": (
+        Severity.NOTE,
+        "a file or sheet of the day folder is no table of a day and was left unread",
+    ),
     "assumed-uncertainty": (
         Severity.NOTE,
         "nothing was declared about the uncertainty of a kind of reading; a usual one was taken",
@@ -196,5 +211,7 @@ class DayFaults(Exception):
     def __init__(self, findings: tuple[Finding, ...]) -> None:
         self.findings = findings
         self.stops = tuple(one for one in findings if one.severity is Severity.STOP)
-        super().__init__(f"{len(self.stops)} fault(s) in the day's data; the first: {self.stops[0].where}: "
-                         f"{self.stops[0].text}")
+        super().__init__(
+            f"{len(self.stops)} fault(s) in the day's data; the first: {self.stops[0].where}: "
+            f"{self.stops[0].text}"
+        )
