@@ -27,12 +27,15 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from coulombook.curves.unexplained import components, unexplained_variance
+
 FloatArray = NDArray[np.float64]
 
 _STEPS = 200
 _SMALL_STEP = 1e-10  # of the standard uncertainties
 _NEAR = 1e-5  # of the standard uncertainties
 _NEGLIGIBLE = 1e-3  # a scatter of this share of the certificates' effect adds 1e-6 to a variance
+_SETTLED = 1e-10  # relative change of a scatter sought in the residuals
 _EPS = float(np.finfo(float).eps)
 
 
@@ -43,8 +46,8 @@ class DistanceFit:
     ``factor`` (n_coefficients, n_coefficients) is L with covariance = L L^T, not scaled by chi^2;
     ``certificate`` (n_coefficients, n_errors) is the part of the coefficients' errors that each error of the standards
     makes. ``goodness`` is ISO 6143's Gamma: the largest deviation of a standard or of a level's mean response
-    from the curve, in its standard uncertainty; the fit is adequate up to 2. ``scatter_known`` is False when the
-    scatter of the responses was sought in the residuals and the certificates left nothing of it.
+    from the curve, in its standard uncertainty; the fit is adequate up to 2. ``scatter_freedom`` are the degrees of
+    freedom of u_y where it was sought in the residuals.
     """
 
     coefficients: FloatArray  # (n_coefficients,) of x^powers
@@ -55,7 +58,7 @@ class DistanceFit:
     chi_square: float
     degrees_of_freedom: int
     goodness: float
-    scatter_known: bool
+    scatter_freedom: float
 
     @property
     def mswd(self) -> float:
@@ -105,8 +108,8 @@ def fit_distance(
         Factor of the covariance of x, see `coulombook.curves.certificates.standard_errors`.
     u_y : (n_points,) or (n_points, n_points) float array, optional
         Standard uncertainty of each response, or their covariance. When it is not given, one variance common to all
-        responses is sought such that chi^2 equals its degrees of freedom (Paule & Mandel, J. Res. Natl. Bur. Stand. 87
-        (1982) 377): the scatter about the curve that the certificates do not explain.
+        responses is sought in the residuals: fit and `coulombook.curves.unexplained.unexplained_variance` of the fit's
+        residuals take turns until the variance changes by less than 1e-10 of itself.
 
     Raises
     ------
@@ -121,10 +124,9 @@ def fit_distance(
     b = np.asarray(np.linalg.solve(plain, start.coefficients), dtype=np.float64)
     problem = _Problem((x - centre) / scale, y, np.array(powers, dtype=float), errors / scale)
     e = np.zeros(errors.shape[1])
-    known = True
+    freedom = float(x.size - len(powers))
     if u_y is None:
-        variance, known = _paule_mandel(problem, b, start.residual_sd**2, x.size - len(powers))
-        u_y = np.full_like(y, math.sqrt(variance))
+        u_y, freedom = _scatter_of_residuals(problem, b, start.residual_sd)
     solution = _solve(problem, _whitening(u_y), b, e)
     single = np.sqrt(_variance(u_y))
     shift = errors @ solution.e
@@ -137,7 +139,7 @@ def fit_distance(
         chi_square=solution.chi_square,
         degrees_of_freedom=x.size - len(powers),
         goodness=_goodness(x, shift, errors, solution.residual, single),
-        scatter_known=known,
+        scatter_freedom=freedom,
     )
 
 
@@ -213,44 +215,28 @@ def _damped(r: FloatArray, along: FloatArray, damping: float) -> FloatArray:
     return np.asarray(np.linalg.lstsq(rows, target, rcond=None)[0], dtype=np.float64)
 
 
-def _paule_mandel(problem: _Problem, b: FloatArray, largest: float, freedom: int) -> tuple[float, bool]:
-    """Variance of the responses at which chi^2 equals its degrees of freedom, and whether there is one.
-
-    chi^2 falls as the variance v grows, with d chi^2/dv = -sum residual^2/v^2 at its minimum, and it is at most
-    its degrees of freedom where v is the residual variance of the fit without errors in x: Newton's
-    steps in ln v between these bounds.
-    """
+def _scatter_of_residuals(problem: _Problem, b: FloatArray, plain_sd: float) -> tuple[FloatArray, float]:
+    """Standard uncertainty common to all responses, and its degrees of freedom."""
     slope = _derivative(problem.powers, problem.t) @ b
-    effect = np.square(slope) * np.sum(np.square(problem.errors), axis=1)
-    rounding = (1e-12 * float(np.abs(problem.y).max())) ** 2
-    smallest = max(_NEGLIGIBLE**2 * float(np.median(effect)), rounding)
-    if freedom == 0 or largest <= smallest:
-        return smallest, False
+    effect = np.sum(np.square(slope[:, None] * problem.errors), axis=1)
+    # as good as none, for points that lie on the curve or leave no degree of freedom: the fit needs one to weigh with
+    least = max(_NEGLIGIBLE * math.sqrt(float(np.median(effect))), 1e-12 * float(np.abs(problem.y).max()))
+    u, freedom = max(plain_sd, least), float(problem.y.size - b.size)
+    if freedom == 0.0 or u == least:
+        return np.full_like(problem.y, least), freedom
     e = np.zeros(problem.errors.shape[1])
-
-    def excess(v: float) -> tuple[float, float]:
-        nonlocal b, e
-        found = _solve(problem, _whitening(np.full_like(problem.y, math.sqrt(v))), b, e)
-        b, e = found.b, found.e
-        return found.chi_square - freedom, -float(found.residual @ found.residual) / v
-
-    low, high = math.log(smallest), math.log(largest)
-    at = high
     for _ in range(_STEPS):
-        over, slope_of_log = excess(math.exp(at))
-        if over > 0.0:
-            low = at
-        else:
-            high = at
-        if high - low < 1e-12 or abs(over) <= 1e-9 * freedom:
+        found = _solve(problem, _whitening(np.full_like(problem.y, u)), b, e)
+        b, e = found.b, found.e
+        t = problem.t + problem.errors @ e
+        moved = (_derivative(problem.powers, t) @ b)[:, None] * problem.errors
+        # responses less the curve at the standards as stated, to first order
+        residual = found.residual + moved @ e
+        variance, freedom = unexplained_variance(*components(residual, t[:, None] ** problem.powers, moved))
+        before, u = u, max(math.sqrt(variance), least)
+        if abs(u - before) <= _SETTLED * u:
             break
-        following = at - over / slope_of_log if slope_of_log < 0.0 else low
-        if not low < following < high:
-            if low == math.log(smallest) and following <= low and excess(smallest)[0] <= 0.0:
-                return smallest, False
-            following = 0.5 * (low + high)
-        at = following
-    return math.exp(at), True
+    return np.full_like(problem.y, u), freedom
 
 
 def _goodness(

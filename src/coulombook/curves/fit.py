@@ -22,11 +22,12 @@ from numpy.typing import ArrayLike, NDArray
 
 from coulombook.curves.both import DistanceFit, fit_distance
 from coulombook.curves.certificates import standard_errors
+from coulombook.curves.unexplained import components, unexplained_variance
 from coulombook.curves.weights import (
     WEIGHTS,
+    VarianceFunction,
     point_weights,
-    replicate_variance,
-    replicate_variance_function,
+    replicate_scatter,
     smooth_variance,
 )
 
@@ -66,7 +67,8 @@ class Curve:
     covariance = L L^T, well conditioned in the scaled basis of the fit, so that draws and propagation need
     no further factorisation. ``certificate`` is the part of the covariance that stems from the standards' own
     errors. ``scatter`` holds v0, v1, v2, c: a single reading at x has the variance
-    v0 + v1 x + v2 x^2 + c y^2, see `coulombook.curves.prediction.reading_variance`. With no degree of freedom left
+    v0 + v1 x + v2 x^2 + c y^2, see `coulombook.curves.prediction.reading_variance`; how well it is known there
+    says `coulombook.curves.prediction.reading_freedom`. With no degree of freedom left
     nothing is known of the scatter: ``residual_sd`` and the rest of the covariance are then zero, and
     the caller should say so.
     """
@@ -86,6 +88,8 @@ class Curve:
     certificate: FloatArray  # (3, 3)
     response_variance: float  # of a point of mean weight, without what the standards' own errors add
     scatter: FloatArray  # (4,)
+    scatter_freedom: float  # degrees of freedom of ``response_variance``
+    scatter_function: VarianceFunction | None = None  # where replicates gave v0 and c, up to a factor
     distance: DistanceFit | None = None  # of a fit with errors in both variables
 
     @property
@@ -261,9 +265,11 @@ def fit_curve(
     -----
     With any weights but "both" the errors of the standards are carried through the coefficients to first order,
     G U G^T with G the derivatives of the coefficients with respect to x (JCGM 102:2011, 6.2). As far as they make
-    the points scatter about the curve they are in the residual variance already; that part, the trace of their
-    residuals' covariance, is taken out of it (never below the variance between replicates), so that nothing counts
-    twice. ``residual_sd`` stays what the residuals say.
+    the points scatter about the curve they are in the residual variance s^2 already. That part e, the trace of their
+    residuals' covariance over the degrees of freedom, is taken out, so that nothing counts twice: s^2 - e, but no less
+    than the variance between replicates, or zero without any. For the scatter of a reading, which zero would make too
+    good to be true, it is without replicates the estimate of `coulombook.curves.unexplained`, which never comes to
+    zero. ``residual_sd`` stays what the residuals say.
 
     Examples
     --------
@@ -317,6 +323,8 @@ def fit_curve(
         certificate=certificate,
         response_variance=found.response_variance,
         scatter=found.scatter,
+        scatter_freedom=found.scatter_freedom,
+        scatter_function=found.scatter_function,
         distance=found.distance,
     )
 
@@ -333,17 +341,27 @@ class _Found:
     r_squared: float
     response_variance: float
     scatter: FloatArray
+    scatter_freedom: float
+    scatter_function: VarianceFunction | None
     distance: DistanceFit | None
 
 
 def _fit_weighted(
     x: FloatArray, y: FloatArray, powers: tuple[int, ...], weights: str, errors: FloatArray
 ) -> _Found:
-    weight = point_weights(x, y, weights)
+    replicates = replicate_scatter(x, y) if weights == "replicates" else None
+    weight = point_weights(x, y, weights) if replicates is None else _mean_one(1.0 / replicates.variance)
     fit = fit_polynomial(x, y, powers, weight)
-    factor, certificate, variance = fit.factor, np.zeros((len(powers), len(powers))), fit.residual_sd**2
+    factor, certificate = fit.factor, np.zeros((len(powers), len(powers)))
+    variance, freedom = fit.residual_sd**2, float(fit.degrees_of_freedom)
     if errors.shape[1]:
-        factor, certificate, variance = _with_certificates(x, y, fit, weight, errors)
+        factor, certificate, variance, freedom = _with_certificates(x, y, fit, weight, errors)
+    scatter = np.zeros(4)
+    if replicates is None:
+        power = ("equal", "1/x", "1/x^2").index(weights)
+        scatter[power] = variance * float(np.mean(x ** -float(power)))
+    else:
+        scatter = variance * float(np.mean(1.0 / replicates.variance)) * _of_function(replicates.function)
     return _Found(
         coefficients=fit.coefficients,
         factor=factor,
@@ -352,15 +370,30 @@ def _fit_weighted(
         residual_sd=fit.residual_sd,
         r_squared=fit.r_squared,
         response_variance=variance,
-        scatter=_scatter(x, y, weights, variance),
+        scatter=scatter,
+        scatter_freedom=freedom,
+        scatter_function=replicates.function if replicates else None,
         distance=None,
     )
 
 
+def _mean_one(raw: FloatArray) -> FloatArray:
+    scaled: FloatArray = raw / raw.mean()
+    return scaled
+
+
+def _of_function(function: VarianceFunction) -> FloatArray:
+    """v0, v1, v2, c of a variance function."""
+    return np.array([function.c0, 0.0, 0.0, function.c1])
+
+
 def _with_certificates(
     x: FloatArray, y: FloatArray, fit: PolynomialFit, weight: FloatArray, errors: FloatArray
-) -> tuple[FloatArray, FloatArray, float]:
-    """Factor of the covariance, its part from the standards' errors, and the variance of the responses alone."""
+) -> tuple[FloatArray, FloatArray, float, float]:
+    """Factor of the covariance, its part from the standards' errors, and the variance of the responses alone.
+
+    The last with its degrees of freedom: a difference is known as well as what it is taken from, in absolute terms.
+    """
     powers = np.array(fit.powers)
     centre, scale, plain = scaled_design(x, fit.powers)
     root = np.sqrt(weight)[:, None]
@@ -369,38 +402,33 @@ def _with_certificates(
     slope = (powers * x[:, None] ** np.maximum(powers - 1, 0)) @ fit.coefficients
     moved = root * slope[:, None] * errors
     along = q.T @ moved
-    variance = 0.0
-    if fit.degrees_of_freedom:
+    variance, freedom = fit.residual_sd**2, float(fit.degrees_of_freedom)
+    in_curve = variance
+    if variance > 0.0:
+        pure, inner = _pure_variance(x, y, weight)
         seen = float(np.sum(np.square(moved)) - np.sum(np.square(along)))
-        variance = max(fit.residual_sd**2 - seen / fit.degrees_of_freedom, _pure_variance(x, y, weight))
-    both = np.hstack((math.sqrt(variance) * back, back @ along))
+        in_curve = max(variance - seen / freedom, pure)
+        if pure > 0.0:
+            freedom = max(freedom * (in_curve / variance) ** 2, float(inner))
+            variance = in_curve
+        else:
+            residual = root[:, 0] * (y - (x[:, None] ** powers) @ fit.coefficients)
+            variance, freedom = unexplained_variance(*components(residual, q, moved))
+    both = np.hstack((math.sqrt(in_curve) * back, back @ along))
     triangle = np.linalg.qr(both.T)[1]
     own = plain @ (back @ along)
-    return plain @ triangle.T, own @ own.T, variance
+    return plain @ triangle.T, own @ own.T, variance, freedom
 
 
-def _pure_variance(x: FloatArray, y: FloatArray, weight: FloatArray) -> float:
-    """Variance of a response of weight 1 between replicates; 0 without replicates."""
+def _pure_variance(x: FloatArray, y: FloatArray, weight: FloatArray) -> tuple[float, int]:
+    """Variance of a response of weight 1 between replicates, and its degrees of freedom; 0 without replicates."""
     _, member = np.unique(x, return_inverse=True)
     member = member.reshape(-1)
     freedom = x.size - int(member.max()) - 1
     if freedom == 0:
-        return 0.0
+        return 0.0, 0
     mean = np.bincount(member, weights=y) / np.bincount(member)
-    return float(weight @ np.square(y - mean[member])) / freedom
-
-
-def _scatter(x: FloatArray, y: FloatArray, weights: str, variance: float) -> FloatArray:
-    """v0, v1, v2, c of the variance of a reading, from that of a point of mean weight."""
-    if weights == "equal":
-        return np.array([variance, 0.0, 0.0, 0.0])
-    if weights == "1/x":
-        return np.array([0.0, variance * float(np.mean(1.0 / x)), 0.0, 0.0])
-    if weights == "1/x^2":
-        return np.array([0.0, 0.0, variance * float(np.mean(1.0 / x**2)), 0.0])
-    c0, c1 = replicate_variance_function(x, y)
-    scale = variance * float(np.mean(1.0 / replicate_variance(x, y)))
-    return np.array([scale * c0, 0.0, 0.0, scale * c1])
+    return float(weight @ np.square(y - mean[member])) / freedom, freedom
 
 
 def _fit_both(
@@ -413,11 +441,12 @@ def _fit_both(
             " (a zero gas has that of its impurities)"
         )
     freedom = x.size - len(powers)
-    scatter = None
-    if u_y is None and np.unique(x).size < x.size and _pure_variance(x, y, np.ones_like(x)) > 0.0:
-        u_y = np.sqrt(replicate_variance(x, y))
-        c0, c1 = replicate_variance_function(x, y)
-        scatter = np.array([c0, 0.0, 0.0, c1])
+    scatter = function = None
+    if u_y is None and _pure_variance(x, y, np.ones_like(x))[0] > 0.0:
+        replicates = replicate_scatter(x, y)
+        u_y = np.sqrt(replicates.variance)
+        function = replicates.function
+        scatter = _of_function(function)
         freedom = x.size - np.unique(x).size
     fit = fit_distance(x, y, powers, errors, u_y)
     variance = np.square(fit.u_y)
@@ -437,5 +466,7 @@ def _fit_both(
         r_squared=1.0 - float(weight @ np.square(residual)) / total if total > 0.0 else math.nan,
         response_variance=float(1.0 / np.mean(weight)),
         scatter=scatter,
+        scatter_freedom=float(freedom) if function else fit.scatter_freedom,
+        scatter_function=function,
         distance=fit,
     )

@@ -21,7 +21,13 @@ from numpy.typing import ArrayLike, NDArray
 
 from coulombook.curves.fit import Curve
 from coulombook.curves.inverse import invert, invertible
-from coulombook.curves.prediction import curve_response, curve_variance, reading_variance, slope
+from coulombook.curves.prediction import (
+    curve_response,
+    curve_variance,
+    prediction,
+    reading_variance,
+    slope,
+)
 from coulombook.curves.quantiles import student_quantile
 
 FloatArray = NDArray[np.float64]
@@ -73,9 +79,8 @@ def inverse_with_uncertainty(
 
     Notes
     -----
-    Student's t has the degrees of freedom of the curve's scatter where all variance stems from it, and more, by the
-    Welch-Satterthwaite formula (JCGM 100:2008, G.4), as certificates of the standards and a given ``u_y``, taken as
-    known, have their share.
+    Student's t has the effective degrees of freedom of `coulombook.curves.prediction.prediction` at the estimate: those
+    of the curve's scatter where all variance stems from it, more as certificates and a given ``u_y`` have their share.
 
     Raises
     ------
@@ -104,32 +109,19 @@ def inverse_with_uncertainty(
     x = np.full(y.shape, np.nan)
     x[reached] = np.asarray(invert(a0, a1, a2, y[reached]))
 
-    def variance(at: FloatArray) -> FloatArray:
-        reading = known if known is not None else reading_variance(curve, at) / repeats
-        result: FloatArray = reading + curve_variance(curve, at)
-        return result
-
-    total = variance(x)
-    scattered = total - curve_variance(curve, x, curve.certificate)
-    if known is not None:
-        scattered = scattered - known
-    scattered = np.maximum(scattered, 0.0)
+    total, freedom = prediction(curve, x, repeats, known)
     with np.errstate(divide="ignore", invalid="ignore"):
         u = np.sqrt(total) / slope(curve, x)
-        freedom = np.where(scattered > 0.0, np.square(total / scattered) * curve.degrees_of_freedom, np.inf)
-    if curve.degrees_of_freedom < 1:
-        freedom = np.zeros_like(total)
     t = student_quantile(0.5 + 0.5 * level, freedom)
     turn = float(-0.5 * a1 / a2) if a2 != 0.0 else np.inf
-    low, high = (
-        _end(
-            x,
-            sign * t * u,
-            turn,
-            lambda at: np.abs(y - curve_response(curve, at)) - t * np.sqrt(variance(at)),
-        )
-        for sign in (-1.0, 1.0)
-    )
+
+    def excess(at: FloatArray) -> FloatArray:
+        reading = known if known is not None else reading_variance(curve, at) / repeats
+        arm = t * np.sqrt(reading + curve_variance(curve, at))
+        result: FloatArray = np.abs(y - curve_response(curve, at)) - arm
+        return result
+
+    low, high = (_end(x, sign * t * u, turn, excess) for sign in (-1.0, 1.0))
     return InverseEstimate(x, u, low, high, freedom)
 
 

@@ -33,7 +33,7 @@ from numpy.typing import ArrayLike
 
 from coulombook.curves.fit import Curve
 from coulombook.curves.inverse import invert, invertible
-from coulombook.curves.prediction import curve_response, curve_variance, reading_variance, slope
+from coulombook.curves.prediction import curve_response, curve_variance, prediction, reading_variance, slope
 from coulombook.curves.quantiles import power_of_t, student_quantile
 
 SCHEMES = ("ISO 11843-2", "DIN 32645", "DIN 32645 blank", "Hubaux-Vos", "ICH residual", "ICH blank")
@@ -145,9 +145,11 @@ class _Zero:
     def __init__(self, curve: Curve, alpha: float, repeats: int) -> None:
         self.curve = curve
         self.repeats = repeats
-        self.t = float(student_quantile(1.0 - alpha, curve.degrees_of_freedom))
+        variance, freedom = prediction(curve, 0.0, repeats)
+        self.freedom = float(freedom)
+        self.t = float(student_quantile(1.0 - alpha, freedom))
         self.intercept_variance = float(curve_variance(curve, 0.0))
-        self.sd = math.sqrt(float(reading_variance(curve, 0.0)) / repeats + self.intercept_variance)
+        self.sd = math.sqrt(float(variance))
         self.threshold = float(curve.coefficients[0]) + self.t * self.sd
 
     def decision(self) -> float:
@@ -171,13 +173,13 @@ class _Zero:
             variance = float(reading_variance(self.curve, x)) / self.repeats + self.intercept_variance
             ratio = math.sqrt(variance) / self.sd
             shift = (float(curve_response(self.curve, x)) - a0) / (self.sd * ratio)
-            return power_of_t(shift, self.t / ratio, self.curve.degrees_of_freedom) - (1.0 - beta)
+            return power_of_t(shift, self.t / ratio, self.freedom) - (1.0 - beta)
 
         return _first_above(self.curve, excess, self.decision())
 
     def where_the_band_clears(self, beta: float) -> float:
         """The x whose lower one-sided prediction limit is the threshold."""
-        t = float(student_quantile(1.0 - beta, self.curve.degrees_of_freedom))
+        t = float(student_quantile(1.0 - beta, self.freedom))
 
         def excess(x: float) -> float:
             variance = float(reading_variance(self.curve, x)) / self.repeats + float(
@@ -190,14 +192,15 @@ class _Zero:
 
 def _quantification(curve: Curve, alpha: float, repeats: int) -> float:
     """The least x whose two-sided interval of level 1 - alpha has the half-width x/k (DIN 32645, k = 3)."""
-    t = float(student_quantile(1.0 - 0.5 * alpha, curve.degrees_of_freedom))
+
+    def half_width(x: float) -> float:
+        variance, freedom = prediction(curve, x, repeats)
+        return float(student_quantile(1.0 - 0.5 * alpha, freedom)) * math.sqrt(float(variance))
 
     def excess(x: float) -> float:
-        variance = float(reading_variance(curve, x)) / repeats + float(curve_variance(curve, x))
-        return x * float(slope(curve, x)) - K * t * math.sqrt(variance)
+        return x * float(slope(curve, x)) - K * half_width(x)
 
-    at_zero = math.sqrt(float(reading_variance(curve, 0.0)) / repeats + float(curve_variance(curve, 0.0)))
-    return _first_above(curve, excess, t * at_zero / float(slope(curve, 0.0)))
+    return _first_above(curve, excess, half_width(0.0) / float(slope(curve, 0.0)))
 
 
 def _first_above(curve: Curve, excess: Callable[[float], float], start: float) -> float:

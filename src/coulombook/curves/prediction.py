@@ -52,6 +52,45 @@ def curve_variance(curve: Curve, x: ArrayLike, covariance: FloatArray | None = N
     return part
 
 
+def reading_freedom(curve: Curve, x: ArrayLike) -> FloatArray:
+    """Degrees of freedom of `reading_variance` at x. [1]
+
+    Those of the residual variance where one number gives all. Where replicates gave a function v0 + c y^2 they are
+    2 v^2/var(v) at the response concerned: fewer, at the ends, than all replicates together have.
+    """
+    x = np.asarray(x, dtype=float)
+    if curve.scatter_function is None:
+        return np.full(x.shape, curve.scatter_freedom)
+    return curve.scatter_function.freedom(curve_response(curve, x))
+
+
+def prediction(
+    curve: Curve, x: ArrayLike, repeats: ArrayLike = 1, known: ArrayLike | None = None
+) -> tuple[FloatArray, FloatArray]:
+    """Variance of the mean of so many readings at x about the curve, and its effective degrees of freedom.
+
+    The part that scatter makes, of the reading and in the curve, has the degrees of freedom of the scatter; what
+    certificates make, and a ``known`` variance of the reading in place of the curve's, counts as known
+    (Welch-Satterthwaite, JCGM 100:2008, G.4). Zero degrees of freedom: nothing is known of the scatter.
+    """
+    x = np.asarray(x, dtype=float)
+    of_curve = curve_variance(curve, x)
+    scattered = np.maximum(of_curve - curve_variance(curve, x, curve.certificate), 0.0)
+    if known is None:
+        reading = reading_variance(curve, x) / np.asarray(repeats, dtype=float)
+        scattered = scattered + reading
+        freedom = reading_freedom(curve, x)
+    else:
+        reading = np.asarray(known, dtype=float)
+        freedom = np.full(x.shape, curve.scatter_freedom)
+    total = of_curve + reading
+    if curve.degrees_of_freedom < 1:
+        return total, np.zeros_like(total)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        effective = np.where(scattered > 0.0, np.square(total / scattered) * freedom, np.inf)
+    return total, effective
+
+
 def range_distance(curve: Curve, x: ArrayLike) -> FloatArray:
     """How far x lies outside the calibrated range, as a share of the range's width: below 0 under it, 0 within. [1]"""
     x = np.asarray(x, dtype=float)

@@ -55,6 +55,8 @@ def chi2_tail(value: float, freedom: float) -> float:
 
 def power_of_t(shift: float, threshold: float, freedom: float) -> float:
     """Probability that a t with noncentrality ``shift`` exceeds ``threshold``."""
-    from scipy.special import nctdtr
+    from scipy.special import nctdtr, ndtr
 
+    if math.isinf(freedom):
+        return float(ndtr(shift - threshold))
     return 1.0 - float(nctdtr(freedom, shift, threshold))

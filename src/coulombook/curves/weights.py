@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -15,6 +17,39 @@ POINT_WEIGHTS = WEIGHTS[:-1]  # errors in both variables need a fit of their own
 # asks for ten as well.
 ENOUGH_REPLICATES = 10
 _STEPS = 50
+_SETTLED = 1e-12  # relative change of the variances
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class VarianceFunction:
+    """Variance c0 + c1 y^2 of a single response of mean y, with the covariance (2, 2) of c0 and c1.
+
+    ``least_freedom`` is that of the least replicated level: at a level nothing is known less well than its
+    own replicates tell.
+    """
+
+    c0: float
+    c1: float
+    covariance: FloatArray
+    least_freedom: float
+
+    def freedom(self, y: FloatArray) -> FloatArray:
+        """Degrees of freedom of the variance at y, 2 v^2/var(v). [1]"""
+        square = np.square(y)
+        (s00, s01), (_, s11) = self.covariance
+        spread = s00 + 2.0 * s01 * square + s11 * np.square(square)
+        result: FloatArray = np.maximum(
+            2.0 * np.square(self.c0 + self.c1 * square) / spread, self.least_freedom
+        )
+        return result
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class ReplicateScatter:
+    """Scatter of replicates: the variance at each point, and that of any response."""
+
+    variance: FloatArray  # (n_points,)
+    function: VarianceFunction
 
 
 def point_weights(x: FloatArray, y: FloatArray, weights: str) -> FloatArray:
@@ -64,57 +99,43 @@ def replicate_variance(x: FloatArray, y: FloatArray) -> FloatArray:
     ValueError
         No level has two points, or the replicates of no level differ.
     """
-    levels = _Levels(x, y)
-    if not (levels.freedom > 0.0).any():
-        raise ValueError("weights from replicates need at least two points of the same x; there are none")
-    if not (levels.spread > 0.0).any():
-        raise ValueError("weights from replicates need replicates that differ; there is no variance")
-    if levels.count.min() >= ENOUGH_REPLICATES and (levels.spread > 0.0).all():
-        own: FloatArray = (levels.spread / levels.freedom)[levels.member]
-        return own
-    c0, c1 = levels.variance_function()
-    pooled: FloatArray = (c0 + c1 * np.square(levels.mean))[levels.member]
-    return pooled
+    return replicate_scatter(x, y).variance
 
 
-def replicate_variance_function(x: FloatArray, y: FloatArray) -> tuple[float, float]:
-    """c0 and c1 of the variance c0 + c1 y^2 of a single response of mean y, from replicates.
+def replicate_scatter(x: FloatArray, y: FloatArray) -> ReplicateScatter:
+    """What `replicate_variance` describes, and the variance function for readings that are no standards.
 
-    The function `replicate_variance` describes, for readings that are no standards, however many replicates a
-    level has. Raises ValueError as that does.
+    The function is fitted however many replicates a level has. Raises ValueError as `replicate_variance` does.
     """
-    levels = _Levels(x, y)
-    if not (levels.spread > 0.0).any():
-        raise ValueError("replicates that differ are needed; there are none")
-    return levels.variance_function()
+    _, member = np.unique(x, return_inverse=True)
+    member = member.reshape(-1)
+    count = np.bincount(member).astype(float)
+    mean = np.bincount(member, weights=y) / count
+    spread = np.bincount(member, weights=np.square(y - mean[member]))
+    freedom = count - 1.0
+    replicated = freedom > 0.0
+    if not replicated.any():
+        raise ValueError("weights from replicates need at least two points of the same x; there are none")
+    if not (spread > 0.0).any():
+        raise ValueError("weights from replicates need replicates that differ; there is no variance")
+    square, variance = (
+        np.square(mean),
+        np.divide(spread, freedom, out=np.zeros_like(spread), where=replicated),
+    )
+    function = _variance_function(square, variance, freedom)
+    if count.min() >= ENOUGH_REPLICATES and (spread > 0.0).all():
+        return ReplicateScatter(variance[member], function)
+    return ReplicateScatter((function.c0 + function.c1 * square)[member], function)
 
 
 def smooth_variance(y: FloatArray, variance: FloatArray) -> tuple[float, float]:
     """c0 and c1 of the variance c0 + c1 y^2 through variances given for each response."""
-    return _variance_function(np.square(y), variance, np.ones_like(variance))
+    function = _variance_function(np.square(y), variance, np.ones_like(variance))
+    return function.c0, function.c1
 
 
-class _Levels:
-    """Points gathered by their x."""
-
-    __slots__ = ("count", "freedom", "mean", "member", "spread")
-
-    def __init__(self, x: FloatArray, y: FloatArray) -> None:
-        _, member = np.unique(x, return_inverse=True)
-        self.member = member.reshape(-1)
-        self.count = np.bincount(self.member).astype(float)
-        self.mean = np.bincount(self.member, weights=y) / self.count
-        self.spread = np.bincount(self.member, weights=np.square(y - self.mean[self.member]))
-        self.freedom = self.count - 1.0
-
-    def variance_function(self) -> tuple[float, float]:
-        known = self.freedom > 0.0
-        variance = np.divide(self.spread, self.freedom, out=np.zeros_like(self.spread), where=known)
-        return _variance_function(np.square(self.mean), variance, self.freedom)
-
-
-def _variance_function(square: FloatArray, variance: FloatArray, freedom: FloatArray) -> tuple[float, float]:
-    """c0 and c1 of c0 + c1 square, fitted to variances with their degrees of freedom; none is below zero."""
+def _variance_function(square: FloatArray, variance: FloatArray, freedom: FloatArray) -> VarianceFunction:
+    """c0 + c1 square, fitted to variances with their degrees of freedom; neither is below zero."""
     scale = square.max() if square.max() > 0.0 else 1.0
     share = square / scale
     pooled = float(freedom @ variance / freedom.sum())
@@ -139,7 +160,27 @@ def _variance_function(square: FloatArray, variance: FloatArray, freedom: FloatA
         losses = [float(weight @ np.square(variance - c0 - c1 * share)) for c0, c1 in candidates]
         c0, c1 = candidates[int(np.argmin(losses))]
         following = c0 + c1 * share
-        if np.allclose(following, fitted, rtol=1e-12, atol=0.0):
-            break
+        settled = (np.abs(following - fitted) <= _SETTLED * fitted).all()
         fitted = following
-    return float(c0), float(c1 / scale)
+        if settled:
+            break
+    return VarianceFunction(
+        float(c0),
+        float(c1 / scale),
+        _covariance(share, scale, fitted, freedom),
+        float(freedom[freedom > 0.0].min()),
+    )
+
+
+def _covariance(share: FloatArray, scale: float, fitted: FloatArray, freedom: FloatArray) -> FloatArray:
+    """Covariance of c0 and c1 from what the levels know, a variance v of nu degrees of freedom being known to 2 v^2/nu.
+
+    Both parts count as free even where one came out as zero: that it is zero is not known.
+    """
+    weight = 0.5 * freedom / fitted**2
+    s1, sq, sqq = weight.sum(), weight @ share, weight @ share**2
+    determinant = s1 * sqq - sq * sq
+    if determinant <= 1e-12 * s1 * sqq:
+        return np.array([[1.0 / s1, 0.0], [0.0, 0.0]])
+    result: FloatArray = np.array([[sqq, -sq / scale], [-sq / scale, s1 / scale**2]]) / determinant
+    return result

@@ -14,9 +14,11 @@ from coulombook.curves.prediction import (
     curve_response,
     curve_variance,
     range_distance,
+    reading_freedom,
     reading_variance,
     slope,
 )
+from coulombook.curves.quantiles import student_quantile
 from coulombook.uncertainty.linearised import Linearised, covariance, sparse_map
 
 X = np.array([1.0, 2.0, 3.0, 4.0])
@@ -66,13 +68,29 @@ def test_ends_are_where_the_reading_is_just_contradicted(form: str, weights: str
     y = np.array([1.5, 12.0, 50.0, 80.0])
     for repeats in (1, 3):
         found = inverse_with_uncertainty(curve, y, repeats, level=0.9)
-        # t(0.95) with 12, 13 and 14 degrees of freedom
-        t = {12: 1.7822875556, 13: 1.7709333960, 14: 1.7613101358}[curve.degrees_of_freedom]
+        t = student_quantile(0.95, found.degrees_of_freedom)
+        if weights != "replicates":
+            # t(0.95) with 12, 13 and 14 degrees of freedom, from a table
+            table = {12: 1.7822875556, 13: 1.7709333960, 14: 1.7613101358}
+            np.testing.assert_allclose(t, table[curve.degrees_of_freedom], rtol=1e-9)
         for end in (found.low, found.high):
             v = reading_variance(curve, end) / repeats + curve_variance(curve, end)
             np.testing.assert_allclose(np.abs(y - curve_response(curve, end)), t * np.sqrt(v), rtol=1e-9)
         assert (found.low < found.x).all()
         assert (found.x < found.high).all()
+
+
+def test_variance_from_replicates_is_known_less_well_at_the_ends() -> None:
+    # three replicates at two levels: the variance there is that of the level, with two degrees of freedom; the curve
+    # adds what the same two levels tell
+    x = np.repeat([1.0, 10.0], 3)
+    y = 10.0 * x + np.array([0.1, -0.1, 0.0, 1.0, -1.0, 0.0])
+    curve = fit_curve(x, y, "line", "replicates")
+    np.testing.assert_allclose(reading_freedom(curve, [1.0, 10.0]), 2.0, rtol=1e-9)
+    # in between both tell
+    assert 2.0 < float(reading_freedom(curve, 3.0)) < 4.0
+    found = inverse_with_uncertainty(curve, [10.0, 30.0, 100.0])
+    np.testing.assert_allclose(found.degrees_of_freedom, reading_freedom(curve, found.x), rtol=1e-12)
 
 
 def test_a_narrow_interval_is_the_symmetric_one() -> None:
