@@ -249,7 +249,7 @@ def test_new_refuses_a_folder_that_is_in_use(
     ("arguments", "message"),
     [
         (["taly", "x"], "unknown command 'taly'; did you mean 'tally'?"),
-        (["frobnicate"], "unknown command 'frobnicate'; known: tally, check, new"),
+        (["frobnicate"], "unknown command 'frobnicate'; known: tally, check, new, curves"),
         (["tally", "x", "--srtict"], "unknown option '--srtict'; did you mean '--strict'?"),
         (["tally", "x", "--otu=y"], "unknown option '--otu=y'; did you mean '--out'?"),
         (["--verion"], "unknown option '--verion'; did you mean '--version'?"),
@@ -274,7 +274,7 @@ def test_no_command_shows_the_help_with_status_2(capsys: pytest.CaptureFixture[s
     assert "coulombook tally" in capsys.readouterr().err
 
 
-@pytest.mark.parametrize("command", [[], ["tally"], ["check"], ["new"]])
+@pytest.mark.parametrize("command", [[], ["tally"], ["check"], ["new"], ["curves"]])
 @pytest.mark.parametrize("columns", ["80", "40"])
 def test_every_help_has_an_example(
     command: list[str], columns: str, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]

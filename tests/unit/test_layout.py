@@ -29,6 +29,7 @@ ROOMS = (
     "compare",
     "book",
     "intake",
+    "library",
     "tally",
     "report",
     "cli",

@@ -84,6 +84,18 @@ def plain(value: float | None, digits: int = _PLAIN_DIGITS) -> str:
     return f"{_fixed(exact.scaleb(-order), digits - 1)}e{order}"
 
 
+def brief(value: float | None, digits: int = 6) -> str:
+    """A number as people would type it: at most so many digits, without zeros that say nothing.
+
+    >>> brief(5000.0), brief(0.02), brief(1e-5), brief(1.5e7), brief(0.0)
+    ('5000', '0.02', '1e-5', '1.5e7', '0')
+    """
+    mantissa, exponential, exponent = plain(value, digits).partition("e")
+    if "." in mantissa:
+        mantissa = mantissa.rstrip("0").removesuffix(".")
+    return mantissa + exponential + exponent
+
+
 def fixed(value: float | None, decimals: int) -> str:
     """A number to so many decimals, for columns whose last digit is known beforehand.
 

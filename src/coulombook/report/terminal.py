@@ -57,6 +57,11 @@ def show_book(book: Book, console: Console, *, written: Path | None = None) -> N
     console.print()
     show_runs(list(book.tables["summary"].records()), console)
     console.print()
+    if "closure" in book.tables and "explanations" in book.tables:
+        from coulombook.report.explain_view import verdict
+
+        hanging("", verdict(book), console)
+        console.print()
     if book.findings:
         show_findings(book.findings, console)
         console.print()
@@ -122,17 +127,17 @@ def _show_finding(one: Finding, wheres: Sequence[str], console: Console, *, with
     kind = Text(f"{_WORD[one.severity]}[{visible(one.kind, 60)}]", style=_STYLE[one.severity])
     console.print(kind + Text(f": {where}", style="default"))
     if one.text:
-        _hanging("  ", one.text, console)
+        hanging("  ", one.text, console)
     for label, text in (
         ("found:", one.found),
         ("expected:", one.expected),
         ("mend:", one.mend if with_mend else ""),
     ):
         if text:
-            _hanging(f"  {label:10}", text, console)
+            hanging(f"  {label:10}", text, console)
 
 
-def _hanging(label: str, text: str, console: Console) -> None:
+def hanging(label: str, text: str, console: Console) -> None:
     """Print a text behind its label, further lines under its own beginning."""
     lines = Text(visible(text)).wrap(console, max(console.width - len(label), 20))
     for place, line in enumerate(lines):

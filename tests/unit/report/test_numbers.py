@@ -9,7 +9,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from coulombook.report.numbers import ABSENT, between, fixed, plain, with_uncertainty
+from coulombook.report.numbers import ABSENT, between, brief, fixed, plain, with_uncertainty
 
 
 @pytest.mark.parametrize(
@@ -109,3 +109,15 @@ def test_what_is_shown_is_within_half_a_digit_of_what_was_given(value: float, u:
     assert abs(shown_u - Decimal(u)) <= Decimal(u) * Decimal("0.0501")
     assert abs(Decimal(number).scaleb(power) - Decimal(value)) <= Decimal(u) * Decimal("0.0501")
     assert len(digits.strip("0")) <= 2
+
+
+def test_a_brief_number_keeps_its_value_and_drops_empty_zeros() -> None:
+    assert [brief(one) for one in (100.0, 120000.0, -0.5, 2.5e-7, 1e9)] == [
+        "100",
+        "120000",
+        "-0.5",
+        "2.5e-7",
+        "1e9",
+    ]
+    assert brief(None) == "-"
+    assert brief(1234.5678, 3) == "1230"
