@@ -30,6 +30,7 @@ from coulombook.balance.verdicts import (
     report_signals,
 )
 from coulombook.book import Book, InputFile
+from coulombook.book.closures import closure_rows
 from coulombook.book.efficiencies import carbon_rows, efficiency_rows
 from coulombook.book.entries import Row, enter
 from coulombook.book.forecast import forecast
@@ -123,6 +124,7 @@ def _judge(
     account = carbon_account(settled)
     report_flow(settled, account, findings)
     judgements = {
+        "closure": closure_rows(settled),
         "explanations": explanation_rows(explain(settled)),
         "carbon": carbon_rows(settled, account),
         "efficiencies": efficiency_rows(settled, product_efficiencies(settled)),

@@ -6,6 +6,7 @@ along the cause, taken by evaluating it once with one error per cause.
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
@@ -97,12 +98,13 @@ def _loads(settled: Settled) -> Iterator[_Load]:
         x["compartment volume"],
         "weigh the electrolyte before and after a run",
     )
+    # as of every entered quantity: positive when the logged reduction current is too large
     mean = nominal(settled.electrical.mean_current_ampere).mean()
     yield _Load(
         "current-offset",
         "",
         "current offset",
-        np.full(len(plan.runs), -mean),
+        np.full(len(plan.runs), mean),
         "log the current at open circuit and across a known resistor",
     )
 
@@ -130,7 +132,7 @@ def _entered(settled: Settled) -> list[Cause]:
 
 
 def _lost(settled: Settled) -> list[Cause]:
-    """Causes that take a share away: lost gas, crossover, an unmeasured product."""
+    """Causes that take a share away: lost gas, crossover, a vial that was not taken, an unmeasured product."""
     plan, outcome = settled.plan, settled.outcome
     products = plan.products
     n = len(plan.runs)
@@ -161,6 +163,13 @@ def _lost(settled: Settled) -> list[Cause]:
     alone = _runs_without_anolyte(settled)
     if (liquid * alone).any():
         causes.append(Cause("crossover", "", -(liquid * alone)[:, None], True, "take an anolyte vial"))
+    for place, missing in _compartments_missing(settled):
+        one = np.zeros((n, 1))
+        one[place] = -1.0
+        name = plan.runs[place].name
+        causes.append(
+            Cause("crossover", name, one, True, f"run {name} has no vial of the {missing}: measure one")
+        )
     potential = nominal(outcome.electrical.potential_rhe_volt)
     causes.append(
         Cause(
@@ -188,11 +197,28 @@ def _lost(settled: Settled) -> list[Cause]:
 
 def _runs_without_anolyte(settled: Settled) -> FloatArray:
     """1 for runs whose liquid was sampled in a single compartment, so that what crossed over is not seen."""
+    return np.array([float(len(sampled) == 1) for sampled in _compartments(settled)])
+
+
+def _compartments(settled: Settled) -> list[set[str]]:
+    """The compartments that were sampled, of each run."""
     samplings = settled.plan.liquid.samplings
-    compartments: dict[int, set[str]] = {}
+    compartments: list[set[str]] = [set() for _ in settled.plan.runs]
     for run, compartment in zip(samplings.run.tolist(), samplings.compartment, strict=True):
-        compartments.setdefault(run, set()).add(compartment)
-    return np.array([float(len(compartments.get(run, ())) == 1) for run in range(len(settled.plan.runs))])
+        compartments[run].add(compartment)
+    return compartments
+
+
+def _compartments_missing(settled: Settled) -> list[tuple[int, str]]:
+    """Runs that lack a compartment which more than half of the day's runs sampled, and which."""
+    compartments = _compartments(settled)
+    count = Counter(one for sampled in compartments for one in sampled)
+    usual = [one for one, runs in count.items() if 2 * runs > len(compartments)]
+    return [
+        (run, " and ".join(one for one in usual if one not in sampled))
+        for run, sampled in enumerate(compartments)
+        if not sampled.issuperset(usual)
+    ]
 
 
 def names(causes: Sequence[Cause]) -> list[str]:

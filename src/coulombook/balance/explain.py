@@ -12,9 +12,10 @@ chance alone gives the best of the same candidates: a day without a cause is acc
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from coulombook.balance.causes import Cause, candidate_causes, names
 from coulombook.balance.settle import Settled
@@ -140,7 +141,26 @@ def explain(settled: Settled) -> Explained:
         for one in candidate_causes(settled)
     ]
     causes = [one for one in causes if np.abs(one.pattern[:, 0]).max(initial=0.0) > 0]
-    return rank(nominal(total)[held] - 1.0, v, causes)
+    found = rank(nominal(total)[held] - 1.0, v, causes)
+    return replace(found, ranked=tuple(map(_of_the_quantity, found.ranked)))
+
+
+# causes that take a share of what was measured away
+_LOST = ("gas-lost", "crossover")
+
+
+def _of_the_quantity(one: Explanation) -> Explanation:
+    """The estimate as an error of the quantity entered, or as the share that was lost.
+
+    A pattern scales what was measured, so that a factor 1 + e too high leaves theta = e / (1 + e) of it to be taken
+    away, and a lost share f leaves theta = f / (1 - f) of it to be added. NaN where no such error can explain it.
+    """
+    if one.cause in ("none", "unmeasured-product") or (one.cause == "crossover" and one.where):
+        return one  # nothing, or a share of the charge itself
+    rest = 1.0 + one.estimate if one.cause in _LOST else 1.0 - one.estimate
+    if not rest > 0:
+        return replace(one, estimate=float("nan"), u=float("nan"))
+    return replace(one, estimate=one.estimate / rest, u=one.u / rest**2)
 
 
 def rank(residual: FloatArray, v: FloatArray, causes: Sequence[Cause]) -> Explained:
@@ -155,13 +175,18 @@ def rank(residual: FloatArray, v: FloatArray, causes: Sequence[Cause]) -> Explai
     closes = best <= 0 or (best < _BEYOND_CHANCE and best <= _chance_gain(whitened, causes, scatter))
     fits = whitened.estimates(residual, causes)
     labels = names(causes)
+    alike = _of_one_pattern(causes)
     order = sorted(range(len(causes)), key=lambda number: -gains[number])
     ranked = []
     for number in order:
         near = tuple(
             labels[other]
             for other in order
-            if other != number and abs(gains[other] - gains[number]) < TOLD_APART and gains[number] > 0
+            if other != number
+            and gains[number] > 0
+            and (
+                abs(gains[other] - gains[number]) < TOLD_APART or (alike[number, other] and gains[other] > 0)
+            )
         )
         ranked.append(
             Explanation(
@@ -177,6 +202,23 @@ def rank(residual: FloatArray, v: FloatArray, causes: Sequence[Cause]) -> Explai
     place_of_none = 0 if closes else sum(gain > 0 for gain in gains)
     ranked.insert(place_of_none, nothing)
     return Explained(tuple(ranked), closes, float(_SCATTERS[scatter]))
+
+
+# patterns whose directions agree to this cosine differ by less than the readings could ever show
+_SAME_DIRECTION = 1.0 - 1e-9
+
+
+def _of_one_pattern(causes: Sequence[Cause]) -> NDArray[np.bool_]:
+    """Which causes move all totals in the same proportion, (n_causes, n_causes): only their likely sizes differ."""
+    if not causes:
+        return np.zeros((0, 0), dtype=bool)
+    first = np.column_stack([cause.pattern[:, 0] for cause in causes])
+    length = np.linalg.norm(first, axis=0)
+    direction = np.divide(first, length, out=np.zeros_like(first), where=length > 0)
+    single = np.array([cause.pattern.shape[1] == 1 for cause in causes])
+    same: NDArray[np.bool_] = np.abs(direction.T @ direction) >= _SAME_DIRECTION
+    same &= single & single[:, None]
+    return same
 
 
 def _chance_gain(whitened: _Whitened, causes: Sequence[Cause], scatter: int) -> float:

@@ -46,6 +46,9 @@ CALIBRATIONS = (
     "highest / ppm",
 )  # fmt: skip
 BUDGET = ("run", "output", "source", "shared", "u / %", "share / %")
+CLOSURE = (
+    "run", "total FE / %", "u(total FE) / %", "deviation / u", "closure", "chi-square", "degrees of freedom", "p",
+)  # fmt: skip
 EXPLANATIONS = (
     "rank", "cause", "where", "estimate / %", "u(estimate) / %", "evidence", "told apart", "bench test",
 )  # fmt: skip
@@ -74,6 +77,7 @@ TABLES: Mapping[str, tuple[str, ...]] = {
     "surface": SURFACE,
     "calibrations": CALIBRATIONS,
     "budget": BUDGET,
+    "closure": CLOSURE,
     "explanations": EXPLANATIONS,
     "intervals": INTERVALS,
     "reconciliation": RECONCILIATION,
