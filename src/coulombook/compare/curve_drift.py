@@ -170,7 +170,8 @@ def mean_slope(
     return MeanSlope(
         slope=slope,
         u_scatter=math.sqrt(whole - standards) / slope,
-        freedom=float(curve.degrees_of_freedom),
+        # what the standards' errors are taken out of is known less well than it was
+        freedom=min(float(curve.degrees_of_freedom), curve.scatter_freedom),
         u_standards=math.sqrt(standards) / slope,
         parents=dict(parents or {}),
     )
@@ -254,7 +255,7 @@ def intercept_shift(first: Curve, second: Curve, level: float = LEVEL) -> Change
     scatter = [
         max(a - float(one.certificate[0, 0]), 0.0) for a, one in zip(whole, (first, second), strict=True)
     ]
-    freedom = [float(one.degrees_of_freedom) for one in (first, second)]
+    freedom = [min(float(one.degrees_of_freedom), one.scatter_freedom) for one in (first, second)]
     value = float(second.coefficients[0] - first.coefficients[0])
     return _test(value, sum(whole), scatter, freedom, level)
 

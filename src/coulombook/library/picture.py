@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from coulombook.curves.prediction import curve_response, curve_variance, reading_variance
+from coulombook.curves.prediction import curve_response, curve_variance, prediction, reading_variance
 from coulombook.curves.quantiles import student_quantile
 from coulombook.library.shelf import Entry
 
@@ -72,7 +72,8 @@ def picture(entry: Entry, grid: int = 200, level: float = LEVEL) -> Picture:
     if curve.degrees_of_freedom > 0:
         t = student_quantile(0.5 + 0.5 * level, curve.degrees_of_freedom)
         curve_band = t * np.sqrt(curve_variance(curve, grid_x))
-        reading_band = t * np.sqrt(curve_variance(curve, grid_x) + reading_variance(curve, grid_x))
+        variance, freedom = prediction(curve, grid_x)
+        reading_band = student_quantile(0.5 + 0.5 * level, freedom) * np.sqrt(variance)
     ends = float(grid_x[0]), float(grid_x[-1])
     detection, quantification = (
         None if entry.limits is None or not ends[0] <= one <= ends[1] else one * entry.x_scale
