@@ -10,7 +10,14 @@ from __future__ import annotations
 import pytest
 from tests.published.reference import case
 
-from coulombook.species import equilibrium_potential_rhe_volt, equilibrium_potential_she_volt, load_species
+from coulombook.constants import FARADAY_CONSTANT
+from coulombook.species import (
+    electrons_of,
+    equilibrium_potential_rhe_volt,
+    equilibrium_potential_she_volt,
+    load_species,
+    oxygen_potential_rhe_volt,
+)
 
 DATA = case("equilibrium_potentials_crc")
 # state of the source -> species and state of the shipped table
@@ -71,3 +78,37 @@ def test_shipped_gibbs_energy_follows_from_enthalpy_and_entropy(name: str) -> No
     # printed to 0.1 kJ/mol; tables of H, S and G need not come from one measurement: 0.6 kJ/mol, as the
     # source allows
     assert found == pytest.approx(rebuilt, abs=0.6)
+
+
+def test_oxygen_and_water_stand_at_the_reversible_voltage() -> None:
+    # 237.1 kJ/mol (CRC) over 2 F, full precision; the textbook's figure is 1.229 V
+    assert oxygen_potential_rhe_volt() == pytest.approx(1.2286841677498808, rel=1e-12)
+    assert oxygen_potential_rhe_volt() == pytest.approx(1.229, abs=5e-4)
+
+
+HEATING = case("heating_values")
+BURNT = {
+    "H2": "hydrogen",
+    "CO": "carbon monoxide",
+    "HCOOH_l": "HCOOH",
+    "CH3OH_l": "methanol",
+    "CH4": "methane",
+    "C2H4": "ethylene",
+    "C2H6": "ethane",
+    "C2H5OH_l": "ethanol",
+    "CH3CHO_l": "acetaldehyde",
+    "CH3COOH_l": "CH3COOH",
+    "n_C3H7OH_l": "n-propanol",
+    "acetone_l": "acetone",
+    "ethylene_glycol_l": "ethylene glycol",
+}
+
+
+@pytest.mark.parametrize("name", BURNT)
+def test_heat_of_combustion_over_thermoneutral_voltage_gives_the_electrons(name: str) -> None:
+    # burning a product takes up the electrons that made it: HHV = n F E_tn (enthalpies of formation: CRC)
+    heat = HEATING.expected[f"HHV_{name}"].recomputed
+    voltage = HEATING.expected[f"Etn_{name}"].recomputed
+    assert heat is not None
+    assert voltage is not None
+    assert 1000.0 * heat / (FARADAY_CONSTANT * voltage) == pytest.approx(electrons_of(BURNT[name]), rel=1e-9)
