@@ -247,7 +247,8 @@ def read_injections(plan: Plan, x: Numbers, electrical: Electrical, liquids: Liq
     run = gas.injections.run
     inlet = molar_flow(plan.inlet, x, "inlet flow")
     outlet = _outlet(plan, x, inlet, mole_fraction, electrical, liquids)
-    density = molar_density(x["pressure"], x["temperature"])
+    # of the volume that a wet meter counts, in the headspace as in the meter, only a part is the gas of the outlet flow
+    density = molar_density(x["pressure"], x["temperature"]) * _dry(plan, x)
     # no outlet flow, no mixing: NaN passes silently to the verdicts, which tell of it; infinity would make noise
     dry = np.where(nominal(outlet) > 0.0, 0.0, np.nan)
     mixing = mixing_time_second(gather(x["headspace"], run), outlet + dry, gather(density, run))
@@ -269,15 +270,14 @@ def _outlet(
         case OutletFlow.INLET:
             return gather(inlet, run)
         case OutletFlow.MEASURED:
-            flow = molar_flow(plan.outlet, x, "outlet flow")
-            if plan.settings.meter_gas_wet:
-                dry = dry_share(saturated_water_vapour_pascal(x["temperature"]), x["pressure"])
-                # a standard flow is an amount already; only a volume holds the water
-                flow = select(plan.outlet.actual > 0, flow * dry, flow)
-            return gather(flow, run)
+            return gather(molar_flow(plan.outlet, x, "outlet flow") * _dry(plan, x), run)
         case OutletFlow.TRACER:
             tracer = molar_flow(plan.tracer, x, "tracer flow")
-            return outlet_from_tracer(gather(tracer, run), gather(mole_fraction, plan.gas.tracer_reading))
+            # an injection that is not used may lack the tracer's peak: no flow is known then
+            known = np.where(plan.gas.tracer_reading < 0, np.nan, 0.0)
+            return outlet_from_tracer(
+                gather(tracer, run), gather(mole_fraction, plan.gas.tracer_reading) + known
+            )
         case OutletFlow.BALANCE:
             liquid = plan.liquid
             rate = liquids.faradaic_efficiency * gather(electrical.mean_current_ampere, liquid.group_run)
@@ -289,6 +289,16 @@ def _outlet(
                 gather(x["carbonate uptake"], run),
                 linear_map(plan.gas.net_gas, mole_fraction),
             )
+
+
+def _dry(plan: Plan, x: Numbers) -> Number:
+    """Share of the metered outlet volume that is not water vapour, (R,): 1 unless a wet volume was measured."""
+    every = np.ones(len(plan.runs))
+    if plan.outlet_flow is not OutletFlow.MEASURED or not plan.settings.meter_gas_wet:
+        return every
+    dry = dry_share(saturated_water_vapour_pascal(x["temperature"]), x["pressure"])
+    # a standard flow is an amount already; only a volume holds the water
+    return select(plan.outlet.actual > 0, dry, every)
 
 
 def _injection_current(plan: Plan, x: Numbers, mixing: Number) -> Number:

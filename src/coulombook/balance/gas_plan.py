@@ -6,6 +6,7 @@ C curves, D check injections.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -130,7 +131,10 @@ def plan_gas(
         if name == tracer:
             tracer_reading[injection] = reading
     if tracer is not None:
-        _demand_tracer(day, injections, usable, tracer_reading, tracer, findings)
+        in_use = [key for key, use in zip(keys, used, strict=True) if use]
+        has_tracer = {injection for injection, name in in_use if name == tracer}
+        lacking = sorted({injection for injection, _ in in_use} - has_tracer)
+        _demand_tracer(day, injections, lacking, tracer, findings)
 
     run_of = injections.run[reading_injection]
     pooled = [int(reading) for reading in held if used[reading]]
@@ -216,12 +220,11 @@ def _note_several_channels(
 def _demand_tracer(
     day: Day,
     injections: Injections,
-    usable: NDArray[np.bool_],
-    tracer_reading: IntArray,
+    lacking: Sequence[int],
     tracer: str,
     findings: Findings,
 ) -> None:
-    for number in np.flatnonzero((tracer_reading < 0) & usable):
+    for number in lacking:
         findings.add(
             "missing-value",
             injections.origin[number],

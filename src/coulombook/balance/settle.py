@@ -66,7 +66,7 @@ def settle(plan: Plan) -> Settled:
         gather(readings.faradaic_efficiency, gas.pooled_reading), gas.pooled_group, len(gas.group_run)
     )
     scatter = _scatter(plan, inputs, injections)
-    detection = detect(plan, inputs, readings, liquids)
+    detection = detect(plan, inputs, readings, liquids, weights)
     mean = injections.mean + scatter
     outcome = close_books(plan, x, electrical, liquids, readings, mean, detection.counted)
     return Settled(
