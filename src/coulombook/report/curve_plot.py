@@ -350,7 +350,7 @@ def _save(drawn: Picture, file: str, ending: str, title: str, x_label: str, y_la
         upper.set_ylabel(y_label, parse_math=False)
         lower.set_ylabel("residual / %" if drawn.wide else "residual", parse_math=False)
         lower.set_xlabel(x_label, parse_math=False)
-        upper.legend(frameon=False, loc="upper left", fontsize=8)
+        upper.legend(loc="upper left", fontsize=8, edgecolor="none", framealpha=0.9)
         figure.align_ylabels([upper, lower])
         # without a date, the same curve gives the same file
         without_date = {".svg": {"Date": None}, ".pdf": {"CreationDate": None}, ".png": {}}[ending]
