@@ -151,3 +151,42 @@ def test_two_rates_give_a_slope_but_no_uncertainty() -> None:
 def test_single_rate_is_refused() -> None:
     with pytest.raises(ValueError, match="need as many different x; there are 1"):
         fit_capacitance(np.array([0.02, 0.02]), np.array([2e-5, 2.1e-5]))
+
+
+def _bent(exponent: float, scatter: float = 0.0) -> tuple[np.ndarray, np.ndarray]:
+    rate = np.array([0.01, 0.02, 0.04, 0.08, 0.16, 0.32])
+    noise = np.random.default_rng(3).standard_normal(rate.size)
+    return rate, 2e-4 * rate**exponent * (1.0 + scatter * noise)
+
+
+def test_power_law_is_chosen_by_evidence_and_its_exponent_recovered() -> None:
+    fit = fit_capacitance(*_bent(0.85))
+    assert fit.form == "power law"
+    assert fit.exponent == pytest.approx(0.85, rel=1e-12)
+    # i / v at the geometric mean of the rates, 0.01 x 2^2.5 V/s
+    assert fit.power_capacitance_farad == pytest.approx(2e-4 * (0.01 * 2**2.5) ** -0.15, rel=1e-6)
+    noisy = fit_capacitance(*_bent(0.85, 0.01))
+    assert noisy.form == "power law"
+    # 99.9 % of a t of 4 degrees of freedom
+    assert abs(noisy.exponent - 0.85) < 8.6 * noisy.u_exponent
+    # s of ln i is 0.01; the logs of the rates have the sum of squares 17.5 ln(2)^2
+    assert noisy.u_exponent == pytest.approx(0.01 / (17.5**0.5 * np.log(2.0)), rel=0.7)
+
+
+def test_line_stays_where_nothing_speaks_against_it() -> None:
+    rate, current = _bent(1.0, 0.01)
+    assert fit_capacitance(rate, current).form == "line"
+    exact = fit_capacitance(rate, 1e-3 * rate)
+    assert exact.form == "line"
+    assert exact.u_exponent == pytest.approx(0.0, abs=1e-9)
+    # an intercept gives an exponent below 1, but no power law
+    shifted = fit_capacitance(rate, 1e-3 * rate + 1e-5)
+    assert shifted.exponent < 0.99
+    assert shifted.form == "line"
+
+
+def test_three_rates_cannot_tell_the_laws_apart() -> None:
+    rate, current = _bent(0.8)
+    fit = fit_capacitance(rate[:3], current[:3])
+    assert fit.form == "line"
+    assert np.isnan(fit.evidence)
