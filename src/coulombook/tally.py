@@ -97,7 +97,7 @@ def tally(
     folder, places = _folders(path, calibrations)
     findings = Findings()
     source = open_day(folder, places, findings)
-    settled = settle_day(source, findings, progress)
+    settled = settle_day(source, findings, progress, for_draws=draws > 0)
     findings.raise_stops()
     assert settled is not None  # without faults there is an account
     assert source.day is not None
@@ -181,8 +181,13 @@ def _silent(what: str, done: int, of: int) -> None:
     pass
 
 
-def settle_day(source: DaySource, findings: Findings, progress: Progress | None = None) -> Settled | None:
-    """Everything between the tables and the book; None when faults stand in the way."""
+def settle_day(
+    source: DaySource, findings: Findings, progress: Progress | None = None, *, for_draws: bool = False
+) -> Settled | None:
+    """Everything between the tables and the book; None when faults stand in the way.
+
+    ``for_draws``: the settled day will be drawn (`draw_day`).
+    """
     progress = progress or _silent
     day = source.day
     if day is None:
@@ -198,7 +203,7 @@ def settle_day(source: DaySource, findings: Findings, progress: Progress | None 
     )
     if findings.stops:
         return None
-    again = recentred_requests(plan, requests)
+    again = recentred_requests(plan, requests, for_draws)
     if again:
         figures |= _read_traces(source, day, again, findings, progress)
         plan = plan.with_figures([figures[number] for number in range(len(day.runs))])

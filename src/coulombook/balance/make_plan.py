@@ -16,8 +16,9 @@ from coulombook.balance.plan import Plan, make_inputs, plan_flow, plan_products
 from coulombook.balance.readings import Day, FloatArray, FlowKind, Run
 from coulombook.balance.surface_plan import plan_surface
 from coulombook.balance.trace_figures import TraceFigures, TraceRequest
+from coulombook.cell.headspace import HALF_RANGE
 from coulombook.findings import Findings
-from coulombook.uncertainty.linearised import IntArray
+from coulombook.uncertainty.linearised import IntArray, nominal, standard_uncertainty
 
 # without a flow to guess from, any mixing time will do to begin with: the second look is centred on the true one
 _ANY_MIXING_TIME = 60.0
@@ -99,15 +100,20 @@ def _report_left_out(day: Day, injections: Injections, usable: NDArray[np.bool_]
             )
 
 
-def recentred_requests(plan: Plan, requests: Sequence[TraceRequest]) -> dict[int, TraceRequest]:
+def recentred_requests(
+    plan: Plan, requests: Sequence[TraceRequest], for_draws: bool = False
+) -> dict[int, TraceRequest]:
     """Runs whose headspace mixes more slowly or quickly than guessed, with better guesses.
+
+    ``for_draws``: the time constants will be drawn, and the currents are wanted as far as their uncertainties reach.
 
     The outlet flow, and with it the time constant, may depend on peak areas and on liquid products; it never depends on
     the currents of the injections, so that one second look settles it.
     """
     if not plan.headspace.any():
         return {}
-    x = make_inputs(plan).nominal
+    inputs = make_inputs(plan)
+    x = inputs.numbers if for_draws else inputs.nominal
     equal = SignalWeights(
         _equal(plan.liquid.standard_vial, len(plan.liquid.vials)),
         _equal(plan.liquid.signal_analyte, len(plan.liquid.analyte_vial)),
@@ -115,7 +121,8 @@ def recentred_requests(plan: Plan, requests: Sequence[TraceRequest]) -> dict[int
     )
     electrical = read_electrical(plan, x)
     readings = read_injections(plan, x, electrical, read_liquids(plan, x, equal))
-    tau = np.asarray(readings.mixing_time_second)
+    tau = nominal(readings.mixing_time_second)
+    reach = _reach(standard_uncertainty(readings.mixing_time_second) / tau)
     again = {}
     for number in np.flatnonzero(plan.headspace).tolist():
         found = tau[plan.gas.injections.of_run(number)]
@@ -126,14 +133,29 @@ def recentred_requests(plan: Plan, requests: Sequence[TraceRequest]) -> dict[int
         middle = np.full(found.shape, np.exp(np.log(found).mean()))
         # one centre for the run's injections saves passes over its log, as long as it stays near each of them
         better = middle if _near(found, middle) else found
-        if not _near(better, guess):
-            again[number] = replace(requests[number], mixing_time_second=better)
+        far = float(np.max(reach[plan.gas.injections.of_run(number)]))
+        if not _near(better, guess) or far > HALF_RANGE:
+            again[number] = replace(
+                requests[number], mixing_time_second=better, mixing_reach=max(far, HALF_RANGE)
+            )
     return again
 
 
 # the interpolation of the mixed current reaches a factor 1.5 (0.405 in ln) either side of its centre; staying near it
 # leaves room for the draws of a Monte Carlo
 _WELL_INSIDE = 0.1
+
+# of ln tau: farther no series goes
+_FARTHEST = 3.0
+
+
+def _reach(relative: FloatArray) -> FloatArray:
+    """How far draws of time constants of a relative standard uncertainty stray from them, in ln tau.
+
+    Beyond seven standard deviations; a normal distribution reaches farther down than up on this scale.
+    """
+    reach = _WELL_INSIDE + 7.0 * relative * (1.0 + 3.0 * relative)
+    return np.where(np.isfinite(reach), np.minimum(reach, _FARTHEST), HALF_RANGE)
 
 
 def _near(tau_second: FloatArray, centre_second: FloatArray) -> bool:

@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from coulombook.balance.readings import FloatArray, Trace
 from coulombook.cell.charge import CumulativeTrace, interpolate, sample_weight, window
-from coulombook.cell.headspace import MixedCurrent
+from coulombook.cell.headspace import HALF_RANGE, MixedCurrent
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -25,6 +25,7 @@ class TraceRequest:
     mixing_time_second: (
         FloatArray | None
     )  # (k,) guesses of the headspace's time constant; None without headspace
+    mixing_reach: float = HALF_RANGE  # of ln tau, either side of the guesses
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -93,7 +94,7 @@ def figures_of(trace: Trace, request: TraceRequest) -> TraceFigures:
             mean = seen[usable]
             slope[usable] = (moves_high * (last - mean) - moves_low * (first - mean)) / (b - a)
     elif len(moment):
-        mixed = _mixed(trace, start, held, request.mixing_time_second)
+        mixed = _mixed(trace, start, held, request.mixing_time_second, request.mixing_reach)
         seen[usable], weight[usable], slope[usable] = now[usable], 0.0, 0.0
     until = np.clip(request.sampling_time_second, None, stop)
     sampled = np.maximum(until, start)
@@ -116,14 +117,14 @@ def figures_of(trace: Trace, request: TraceRequest) -> TraceFigures:
     )
 
 
-def _mixed(trace: Trace, start: float, at: FloatArray, centre: FloatArray) -> MixedCurrent:
+def _mixed(trace: Trace, start: float, at: FloatArray, centre: FloatArray, reach: float) -> MixedCurrent:
     """Current that a headspace remembers at each injection; one pass over the log per distinct guess."""
     time, current = trace.time_second, trace.current_ampere
     if np.ptp(centre) == 0:
-        return MixedCurrent.of_trace(time, current, start, at, float(centre[0]))
+        return MixedCurrent.of_trace(time, current, start, at, float(centre[0]), reach)
     return MixedCurrent.join(
         [
-            MixedCurrent.of_trace(time, current, start, at[k : k + 1], float(tau))
+            MixedCurrent.of_trace(time, current, start, at[k : k + 1], float(tau), reach)
             for k, tau in enumerate(centre)
         ]
     )

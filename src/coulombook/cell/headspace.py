@@ -42,8 +42,9 @@ _FORGOTTEN = 45.0
 _BLOCK = 0.1  # length of a block, and of the longest segment gathered in one, over the shortest tau
 _POWERS = 8  # of 1/tau kept: (0.05)^8 / 8! = 1e-15
 _SINH = (1.0, 1.0 / 24.0, 1.0 / 1920.0, 1.0 / 322560.0)  # sinh(r/2)/(r/2) in powers of r^2
-_HALF_RANGE = float(np.log(1.5))  # of ln tau, either side of the centre
-_NODES = (12, 20)  # the series falls by 7 or more a term, for tau acts through exp(-age/tau) alone
+HALF_RANGE = float(np.log(1.5))  # of ln tau, either side of the centre, unless more is asked for
+# the series falls by 7 or more a term for the usual range, less for a wider: tau acts through exp(-age/tau) alone
+_NODES = (12, 20, 32, 48, 72)
 _TOLERANCE = 1.0e-9  # of the last Chebyshev coefficients, relative to the first
 
 
@@ -54,7 +55,7 @@ def filled_share(elapsed_second: Number, tau_second: Number) -> Number:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class _Stretch:
-    """The trace between two stops, ready for any tau from ``shortest_second`` to 2.25 times that."""
+    """The trace between two stops, ready for any tau from ``shortest_second`` to ``longest_second``."""
 
     span_second: float
     first_ampere: float  # reduction current at the start of the stretch
@@ -67,10 +68,15 @@ class _Stretch:
     long_new_second: FloatArray  # (n_long,) age of their end
 
     @classmethod
-    def of(cls, time_second: FloatArray, reduction_ampere: FloatArray, shortest_second: float) -> _Stretch:
+    def of(
+        cls,
+        time_second: FloatArray,
+        reduction_ampere: FloatArray,
+        shortest_second: float,
+        longest_second: float,
+    ) -> _Stretch:
         end = time_second[-1]
-        # the factor 1.5^2 is the longest tau over the shortest
-        kept = int(np.searchsorted(time_second, end - 2.25 * _FORGOTTEN * shortest_second, side="right")) - 1
+        kept = int(np.searchsorted(time_second, end - _FORGOTTEN * longest_second, side="right")) - 1
         times, reduction = time_second[max(kept, 0) :], reduction_ampere[max(kept, 0) :]
         rise, old, new = np.diff(reduction), end - times[:-1], end - times[1:]
         step = np.diff(times)
@@ -144,6 +150,7 @@ def _stretches(
     start_second: float,
     at_second: FloatArray,
     shortest_second: float,
+    longest_second: float,
 ) -> list[_Stretch | None]:
     """The stretches from one stop to the next; None for one without length."""
     stops = np.concatenate(([start_second], at_second))
@@ -158,7 +165,7 @@ def _stretches(
         inside = slice(after[k], before[k + 1])
         times = np.concatenate((stops[k : k + 1], time_second[inside], stops[k + 1 : k + 2]))
         reduction = np.concatenate((ends[k : k + 1], -current_ampere[inside], ends[k + 1 : k + 2]))
-        result.append(_Stretch.of(times, reduction, shortest_second))
+        result.append(_Stretch.of(times, reduction, shortest_second, longest_second))
     return result
 
 
@@ -247,31 +254,37 @@ def mixed_current_with_slope(
     if not tau_second > 0.0:
         raise ValueError(f"the mixing time is {tau_second:g} s; it must be above zero")
     at, place = _in_order(start_second, at_second)
-    value, slope = _along(_stretches(time_second, current_ampere, start_second, at, tau_second), tau_second)
+    stretches = _stretches(time_second, current_ampere, start_second, at, tau_second, tau_second)
+    value, slope = _along(stretches, tau_second)
     return value[place], slope[place]
 
 
 class MixedCurrent:
     """The current of each injection as a function of tau, near a centre.
 
-    A Chebyshev series in ln tau over a factor 1.5 either side of the centre, so that draws of tau and
-    derivatives cost a few operations and not a pass over the trace. Error below 1e-8 of the value (tested).
+    A Chebyshev series in ln tau over a factor (1.5, unless more is asked for) either side of the centre, so that draws
+    of tau and derivatives cost a few operations and not a pass over the trace. Error below 1e-8 of the value (tested).
 
     Parameters
     ----------
     centre_ln_tau : (n_injections,) float array
         Centre of each series. [ln s]
     coefficients_ampere : (n_terms, n_injections) float array
-        Chebyshev coefficients in (ln tau - centre)/ln 1.5. [A]
+        Chebyshev coefficients in (ln tau - centre)/half_range. [A]
+    half_range : (n_injections,) float array
+        How far each series reaches, in ln tau, either side of its centre. [1]
     """
 
-    __slots__ = ("centre_ln_tau", "coefficients_ampere", "slope_coefficients_ampere")
+    __slots__ = ("centre_ln_tau", "coefficients_ampere", "half_range", "slope_coefficients_ampere")
 
-    def __init__(self, centre_ln_tau: FloatArray, coefficients_ampere: FloatArray) -> None:
+    def __init__(
+        self, centre_ln_tau: FloatArray, coefficients_ampere: FloatArray, half_range: FloatArray
+    ) -> None:
         self.centre_ln_tau = centre_ln_tau
         self.coefficients_ampere = coefficients_ampere
+        self.half_range = half_range
         self.slope_coefficients_ampere = (
-            np.asarray(chebyshev.chebder(coefficients_ampere, axis=0)) / _HALF_RANGE
+            np.asarray(chebyshev.chebder(coefficients_ampere, axis=0)) / half_range
         )
 
     @classmethod
@@ -282,16 +295,18 @@ class MixedCurrent:
         start_second: float,
         at_second: ArrayLike,
         centre_tau_second: float,
+        half_range: float = HALF_RANGE,
     ) -> MixedCurrent:
         """The series for the injections of one run; parameters and errors as in `mixed_current_ampere`."""
         if not centre_tau_second > 0.0:
             raise ValueError(f"the mixing time is {centre_tau_second:g} s; it must be above zero")
         at, place = _in_order(start_second, at_second)
-        shortest = centre_tau_second * float(np.exp(-_HALF_RANGE))
-        stretches = _stretches(time_second, current_ampere, start_second, at, shortest)
+        factor = float(np.exp(half_range))
+        shortest, longest = centre_tau_second / factor, centre_tau_second * factor
+        stretches = _stretches(time_second, current_ampere, start_second, at, shortest, longest)
         for nodes in _NODES:
             angle = (np.arange(nodes) + 0.5) * (np.pi / nodes)
-            taus = centre_tau_second * np.exp(_HALF_RANGE * np.cos(angle))
+            taus = centre_tau_second * np.exp(half_range * np.cos(angle))
             values = np.array([_along(stretches, float(tau))[0] for tau in taus])
             cosines = np.cos(np.outer(np.arange(nodes), angle))
             coefficients = 2.0 / nodes * (cosines @ values)
@@ -299,19 +314,25 @@ class MixedCurrent:
             size = np.abs(coefficients).max(axis=0)
             if (np.abs(coefficients[-2:]) <= _TOLERANCE * size).all():
                 break
-        return cls(np.full(at.size, np.log(centre_tau_second)), coefficients[:, place])
+        return cls(
+            np.full(at.size, np.log(centre_tau_second)), coefficients[:, place], np.full(at.size, half_range)
+        )
 
     @classmethod
     def join(cls, parts: Sequence[MixedCurrent]) -> MixedCurrent:
         """One object for the injections of several runs, in order."""
         if not parts:
-            return cls(np.empty(0), np.empty((1, 0)))
+            return cls(np.empty(0), np.empty((1, 0)), np.empty(0))
         terms = max(part.coefficients_ampere.shape[0] for part in parts)
         padded = [
             np.pad(part.coefficients_ampere, ((0, terms - part.coefficients_ampere.shape[0]), (0, 0)))
             for part in parts
         ]
-        return cls(np.concatenate([part.centre_ln_tau for part in parts]), np.concatenate(padded, axis=1))
+        return cls(
+            np.concatenate([part.centre_ln_tau for part in parts]),
+            np.concatenate(padded, axis=1),
+            np.concatenate([part.half_range for part in parts]),
+        )
 
     def __len__(self) -> int:
         return len(self.centre_ln_tau)
@@ -321,7 +342,7 @@ class MixedCurrent:
 
         ``tau_second`` has the shape (..., n_injections). Meaningless where `covers` says no; the caller asks.
         """
-        x = (np.log(tau_second) - self.centre_ln_tau) / _HALF_RANGE
+        x = (np.log(tau_second) - self.centre_ln_tau) / self.half_range
         value = chebyshev.chebval(x, self.coefficients_ampere, tensor=False)
         slope = chebyshev.chebval(x, self.slope_coefficients_ampere, tensor=False) / tau_second
         return np.asarray(value, dtype=float), np.asarray(slope, dtype=float)
@@ -331,5 +352,5 @@ class MixedCurrent:
         with np.errstate(invalid="ignore", divide="ignore"):
             distance = np.abs(np.log(tau_second) - self.centre_ln_tau)
         # a hair beyond the edge, so that the edge itself counts whatever the rounding of the logarithm
-        result: NDArray[np.bool_] = distance <= _HALF_RANGE * (1.0 + 1e-12)
+        result: NDArray[np.bool_] = distance <= self.half_range * (1.0 + 1e-12)
         return result

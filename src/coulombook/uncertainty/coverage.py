@@ -87,8 +87,13 @@ def propagation_validated(
 
 
 def symmetric_interval(sorted_draws: FloatArray, level: float) -> tuple[FloatArray, FloatArray]:
-    """Quantiles (1 - level)/2 and (1 + level)/2 of draws (n_outputs, n_draws) that are sorted already."""
+    """Quantiles (1 - level)/2 and (1 + level)/2 of draws (n_outputs, n_draws) that are sorted already; NaN as above."""
     n = sorted_draws.shape[-1]
     tail = (1.0 - level) / 2.0
     low = min(max(round(tail * n), 0), n - 1)
-    return sorted_draws[:, low], sorted_draws[:, n - 1 - low]
+    # NaN sorts to the end, so that the last draw tells
+    unknown = np.isnan(sorted_draws[:, -1])
+    return (
+        np.where(unknown, np.nan, sorted_draws[:, low]),
+        np.where(unknown, np.nan, sorted_draws[:, n - 1 - low]),
+    )

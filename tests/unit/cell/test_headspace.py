@@ -151,6 +151,20 @@ def test_series_holds_1e_8_over_its_whole_range(tau: float, shape: str) -> None:
     assert np.abs(slope * taus[:, None] - np.array([one[1] for one in exact]) <= 1e-7 * scale).all()
 
 
+@pytest.mark.parametrize("half_range", [0.8, 1.6, 3.0])
+def test_series_reaches_as_far_as_is_asked_for(half_range: float) -> None:
+    time = np.arange(0.0, 3600.0, 0.5)
+    current = -0.1 * (np.floor(time / 30.0) % 2)
+    at = [20.0, 1210.0, 3500.0]
+    series = MixedCurrent.of_trace(time, current, 0.0, at, 100.0, half_range)
+    taus = 100.0 * np.exp(np.linspace(-1.0, 1.0, 31) * half_range)
+    value, _ = series.value_and_slope(np.broadcast_to(taus[:, None], (31, 3)))
+    exact = [mixed_current_ampere(time, current, 0.0, at, float(one)) for one in taus]
+    # the first coefficient is 0.03 or so, and the least value e^-20 of it or less
+    np.testing.assert_allclose(value, exact, rtol=1e-8, atol=1e-9)
+    assert series.covers(taus[:, None] * np.ones(3)).all()
+
+
 def test_series_says_where_it_ends() -> None:
     time, current = _trace()
     series = MixedCurrent.of_trace(time, current, 0.0, [100.0, 500.0], 90.0)
