@@ -44,6 +44,7 @@ class Layout:
     separator: str
     decimal: str
     head_row: int  # as the spreadsheet counts
+    above: int  # lines above the heads that are not blank
     quotes: bool  # whether cells of the body may stand in quotes
     heads: tuple[str, ...]
     columns: Mapping[str, int]  # quantity -> place of its column
@@ -199,9 +200,11 @@ def _layout(
     careful = quotes and any('"' in line for line in lines[:place])
     width = max(map(len, [heads, *cells]))
     lone_returns = any(line.endswith("\r") for line in lines[: place + 2])
+    # a tab is no blank where it parts the cells
+    above = sum(bool(line.strip("\r\n \t".replace(separator, ""))) for line in lines[:place])
     return Layout(
-        encoding, separator, decimal, place + 1, quotes, tuple(heads), columns, width, careful, lone_returns
-    )
+        encoding, separator, decimal, place + 1, above, quotes, tuple(heads), columns, width, careful, lone_returns
+    )  # fmt: skip
 
 
 def _first_lines(data: bytes, *, cut: bool) -> tuple[list[str], str]:
@@ -454,15 +457,18 @@ def _with_pandas(path: Path, layout: Layout) -> dict[str, FloatArray]:
     places = sorted(layout.columns.values())
     # picking columns costs as much as reading one; a file of nothing else needs no picking
     pick = None if places == list(range(layout.width)) else places
+    # skipping rows costs a look-up at every row below, a quarter of the time; heads do not, but pandas takes the first
+    # column for an index unless told otherwise, and heads that are fewer than the cells for a mistake
+    start: dict[str, Any] = {"header": layout.above, "index_col": False}
+    if len(layout.heads) < layout.width:
+        start = {"header": None, "skiprows": layout.head_row}
     # a path with UTF-8 is three times as fast as any other way; numbers are ASCII, whatever the free text is
     frame = pd.read_csv(
         path,
         sep=layout.separator,
         decimal=layout.decimal,
-        header=None,
-        names=None,
+        **start,
         usecols=pick,
-        skiprows=layout.head_row,
         dtype=np.float64,
         engine="c",
         na_filter=False,
@@ -471,7 +477,7 @@ def _with_pandas(path: Path, layout: Layout) -> dict[str, FloatArray]:
         encoding_errors="replace",
     )
     return {
-        quantity: np.array(frame[place].to_numpy(), dtype=np.float64)
+        quantity: np.array(frame.iloc[:, places.index(place)].to_numpy(), dtype=np.float64)
         for quantity, place in layout.columns.items()
     }
 

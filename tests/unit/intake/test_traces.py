@@ -82,6 +82,27 @@ def test_every_dialect_gives_the_same_trace(
     _assert_rows(trace)
 
 
+@pytest.mark.parametrize("separator", [",", ";", "\t"])
+@pytest.mark.parametrize(
+    "above",
+    [
+        "\n\n",
+        "  \n",
+        "\t\n",
+        "\t \t\n",
+        " ; \n",
+        ",,,,,,\n",
+        "free, text; of\tmany, many, cells\n\n \nmore\n",
+    ],
+)
+def test_lines_above_the_heads_are_passed_over_be_they_blank_or_not(
+    read: Read, separator: str, above: str
+) -> None:
+    trace, findings = read(above + _text(separator))
+    assert findings == []
+    _assert_rows(trace)
+
+
 def test_arrays_are_read_only(read: Read) -> None:
     trace, _ = read(_text())
     assert trace is not None
