@@ -24,4 +24,5 @@ def refuse_table(
     """Break one table of the good day and hold that the command says so."""
     change, faults = case
     day = broken_day({f"{table}.csv": change}, workbook=workbook)
-    command.refuses(day, [in_workbook(one) for one in faults] if workbook else faults)
+    # `check` reads a sheet as `tally` does: to hold it once for the file is enough, and halves the time
+    command.refuses(day, [in_workbook(one) for one in faults] if workbook else faults, check=not workbook)
