@@ -30,14 +30,18 @@ def reading_variance(curve: Curve, x: ArrayLike) -> FloatArray:
 
     It is the residual variance over the weight a standard would have at x: v0 = s^2 for equal weights,
     v1 = s^2 mean(1/x) and v2 = s^2 mean(1/x^2) for those of the same name; with "replicates" and "both" the variance
-    function of the replicates. Below the lowest standard v1 x and v2 x^2 are held at their value there: nothing was
-    measured that would show a scatter falling to zero.
+    function of the replicates. Below the lowest standard it is held at its value there: nothing was measured that would
+    show a scatter falling to zero.
     """
-    x = np.asarray(x, dtype=float)
+    held = _held(curve, x)
     v0, v1, v2, c = curve.scatter
-    held = np.maximum(x, curve.lowest)
-    result: FloatArray = v0 + v1 * held + v2 * held**2 + c * np.square(curve_response(curve, x))
+    result: FloatArray = v0 + v1 * held + v2 * held**2 + c * np.square(curve_response(curve, held))
     return result
+
+
+def _held(curve: Curve, x: ArrayLike) -> FloatArray:
+    held: FloatArray = np.maximum(np.asarray(x, dtype=float), curve.lowest)
+    return held
 
 
 def curve_variance(curve: Curve, x: ArrayLike, covariance: FloatArray | None = None) -> FloatArray:
@@ -58,10 +62,10 @@ def reading_freedom(curve: Curve, x: ArrayLike) -> FloatArray:
     Those of the residual variance where one number gives all. Where replicates gave a function v0 + c y^2 they are
     2 v^2/var(v) at the response concerned: fewer, at the ends, than all replicates together have.
     """
-    x = np.asarray(x, dtype=float)
+    held = _held(curve, x)
     if curve.scatter_function is None:
-        return np.full(x.shape, curve.scatter_freedom)
-    return curve.scatter_function.freedom(curve_response(curve, x))
+        return np.full(held.shape, curve.scatter_freedom)
+    return curve.scatter_function.freedom(curve_response(curve, held))
 
 
 def prediction(

@@ -157,8 +157,10 @@ def _variance_function(square: FloatArray, variance: FloatArray, freedom: FloatA
             # a purely proportional part would give a level at zero no variance at all
             if share.min() > 0.0:
                 candidates.append((0.0, vq / sqq))
-        losses = [float(weight @ np.square(variance - c0 - c1 * share)) for c0, c1 in candidates]
-        c0, c1 = candidates[int(np.argmin(losses))]
+        c0, c1 = candidates[0]
+        if len(candidates) > 1:
+            losses = [float(weight @ np.square(variance - one - other * share)) for one, other in candidates]
+            c0, c1 = candidates[int(np.argmin(losses))]
         following = c0 + c1 * share
         settled = (np.abs(following - fitted) <= _SETTLED * fitted).all()
         fitted = following
