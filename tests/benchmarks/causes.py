@@ -54,10 +54,12 @@ def noise(settled: Settled, days: int, seed: int) -> np.ndarray:
     totals = []
     for _ in range(0, days, 50):
         normals = generator.standard_normal((min(50, days), len(inputs.sources)))
-        scatter = settled.scatter
-        moved = (scatter.jacobian @ normals.T).T if isinstance(scatter, Linearised) else 0.0
+        moved = [
+            (scatter.jacobian @ normals.T).T if isinstance(scatter, Linearised) else 0.0
+            for scatter in (settled.scatter, settled.liquid_scatter)
+        ]
         drawn = evaluate(
-            settled.plan, inputs.draw(normals), settled.weights, settled.detection.counted, moved
+            settled.plan, inputs.draw(normals), settled.weights, settled.detection.counted, *moved
         )
         totals.append(nominal(drawn.total) - nominal(settled.outcome.total))
     return np.concatenate(totals)[:days]

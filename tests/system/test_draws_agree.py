@@ -30,14 +30,16 @@ def settled(request: pytest.FixtureRequest) -> Settled:
 def test_propagated_uncertainty_agrees_with_draws(settled: Settled) -> None:
     plan, inputs = settled.plan, settled.inputs
     normals = np.random.default_rng(20430518).standard_normal((DRAWS, len(inputs.sources)))
-    scatter = settled.scatter
+    scatter, liquid_scatter = settled.scatter, settled.liquid_scatter
     assert isinstance(scatter, Linearised)
+    assert isinstance(liquid_scatter, Linearised)
     drawn = evaluate(
         plan,
         inputs.draw(normals),
         settled.weights,
         settled.detection.counted,
         (scatter.jacobian @ normals.T).T,
+        (liquid_scatter.jacobian @ normals.T).T,
     )
     for name in ("faradaic_efficiency", "total", "c2_plus", "ratio"):
         stated = getattr(settled.outcome, name)

@@ -226,3 +226,49 @@ def test_current_logged_too_large_has_a_positive_error(tally: Tally) -> None:
     assert best["cause"] == "current-offset"
     # of a mean of 37.5 mA, to first order of an offset that is a twentieth of the least current
     assert best["estimate / %"] == pytest.approx(50 / 37.5, rel=0.1)
+
+
+# --- scatter ---------------------------------------------------------------------------------------------------------
+
+
+def two_vials(*second: str) -> dict[str, str | None]:
+    exact = "".join(declare(quantity, "0 %") for quantity in ("integral", "I"))
+    head = FILES["vials.csv"]
+    assert head is not None
+    rows = (
+        "v1,DMSO,CH3,6,600\nv1,formate,CH,1,250\nv1,ethanol,CH3,3,90\nv2,DMSO,CH3,6,600\n"
+        + "\n".join(second)
+        + "\n"
+    )
+    return {
+        **NO_GAS,
+        "day.toml": settings(more=exact),
+        "vials.csv": head + "v2,a1,catholyte,30,0.5,DMSO,0.2\n",
+        "liquid.csv": "vial,analyte,signal,protons,integral\n" + rows,
+    }
+
+
+def test_replicate_vials_that_differ_tell_of_their_scatter(tally: Tally) -> None:
+    book = tally(two_vials("v2,formate,CH,1,350", "v2,ethanol,CH3,3,90"))
+    row = book.ledger.set_index("product").loc["formate"]
+    # 250 and 350 per 100 of the standard: 36 umol on average, and s/sqrt(2) is half the difference, 6 umol
+    percent = 2 * FARADAY * 1e-6 / 36.0 * 100
+    assert row["FE / %"] == pytest.approx(36 * percent, rel=1e-9)
+    assert row["u(FE) / %"] == pytest.approx(6 * percent, rel=1e-9)
+    assert book.ledger.set_index("product").loc["ethanol", "u(FE) / %"] == pytest.approx(0.0, abs=1e-12)
+    sources = book.tables["budget"].frame().query("output == 'formate'")["source"].tolist()
+    assert sources == ["vial scatter"]
+
+
+def test_products_that_vials_share_scatter_together(tally: Tally) -> None:
+    # both a sixth above and below their mean: as of one aliquot that was not what it was meant to be
+    book = tally(two_vials("v2,formate,CH,1,350", "v2,ethanol,CH3,3,126"))
+    u = book.ledger["u(FE) / %"]
+    assert book.summary["u(total FE) / %"].iloc[0] == pytest.approx(u.sum(), rel=1e-9)
+
+
+def test_scatter_of_vials_is_drawn_as_it_is_propagated(tally: Tally) -> None:
+    book = tally(two_vials("v2,formate,CH,1,350", "v2,ethanol,CH3,3,90"), draws=20_000)
+    row = book.tables["intervals"].frame().set_index("output").loc["formate"]
+    # 20 000 draws know a standard deviation to 0.5 %
+    assert row["u(draws) / %"] == pytest.approx(row["u / %"], rel=0.02)

@@ -97,7 +97,8 @@ def _draw_group(
         for name in settled.inputs.nominal
     }
     scatter = _Rows(settled.scatter, rows["group"], False)
-    columns = np.unique(np.concatenate([one.columns for one in (*inputs.values(), scatter)]))
+    liquid_scatter = _Rows(settled.liquid_scatter, rows["liquid group"], False)
+    columns = np.unique(np.concatenate([one.columns for one in (*inputs.values(), scatter, liquid_scatter)]))
     streams = [np.random.Generator(np.random.SFC64([seed, int(column)])) for column in columns]
     weights = SignalWeights(
         _renormalised(settled.weights.standard[rows["standard integral"]], plan.liquid.standard_vial),
@@ -119,7 +120,8 @@ def _draw_group(
         for stream, row in zip(streams, part, strict=True):
             stream.standard_normal(out=row)
         x = {name: one.draw(part, columns) for name, one in inputs.items()}
-        outcome = evaluate(plan, x, weights, counted, scatter.draw(part, columns))
+        scattered = scatter.draw(part, columns), liquid_scatter.draw(part, columns)
+        outcome = evaluate(plan, x, weights, counted, *scattered)
         _keep(drawn, held, outcome)
     return drawn
 
@@ -227,6 +229,10 @@ def _labels(plan: Plan) -> dict[str, list[Hashable]]:
         "capacitance scatter": list[Hashable](surface.electrodes),
         "group": [
             (run[number], one.name) for number, one in zip(gas.group_run, gas.group_species, strict=True)
+        ],
+        "liquid group": [
+            (run[number], one.name)
+            for number, one in zip(liquid.group_run, liquid.group_species, strict=True)
         ],
         "product": [
             (run[number], name) for number, name in zip(plan.products.run, plan.products.species, strict=True)

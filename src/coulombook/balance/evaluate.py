@@ -354,20 +354,21 @@ def close_books(
     plan: Plan,
     x: Numbers,
     electrical: Electrical,
-    liquids: Liquids,
     readings: GasReadings,
     gas_efficiency: Number,
+    liquid_efficiency: Number,
     counted: FloatArray,
 ) -> Outcome:
     """Sum up.
 
-    ``gas_efficiency`` (GP,) is the mean over the used injections, scatter of the injections included; ``counted``
-    (Q,) is 1 for products that enter the totals and 0 for those below detection.
+    ``gas_efficiency`` (GP,) is the mean over the used injections, scatter of the injections included, and
+    ``liquid_efficiency`` (LP,) that of the liquid products, scatter of replicate vials included; ``counted`` (Q,) is 1
+    for products that enter the totals and 0 for those below detection.
     """
     products, surface = plan.products, plan.surface
     n_runs, n_products = len(plan.runs), len(products.run)
     efficiency = linear_map(products.from_gas, gas_efficiency) + linear_map(
-        products.from_liquid, liquids.faradaic_efficiency
+        products.from_liquid, liquid_efficiency
     )
     per_charge = 1.0 / (products.electrons * FARADAY_CONSTANT)
     amount = efficiency * gather(electrical.charge_coulomb, products.run) * per_charge
@@ -439,16 +440,22 @@ def mean_over_injections(plan: Plan, readings: GasReadings) -> Number:
 
 
 def evaluate(
-    plan: Plan, x: Numbers, weights: SignalWeights, counted: FloatArray, scatter: Number | float = 0.0
+    plan: Plan,
+    x: Numbers,
+    weights: SignalWeights,
+    counted: FloatArray,
+    scatter: Number | float = 0.0,
+    liquid_scatter: Number | float = 0.0,
 ) -> Outcome:
     """The whole measurement function.
 
     ``counted`` (Q,) tells which products enter the totals: a decision of the day, taken once at the nominal point.
-    ``scatter`` (GP,) is the error of each run's mean over injections that the readings' own errors do not explain;
-    zero at the nominal point.
+    ``scatter`` (GP,) is the error of each run's mean over injections that the readings' own errors do not explain, and
+    ``liquid_scatter`` (LP,) that of the means over replicate vials; zero at the nominal point.
     """
     electrical = read_electrical(plan, x)
     liquids = read_liquids(plan, x, weights)
     readings = read_injections(plan, x, electrical, liquids)
     gas_efficiency = mean_over_injections(plan, readings) + scatter
-    return close_books(plan, x, electrical, liquids, readings, gas_efficiency, counted)
+    liquid_efficiency = liquids.faradaic_efficiency + liquid_scatter
+    return close_books(plan, x, electrical, readings, gas_efficiency, liquid_efficiency, counted)

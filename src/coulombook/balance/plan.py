@@ -37,6 +37,7 @@ if TYPE_CHECKING:
     from scipy.sparse import csr_array
 
 INJECTION_SCATTER = Source("injection scatter", RUN)
+VIAL_SCATTER = Source("vial scatter", RUN)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -167,7 +168,7 @@ def make_inputs(plan: Plan) -> Inputs:
         blocks,
         [*declarations, *assumed_declarations(settings)],
         [*_curve_errors(plan), *_capacitance_errors(plan)],
-        (INJECTION_SCATTER, len(plan.gas.injections.label)),
+        ((INJECTION_SCATTER, len(plan.gas.injections.label)), (VIAL_SCATTER, len(plan.liquid.vials))),
     )
 
 

@@ -14,6 +14,7 @@ from coulombook.balance.evaluate import (
     Outcome,
     PerProton,
     SignalWeights,
+    charge_to_sampling,
     close_books,
     read_electrical,
     read_injections,
@@ -24,12 +25,14 @@ from coulombook.balance.evaluate import (
 )
 from coulombook.balance.plan import Plan, make_inputs
 from coulombook.balance.readings import FloatArray
+from coulombook.constants import FARADAY_CONSTANT
 from coulombook.uncertainty.errors import Inputs
 from coulombook.uncertainty.linearised import (
     IntArray,
     Linearised,
     Number,
     gather,
+    linear_map,
     nominal,
     sparse_map,
     standard_uncertainty,
@@ -49,6 +52,7 @@ class Settled:
     readings: GasReadings
     injections: Pooled  # used readings of each gas product of a run
     scatter: Number  # (GP,) error of the mean over injections that the readings' own errors do not explain
+    liquid_scatter: Number  # (LP,) likewise of the means over replicate vials
     detection: Detection
     outcome: Outcome
 
@@ -66,11 +70,23 @@ def settle(plan: Plan) -> Settled:
         gather(readings.faradaic_efficiency, gas.pooled_reading), gas.pooled_group, len(gas.group_run)
     )
     scatter = _scatter(plan, inputs, injections)
+    liquid_scatter = _liquid_scatter(plan, inputs, liquids)
     detection = detect(plan, inputs, readings, liquids, weights)
     mean = injections.mean + scatter
-    outcome = close_books(plan, x, electrical, liquids, readings, mean, detection.counted)
+    liquid_efficiency = liquids.faradaic_efficiency + liquid_scatter
+    outcome = close_books(plan, x, electrical, readings, mean, liquid_efficiency, detection.counted)
     return Settled(
-        plan, inputs, weights, electrical, liquids, readings, injections, scatter, detection, outcome
+        plan,
+        inputs,
+        weights,
+        electrical,
+        liquids,
+        readings,
+        injections,
+        scatter,
+        liquid_scatter,
+        detection,
+        outcome,
     )
 
 
@@ -83,15 +99,37 @@ def _scatter(plan: Plan, inputs: Inputs, injections: Pooled) -> Number:
     residuals show.
     """
     gas = plan.gas
-    groups = len(gas.group_run)
-    square = np.bincount(gas.pooled_group, weights=injections.residual**2, minlength=groups)
-    held = (injections.unexplained > 0) & (square > 0)
+    columns = inputs.reserved[0] + gas.reading_injection[gas.pooled_reading]
+    return _unexplained(injections, gas.pooled_group, columns, len(inputs.sources))
+
+
+def _unexplained(pooled: Pooled, group: IntArray, columns: IntArray, errors: int) -> Linearised:
+    """Errors of the means of repeats, zero so far, whose variances are unexplained / m; see `_scatter`."""
+    groups = len(pooled.count)
+    square = np.bincount(group, weights=pooled.residual**2, minlength=groups)
+    held = (pooled.unexplained > 0) & (square > 0)
     size = np.zeros(groups)
-    size[held] = np.sqrt(injections.unexplained[held] / (injections.count[held] * square[held]))
-    loading = size[gas.pooled_group] * injections.residual
-    columns = inputs.reserved + gas.reading_injection[gas.pooled_reading]
-    shape = (groups, len(inputs.sources))
-    return Linearised(np.zeros(groups), sparse_map(gas.pooled_group, columns, loading, shape))
+    size[held] = np.sqrt(pooled.unexplained[held] / (pooled.count[held] * square[held]))
+    loading = size[group] * pooled.residual
+    return Linearised(np.zeros(groups), sparse_map(group, columns, loading, (groups, errors)))
+
+
+def _liquid_scatter(plan: Plan, inputs: Inputs, liquids: Liquids) -> Number:
+    """The unexplained scatter of replicate vials as errors of the Faradaic efficiencies, (LP,).
+
+    By the same rule as that of injections: one error for each vial, with a loading on each of its products.
+    """
+    liquid = plan.liquid
+    replicates = liquid.replicate_mean
+    group = np.repeat(np.arange(replicates.shape[0]), np.diff(replicates.indptr))
+    analyte = replicates.indices.astype(np.intp)
+    pooled = pool(gather(liquids.concentration_mol_per_m3, analyte), group, replicates.shape[0])
+    columns = inputs.reserved[1] + liquid.analyte_vial[analyte]
+    concentration = _unexplained(pooled, group, columns, len(inputs.sources))
+    volume = liquid.volume_mean @ np.nan_to_num(inputs.nominal["compartment volume"])
+    charge = nominal(charge_to_sampling(plan, inputs.nominal))[liquid.product_sampling]
+    per_concentration = liquid.electrons * FARADAY_CONSTANT * volume / charge
+    return linear_map(liquid.compartments, concentration * per_concentration)
 
 
 def signal_weights(plan: Plan, inputs: Inputs) -> SignalWeights:

@@ -91,7 +91,7 @@ class Inputs:
     nominal: Mapping[str, FloatArray]
     sources: tuple[Source, ...]
     moved: tuple[bool, ...]
-    reserved: int  # first of the reserved columns
+    reserved: tuple[int, ...]  # first column of each kind that was reserved
 
     def draw(self, normals: FloatArray) -> dict[str, FloatArray]:
         """Inputs for Monte Carlo: blocks (n_draws, n) from standard normals (n_draws, n_errors)."""
@@ -124,11 +124,12 @@ def build_inputs(
     blocks: Sequence[Block],
     declarations: Iterable[Declaration],
     correlated: Iterable[Correlated] = (),
-    reserve: tuple[Source, int] | None = None,
+    reserve: Iterable[tuple[Source, int]] = (),
 ) -> Inputs:
     """Turn blocks and declarations into numbers that carry their errors.
 
-    ``reserve`` keeps columns for errors whose size is known only after a first evaluation (scatter of repeats).
+    ``reserve`` keeps so many columns of each source for errors whose size is known only after a first evaluation
+    (scatter of repeats).
     Raises ValueError for a declaration with an unknown sharing.
     """
     by_quantity: dict[str, list[Block]] = {}
@@ -146,7 +147,7 @@ def build_inputs(
             held = np.flatnonzero(row)
             columns.put(name, np.full(held.size, element), first + held, row[held])
 
-    reserved = columns.open(*reserve) if reserve else len(columns.sources)
+    reserved = tuple(columns.open(*kept) for kept in reserve)
 
     numbers: dict[str, Number] = {}
     for block in blocks:
