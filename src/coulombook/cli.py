@@ -243,13 +243,13 @@ def _budget(options: argparse.Namespace) -> int:
         if options.run is not None
         else f"mean of {runs} {'run' if runs == 1 else 'runs'}"
     )
-    unit = " %" if output != "C2+/C1" else ""
+    unit = " mA/cm^2" if output.startswith("j real ") else "" if output == "C2+/C1" else " %"
     with _quiet_pipe():
         show_budget(
             f"{book.day}: variance of {output}, {of}",
             shares,
             unit,
-            [one for one in outputs if one != output],
+            [one for one in outputs if one != output and not one.startswith("j real ")],
             console_for(sys.stdout),
         )
     return DONE
@@ -617,7 +617,9 @@ def _budget_options(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("day", metavar="DAY", help="the day folder")
     parser.add_argument("--run", metavar="R", help="one run (default: the mean of all runs)")
     parser.add_argument(
-        "--product", metavar="P", help="a product by any of its names, or C2+/C1 (default: the total FE)"
+        "--product",
+        metavar="P",
+        help="a product by any of its names, C2+/C1, C2+ FE, or 'j real ethylene' (default: the total FE)",
     )
     _reading_options(parser)
 

@@ -290,19 +290,22 @@ def _calibrations(settled: Settled) -> list[Row]:
 
 
 def _budget(settled: Settled) -> list[Row]:
-    """Contributions of each source to each product's FE, the total FE and C2+/C1 of every run."""
+    """Contributions of each source to each product's FE, total and C2+ FE, C2+/C1 and real j of every run."""
     plan, outcome = settled.plan, settled.outcome
     everything = np.arange(len(plan.runs))
-    outputs: list[tuple[Number, Sequence[str], Sequence[int]]] = [
-        (outcome.faradaic_efficiency, plan.products.species, plan.products.run.tolist()),
-        (outcome.total, ["total FE"] * len(plan.runs), everything.tolist()),
-        (outcome.ratio, ["C2+/C1"] * len(plan.runs), everything.tolist()),
+    owner = plan.products.run.tolist()
+    real = [f"j real {name}" for name in plan.products.species]
+    outputs: list[tuple[Number, Sequence[str], Sequence[int], float]] = [
+        (outcome.faradaic_efficiency, plan.products.species, owner, PERCENT),
+        (outcome.total, ["total FE"] * len(plan.runs), everything.tolist(), PERCENT),
+        (outcome.c2_plus, ["C2+ FE"] * len(plan.runs), everything.tolist(), PERCENT),
+        (outcome.ratio, ["C2+/C1"] * len(plan.runs), everything.tolist(), 1.0),
+        (outcome.real_partial_current_density_ampere_per_m2, real, owner, MA_PER_CM2),
     ]
     rows: list[tuple[int, int, Row]] = []
-    for kind, (number, names, runs) in enumerate(outputs):
+    for kind, (number, names, runs, unit) in enumerate(outputs):
         found = budget(number, settled.inputs.sources)
         share = found.share
-        unit = 1.0 if kind == 2 else PERCENT
         for output, source in np.argwhere(np.nan_to_num(share) > 0).tolist():
             rows.append(
                 (
