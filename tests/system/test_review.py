@@ -272,3 +272,43 @@ def test_scatter_of_vials_is_drawn_as_it_is_propagated(tally: Tally) -> None:
     row = book.tables["intervals"].frame().set_index("output").loc["formate"]
     # 20 000 draws know a standard deviation to 0.5 %
     assert row["u(draws) / %"] == pytest.approx(row["u / %"], rel=0.02)
+
+
+def test_reading_near_the_limit_is_no_better_than_its_curve(tally: Tally) -> None:
+    files = two_channels(6.0, 0.0)
+    gas = files["gas.csv"]
+    assert gas is not None
+    # one injection on the channel that scatters; nothing is declared
+    book = tally({**files, "gas.csv": gas[: gas.index("a1,1,1800,FID")]})
+    noisy = fit_curve(PPM, 0.1 * PPM + 2.0 * WOBBLE, "line through zero")
+    slope = float(noisy.coefficients[1])
+    u_slope = math.sqrt(noisy.covariance[1, 1])
+    # the scatter of a reading, the slope, the flow's 1 % and the current's 0.2 %; not 1 % of the peak
+    relative = math.hypot(noisy.residual_sd / 6.0, u_slope / slope, 0.01, 0.002)
+    row = book.ledger.iloc[0]
+    assert row["u(FE) / %"] == pytest.approx(relative * row["FE / %"], rel=1e-9)
+
+
+def test_integral_near_the_limit_is_no_better_than_its_curve(tally: Tally) -> None:
+    book = tally(formate_vials([0.05], []))
+    a0, a1, _ = LINE.coefficients
+    x = (0.05 - a0) / a1
+    # in ratios: a reading and the curve at x; relative: the standard's integral 2 %, its amount and the volume 1 %
+    # each, the aliquot 0.5 %, the current 0.2 %
+    basis = np.array([1.0, x, 0.0])
+    absolute = math.sqrt(LINE.residual_sd**2 + float(basis @ LINE.covariance @ basis)) / (a1 * x)
+    # the response itself moves with the standard, its intercept does not
+    standard = 0.02 * 0.05 / (a1 * x)
+    row = book.ledger.iloc[0]
+    assert row["u(FE) / %"] / row["FE / %"] == pytest.approx(
+        math.hypot(absolute, standard, 0.01, 0.01, 0.005, 0.002), rel=1e-9
+    )
+
+
+def test_declared_peak_area_is_taken_at_its_word(tally: Tally) -> None:
+    files = two_channels(6.0, 0.0)
+    gas = files["gas.csv"]
+    assert gas is not None
+    exact = settings(more=declare("peak area", "0 %") + declare("I", "0 %"))
+    book = tally({**files, "gas.csv": gas[: gas.index("a1,1,1800,FID")], "day.toml": exact})
+    assert book.tables["budget"].frame()["source"].unique().tolist() == ["curve carbon monoxide@TCD"]

@@ -27,6 +27,9 @@ class Group:
     assumed: tuple[tuple[str, float, str], ...]
 
 
+_OR_SCATTER = ", or the scatter of a reading about its curve where that is larger"
+
+
 def groups(outlet_flow: OutletFlow) -> tuple[Group, ...]:
     """The groups of a day that finds its outlet flow in this way."""
     gas = frozenset(
@@ -79,6 +82,7 @@ def report_assumed(settings: DaySettings, moved: Sequence[bool], findings: Findi
                 "assumed-uncertainty",
                 f"day.toml, {one.quantity}",
                 f"no uncertainty is declared for it or its kind; a relative standard uncertainty of "
-                f"{one.relative * 100:g} %, shared by the {one.shared}, was taken",
+                f"{one.relative * 100:g} %, shared by the {one.shared}, was taken"
+                f"{_OR_SCATTER if one.quantity in ('peak area', 'integral') else ''}",
                 "declare your own in a section [[uncertainty]]; '0 %' if it is to count as exact",
             )

@@ -20,6 +20,8 @@ from coulombook.balance.liquid_plan import LiquidPlan
 from coulombook.balance.readings import Day, DaySettings, FloatArray, Flow, FlowKind, OutletFlow, Run, Signal
 from coulombook.balance.surface_plan import SurfacePlan
 from coulombook.balance.trace_figures import TraceFigures
+from coulombook.curves.inverse import invert
+from coulombook.curves.prediction import reading_variance
 from coulombook.uncertainty.errors import (
     DAY,
     READING,
@@ -31,7 +33,7 @@ from coulombook.uncertainty.errors import (
     Source,
     build_inputs,
 )
-from coulombook.uncertainty.linearised import IntArray, sparse_map
+from coulombook.uncertainty.linearised import IntArray, nominal, sparse_map
 
 if TYPE_CHECKING:
     from scipy.sparse import csr_array
@@ -235,18 +237,45 @@ def _gas_blocks(plan: Plan) -> list[Block]:
     zero = np.zeros(len(injections.label))
     current = _by_injection(plan, lambda figures: figures.injection_current_ampere)
     noise = _by_injection(plan, lambda figures: figures.injection_noise_weight)
+    area = np.array([peak.peak_area for peak in gas.peaks], dtype=float)
+    a0, a1, a2 = (one[gas.peak_curve] for one in plan.curves.coefficients())
+    scatter = _reading_scatter(plan, gas.peak_curve, nominal(invert(a0, a1, a2, area)))
+    of_checks = _reading_scatter(plan, gas.check_curve, gas.check_mole_fraction)
     return [
+        Block("peak area", "peak area", area, peak_owner, _assumed_size(plan, "peak area", area, scatter)),
         Block(
+            "check area",
             "peak area",
-            "peak area",
-            np.array([peak.peak_area for peak in gas.peaks], dtype=float),
-            peak_owner,
+            gas.check_area,
+            check_owner,
+            _assumed_size(plan, "peak area", gas.check_area, of_checks),
         ),
-        Block("check area", "peak area", gas.check_area, check_owner),
         Block("check mole fraction", "mole fraction", gas.check_mole_fraction, check_owner),
         Block("injection delay", "time", zero, injections.run, injections.time_second, np.ones(len(zero))),
         Block("injection current noise", "i", zero, injections.run, current * noise, noise, (READING,)),
     ]
+
+
+def _reading_scatter(plan: Plan, curve: IntArray, x: FloatArray) -> FloatArray:
+    """Standard deviation of a single response about its curve, (n,); 0 where none is known (-1: no curve)."""
+    sd = np.zeros(len(x))
+    for number in np.unique(curve[curve >= 0]).tolist():
+        held, used = curve == number, plan.curves.used[number].curve
+        if used is not None:
+            sd[held] = np.nan_to_num(np.sqrt(reading_variance(used, x[held])))
+    return sd
+
+
+def _assumed_size(plan: Plan, quantity: str, value: FloatArray, scatter: FloatArray) -> FloatArray | None:
+    """What a relative error of a reading counts from, where it is assumed and not declared.
+
+    No reading repeats better than the standards did about their curve, so that the assumed share of this size is the
+    scatter of a reading where that exceeds the assumed share of the reading itself: near the detection limit.
+    """
+    for one in assumed_declarations(plan.settings):
+        if one.quantity == quantity and one.relative:
+            return np.maximum(np.abs(value), scatter / one.relative)
+    return None
 
 
 def _by_injection(plan: Plan, get: Callable[[TraceFigures], FloatArray]) -> FloatArray:
@@ -268,6 +297,7 @@ def _liquid_blocks(plan: Plan) -> list[Block]:
     volume = [
         np.nan if vial.compartment_volume_m3 is None else vial.compartment_volume_m3 for vial in liquid.vials
     ]
+    integral = np.array([signal.integral for signal in liquid.signals], dtype=float)
     return [
         Block("compartment volume", "compartment volume", np.array(volume, dtype=float), owner),
         Block("aliquot", "aliquot", np.array([vial.aliquot_m3 for vial in liquid.vials], dtype=float), owner),
@@ -280,8 +310,9 @@ def _liquid_blocks(plan: Plan) -> list[Block]:
         Block(
             "integral",
             "integral",
-            np.array([signal.integral for signal in liquid.signals], dtype=float),
+            integral,
             owner[liquid.signal_vial],
+            _assumed_size(plan, "integral", integral, _integral_scatter(plan, integral)),
         ),
         Block(
             "standard integral",
@@ -292,6 +323,20 @@ def _liquid_blocks(plan: Plan) -> list[Block]:
         _relaxation("t1", liquid.signals, owner[liquid.signal_vial]),
         _relaxation("standard t1", liquid.standard_signals, owner[liquid.standard_vial]),
     ]
+
+
+def _integral_scatter(plan: Plan, integral: FloatArray) -> FloatArray:
+    """Standard deviation of each analyte's integral about its curve, (S,), the internal standard taken as it is."""
+    liquid = plan.liquid
+    per_proton = np.array([one.integral / one.protons for one in liquid.standard_signals], dtype=float)
+    count = np.bincount(liquid.standard_vial, minlength=len(liquid.vials))
+    with np.errstate(invalid="ignore", divide="ignore"):
+        standard = np.bincount(liquid.standard_vial, per_proton, len(liquid.vials)) / count
+    unit = standard[liquid.signal_vial] * np.array([one.protons for one in liquid.signals], dtype=float)
+    a0, a1, a2 = (one[liquid.signal_curve] for one in plan.curves.coefficients())
+    x = nominal(invert(a0, a1, a2, integral / unit))
+    scatter: FloatArray = unit * _reading_scatter(plan, liquid.signal_curve, x)
+    return scatter
 
 
 def _relaxation(name: str, signals: Sequence[Signal], owner: IntArray) -> Block:
