@@ -136,6 +136,14 @@ KINDS: dict[str, tuple[Severity, str]] = {
     "no-curve": (Severity.WARN, "a signal has no curve in the calibration; proton counting was used"),
     "injection-left-out": (Severity.WARN, "an injection cannot be used and was left out"),
     "uncertainty-not-used": (Severity.WARN, "a declared uncertainty acts on nothing in this day"),
+    "scan-left-out": (Severity.WARN, "the charging current of a scan has not settled; its rate was left out"),
+    "scan-contaminated": (Severity.WARN, "a capacitance scan holds a current that is no double layer's"),
+    "scan-rate-off": (Severity.WARN, "a scan rate as entered is not that of the record's own time"),
+    "no-straight-line": (
+        Severity.WARN,
+        "charging currents follow a power law of the scan rate better than a line",
+    ),
+    "area-changed": (Severity.WARN, "the capacitance of an electrode changed between two sets of scans"),
     "resistance-missing": (Severity.WARN, "no solution resistance is given; 0 ohm was taken"),
     "flow-matters": (
         Severity.WARN,
@@ -160,6 +168,15 @@ KINDS: dict[str, tuple[Severity, str]] = {
     "assumed-default": (Severity.NOTE, "a value was not given; the default was taken"),
     "left-out": (Severity.NOTE, "a row marked unused was left out"),
     "several-channels": (Severity.NOTE, "a product was measured on several channels; the mean was taken"),
+    "window-chosen": (
+        Severity.NOTE,
+        "a window of a capacitance scan was chosen, for the whole scan is not clean",
+    ),
+    "leakage": (Severity.NOTE, "a leak exceeds the charging current of a capacitance scan; it cancels"),
+    "lag-not-told": (
+        Severity.NOTE,
+        "the samples of a scan cannot tell whether its charging current has settled",
+    ),
     "no-roughness": (Severity.NOTE, "an electrode has no roughness factor"),
 }
 

@@ -9,8 +9,6 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import TypeVar
 
-import numpy as np
-
 from coulombook.balance.assumed import report_assumed
 from coulombook.balance.draws import draw_day
 from coulombook.balance.efficiencies import carbon_account, product_efficiencies, report_flow
@@ -19,6 +17,7 @@ from coulombook.balance.gas_plan import list_injections
 from coulombook.balance.liquid_plan import list_samplings
 from coulombook.balance.make_plan import make_plan, recentred_requests, trace_requests
 from coulombook.balance.readings import Day, FloatArray, Run
+from coulombook.balance.scan_verdicts import judge_scans
 from coulombook.balance.settle import Settled, settle
 from coulombook.balance.trace_figures import TraceFigures, TraceRequest, figures_of
 from coulombook.balance.verdicts import (
@@ -40,7 +39,8 @@ from coulombook.book.judgements import (
     reconciliation_rows,
     series_groups,
 )
-from coulombook.cell.capacitance import ScanError, charging_current_ampere
+from coulombook.cell.capacitance import ScanError
+from coulombook.cell.scans import ScanFigures, scan_figures
 from coulombook.findings import DayFaults, Finding, Findings
 from coulombook.intake.day import DaySource, open_day
 from coulombook.intake.digest import sha256_of
@@ -195,12 +195,10 @@ def settle_day(
     injections, samplings = list_injections(day, findings), list_samplings(day)
     requests = trace_requests(day, injections, samplings)
     figures = _read_traces(source, day, dict(enumerate(requests)), findings, progress)
-    charging = _read_scans(source, day, findings, progress)
+    scans = judge_scans(day, _read_scans(source, day, findings, progress), findings)
     if len(figures) < len(day.runs):
         return None
-    plan = make_plan(
-        day, injections, [figures[number] for number in range(len(day.runs))], charging, findings
-    )
+    plan = make_plan(day, injections, [figures[number] for number in range(len(day.runs))], scans, findings)
     if findings.stops:
         return None
     again = recentred_requests(plan, requests, for_draws)
@@ -303,20 +301,24 @@ def _report_early_vials(day: Day, run: Run, start_second: float, findings: Findi
             )
 
 
-def _read_scans(source: DaySource, day: Day, findings: Findings, progress: Progress) -> FloatArray:
-    """Charging current of each voltammogram, NaN where it has faults."""
+def _read_scans(
+    source: DaySource, day: Day, findings: Findings, progress: Progress
+) -> list[ScanFigures | None]:
+    """What is taken from each voltammogram, None where it has faults."""
 
-    def read(number: int) -> float | Findings:
+    def read(number: int) -> ScanFigures | Findings:
         scan, own = day.scans[number], Findings()
         try:
             voltammogram = source.voltammogram(scan)
-            return charging_current_ampere(
+            return scan_figures(
                 voltammogram.potential_volt,
                 voltammogram.current_ampere,
-                voltammogram.cycle,
-                scan.cycle,
-                scan.window_low_volt,
-                scan.window_high_volt,
+                scan.scan_rate_volt_per_second,
+                cycle=voltammogram.cycle,
+                time_second=voltammogram.time_second,
+                chosen_cycle=scan.cycle,
+                window_low_volt=scan.window_low_volt,
+                window_high_volt=scan.window_high_volt,
             )
         except DayFaults as faults:
             own.extend(faults.findings)
@@ -331,13 +333,13 @@ def _read_scans(source: DaySource, day: Day, findings: Findings, progress: Progr
             )
         return own
 
-    charging = np.full(len(day.scans), np.nan)
+    figures: list[ScanFigures | None] = [None] * len(day.scans)
     for number, one in _in_threads(read, list(range(len(day.scans))), "scans", progress):
         if isinstance(one, Findings):
             findings.extend(one)
         else:
-            charging[number] = one
-    return charging
+            figures[number] = one
+    return figures
 
 
 def _in_threads(

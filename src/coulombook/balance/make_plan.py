@@ -14,6 +14,7 @@ from coulombook.balance.gas_plan import Injections, plan_gas
 from coulombook.balance.liquid_plan import Samplings, plan_liquid
 from coulombook.balance.plan import Plan, make_inputs, plan_flow, plan_products
 from coulombook.balance.readings import Day, FloatArray, FlowKind, Run
+from coulombook.balance.scan_verdicts import JudgedScans
 from coulombook.balance.surface_plan import plan_surface
 from coulombook.balance.trace_figures import TraceFigures, TraceRequest
 from coulombook.cell.headspace import HALF_RANGE
@@ -61,7 +62,7 @@ def make_plan(
     day: Day,
     injections: Injections,
     figures: Sequence[TraceFigures],
-    charging_current_ampere: FloatArray,
+    scans: JudgedScans,
     findings: Findings,
 ) -> Plan:
     """Lay out the day; faults and doubts go to ``findings``."""
@@ -72,7 +73,7 @@ def make_plan(
     liquid = plan_liquid(day, curves, findings)
     return Plan(
         day,
-        charging_current_ampere,
+        scans,
         tuple(figures),
         curves,
         plan_flow([run.inlet_flow for run in day.runs]),
@@ -80,7 +81,7 @@ def make_plan(
         plan_flow([run.tracer_flow for run in day.runs]),
         gas,
         liquid,
-        plan_surface(day, charging_current_ampere, findings),
+        plan_surface(day, scans, findings),
         plan_products(day, gas, liquid),
         np.array([run.headspace_m3 is not None for run in day.runs], dtype=bool),
     )

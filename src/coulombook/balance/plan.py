@@ -18,6 +18,7 @@ from coulombook.balance.curves_used import CurvesUsed
 from coulombook.balance.gas_plan import GasPlan
 from coulombook.balance.liquid_plan import LiquidPlan
 from coulombook.balance.readings import Day, DaySettings, FloatArray, Flow, FlowKind, OutletFlow, Run, Signal
+from coulombook.balance.scan_verdicts import JudgedScans
 from coulombook.balance.surface_plan import SurfacePlan
 from coulombook.balance.trace_figures import TraceFigures
 from coulombook.curves.inverse import invert
@@ -81,9 +82,7 @@ class Plan:
     """Fixed structure of a day."""
 
     day: Day
-    charging_current_ampere: (
-        FloatArray  # (n_scans,) in the order of ``day.scans``; NaN for a scan that was not read
-    )
+    scans: JudgedScans
     figures: tuple[TraceFigures, ...]
     curves: CurvesUsed
     inlet: FlowPlan
@@ -407,11 +406,8 @@ def _coefficients(number: int) -> tuple[tuple[str, int], ...]:
 
 def _capacitance_errors(plan: Plan) -> list[Correlated]:
     return [
-        Correlated(
-            Source("capacitance fit", DAY),
-            (("capacitance scatter", number),),
-            np.array([[fit.u_capacitance_farad]]),
-        )
-        for number, fit in enumerate(plan.surface.fits)
-        if np.isfinite(fit.u_capacitance_farad) and fit.u_capacitance_farad > 0
+        Correlated(Source(name, DAY), (("capacitance scatter", number),), np.array([[u]]))
+        for number, one in enumerate(plan.surface.methods)
+        for name, u in (("capacitance fit", one.u_scatter), ("capacitance method", one.u_method))
+        if np.isfinite(u) and u > 0
     ]

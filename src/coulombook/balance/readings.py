@@ -188,6 +188,7 @@ class Scan:
     window_low_volt: float | None
     window_high_volt: float | None
     origin: RowOrigin
+    purpose: str = ""  # tells sets of scans of one electrode apart: "before", "after"
 
 
 @dataclass(frozen=True, slots=True)

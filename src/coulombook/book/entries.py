@@ -245,14 +245,19 @@ def _surface(settled: Settled) -> list[Row]:
     return [
         {
             "electrode": electrode,
+            "purpose": purpose,
             "capacitance / mF": capacitance.value[number],
             "u(capacitance) / mF": capacitance.u[number],
             "roughness factor": _finite(roughness, number),
             "u(roughness factor)": _beside(roughness, number),
             "linearity": surface.fits[number].r_squared,
             "exponent": surface.fits[number].exponent,
+            "u(exponent)": surface.fits[number].u_exponent,
+            "form": surface.fits[number].form,
+            "capacitance by window / mF": surface.methods[number].by_window * MILLIFARAD,
+            "capacitance by charge / mF": surface.methods[number].by_charge * MILLIFARAD,
         }
-        for number, electrode in enumerate(surface.electrodes)
+        for number, (electrode, purpose) in enumerate(surface.owners)
     ]
 
 

@@ -38,7 +38,8 @@ SERIES = (
 )  # fmt: skip
 SURFACE = (
     "electrode", "capacitance / mF", "u(capacitance) / mF", "roughness factor", "u(roughness factor)",
-    "linearity", "exponent",
+    "linearity", "exponent", "purpose", "u(exponent)", "form", "capacitance by window / mF",
+    "capacitance by charge / mF",
 )  # fmt: skip
 CALIBRATIONS = (
     "calibration", "channel", "analyte", "form", "weights", "points", "a0", "u(a0)", "a1", "u(a1)", "a2", "u(a2)",

@@ -239,6 +239,7 @@ def scans(table: TypedTable) -> tuple[Scan, ...]:
     electrodes, files = table.words("electrode"), table.words("file")
     rates, areas, cycles = table.numbers("scan rate"), table.numbers("electrode area"), table.numbers("cycle")
     lows, highs = table.numbers("window low"), table.numbers("window high")
+    purposes = table.words("purpose")
     found: list[Scan] = []
     for place in _whole(table):
         rate, area = rates[place], areas[place]
@@ -246,7 +247,7 @@ def scans(table: TypedTable) -> tuple[Scan, ...]:
             continue
         found.append(
             Scan(electrodes[place], files[place].replace("\\", "/"), rate, area, cycles[place], lows[place],
-                 highs[place], table.row_origin(place))
+                 highs[place], table.row_origin(place), " ".join(purposes[place].split()))
         )  # fmt: skip
     return tuple(found)
 

@@ -211,6 +211,7 @@ SCANS = Schema(
         number("cycle"),
         number("window low / V", "potential"),
         number("window high / V", "potential"),
+        words("purpose"),
     ),
 )
 CHECKS = Schema(
