@@ -105,7 +105,7 @@ def simulate(
 def main() -> None:
     """Simulate every cause at every size and write the table."""
     settled = example()
-    causes = shared_causes(settled)
+    causes = candidate_causes(settled)
     lines = [
         "# How well an open balance is explained",
         "",
@@ -123,7 +123,7 @@ def main() -> None:
         "| true cause | size | found | no cause | another cause first | within 2 u |",
         "| --- | --- | --- | --- | --- | --- |",
     ]
-    for number, cause in enumerate(causes):
+    for number, cause in enumerate(shared_causes(settled)):
         # a curve of a product that makes up a per cent of the charge cannot open any balance; it is left out here
         if np.abs(cause.pattern[:, 0]).max() < 0.1:
             continue

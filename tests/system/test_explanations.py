@@ -7,9 +7,9 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from tests.benchmarks.causes import example, shared_causes, simulate
+from tests.benchmarks.causes import example, simulate
 
-from coulombook.balance.causes import Cause
+from coulombook.balance.causes import Cause, candidate_causes
 from coulombook.balance.explain import explain, rank
 from coulombook.balance.settle import Settled
 
@@ -23,7 +23,7 @@ def settled() -> Settled:
 
 @pytest.fixture(scope="module")
 def causes(settled: Settled) -> list[Cause]:
-    return shared_causes(settled)
+    return candidate_causes(settled)
 
 
 def test_a_day_without_a_cause_is_rarely_accused(settled: Settled, causes: list[Cause]) -> None:

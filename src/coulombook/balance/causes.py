@@ -147,8 +147,8 @@ def _lost(settled: Settled) -> list[Cause]:
         )
     ]
     measured = np.bincount(products.run, minlength=n) > 0
-    residual = nominal(outcome.total) - 1.0
-    for run in np.flatnonzero(measured & (residual < 0) & (gas > 0)):
+    # every run, whatever its residual: what chance alone can do is judged with the same candidates
+    for run in np.flatnonzero(measured & (gas > 0)):
         one = np.zeros((n, 1))
         one[run] = -gas[run]
         causes.append(

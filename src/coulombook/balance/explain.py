@@ -176,7 +176,11 @@ def rank(residual: FloatArray, v: FloatArray, causes: Sequence[Cause]) -> Explai
     fits = whitened.estimates(residual, causes)
     labels = names(causes)
     alike = _of_one_pattern(causes)
-    order = sorted(range(len(causes)), key=lambda number: -gains[number])
+    # a share that would have to be gained, not lost, explains nothing
+    possible = [
+        number for number, cause in enumerate(causes) if not (cause.only_positive and fits[number][0] <= 0)
+    ]
+    order = sorted(possible, key=lambda number: -gains[number])
     ranked = []
     for number in order:
         near = tuple(
@@ -199,7 +203,7 @@ def rank(residual: FloatArray, v: FloatArray, causes: Sequence[Cause]) -> Explai
             )
         )
     nothing = Explanation("none", "", 0.0, 0.0, 0.0, (), "")
-    place_of_none = 0 if closes else sum(gain > 0 for gain in gains)
+    place_of_none = 0 if closes else sum(gains[number] > 0 for number in order)
     ranked.insert(place_of_none, nothing)
     return Explained(tuple(ranked), closes, float(_SCATTERS[scatter]))
 
