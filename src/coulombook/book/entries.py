@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -14,7 +14,7 @@ from coulombook.book.tables import Cell, Table
 from coulombook.compare.series import pool_points, series_points
 from coulombook.findings import Finding
 from coulombook.uncertainty.budget import budget
-from coulombook.uncertainty.linearised import Number, nominal, standard_uncertainty
+from coulombook.uncertainty.linearised import IntArray, Number, nominal, standard_uncertainty
 
 PERCENT = 100.0
 PPM = 1e6
@@ -55,7 +55,7 @@ def enter(
     """Every table of the book; ``judgements`` are the rows of tables that judge the day, by name."""
     status = product_status(settled)
     closure, _ = closures(settled)
-    tables: Mapping[str, list[Row]] = {
+    tables: Mapping[str, Iterable[Row]] = {
         "ledger": _ledger(settled, status),
         "summary": _summary(settled, closure),
         "injections": _injections(settled),
@@ -294,37 +294,39 @@ def _calibrations(settled: Settled) -> list[Row]:
     return rows
 
 
-def _budget(settled: Settled) -> list[Row]:
-    """Contributions of each source to each product's FE, total and C2+ FE, C2+/C1 and real j of every run."""
+def _budget(settled: Settled) -> Iterator[Row]:
+    """Contributions of each source to each product's FE, total and C2+ FE, C2+/C1 and real j of every run.
+
+    The longest table of the book: its rows are made as they are asked for.
+    """
     plan, outcome = settled.plan, settled.outcome
     everything = np.arange(len(plan.runs))
-    owner = plan.products.run.tolist()
+    owner = plan.products.run
     real = [f"j real {name}" for name in plan.products.species]
-    outputs: list[tuple[Number, Sequence[str], Sequence[int], float]] = [
+    outputs: list[tuple[Number, Sequence[str], IntArray, float]] = [
         (outcome.faradaic_efficiency, plan.products.species, owner, PERCENT),
-        (outcome.total, ["total FE"] * len(plan.runs), everything.tolist(), PERCENT),
-        (outcome.c2_plus, ["C2+ FE"] * len(plan.runs), everything.tolist(), PERCENT),
-        (outcome.ratio, ["C2+/C1"] * len(plan.runs), everything.tolist(), 1.0),
+        (outcome.total, ["total FE"] * len(plan.runs), everything, PERCENT),
+        (outcome.c2_plus, ["C2+ FE"] * len(plan.runs), everything, PERCENT),
+        (outcome.ratio, ["C2+/C1"] * len(plan.runs), everything, 1.0),
         (outcome.real_partial_current_density_ampere_per_m2, real, owner, MA_PER_CM2),
     ]
-    rows: list[tuple[int, int, Row]] = []
-    for kind, (number, names, runs, unit) in enumerate(outputs):
+    parts = []
+    for kind, (number, _, runs, unit) in enumerate(outputs):
         found = budget(number, settled.inputs.sources)
         share = found.share
-        for output, source in np.argwhere(np.nan_to_num(share) > 0).tolist():
-            rows.append(
-                (
-                    runs[output],
-                    kind,
-                    {
-                        "run": plan.runs[runs[output]].name,
-                        "output": names[output],
-                        "source": found.sources[source].name,
-                        "shared": found.sources[source].shared,
-                        "u / %": float(found.u[output, source] * unit),
-                        "share / %": float(share[output, source] * PERCENT),
-                    },
-                )
-            )
-    rows.sort(key=lambda row: row[:2])
-    return [row for _, _, row in rows]
+        output, source = np.nonzero(np.nan_to_num(share) > 0)
+        sizes = found.u[output, source] * unit, share[output, source] * PERCENT
+        parts.append((runs[output], np.full(len(output), kind), output, source, *sizes))
+        sources = found.sources  # the same for every output
+    run, kinds, *columns = (np.concatenate(part) for part in zip(*parts, strict=True))
+    order = np.lexsort((kinds, run))  # stable: within an output the sources keep their order
+    cells = (column[order].tolist() for column in (run, kinds, *columns))
+    for place, kind, output, source, u, percent in zip(*cells, strict=True):
+        yield {
+            "run": plan.runs[place].name,
+            "output": outputs[kind][1][output],
+            "source": sources[source].name,
+            "shared": sources[source].shared,
+            "u / %": u,
+            "share / %": percent,
+        }

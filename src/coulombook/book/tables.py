@@ -6,7 +6,7 @@ show it. pandas is imported when a frame is first asked for.
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -97,17 +97,19 @@ class Table:
     rows: tuple[tuple[Cell, ...], ...]
 
     @classmethod
-    def of(cls, name: str, rows: Sequence[Mapping[str, Cell]]) -> Table:
+    def of(cls, name: str, rows: Iterable[Mapping[str, Cell]]) -> Table:
         """Table ``name`` of `TABLES` from rows keyed by head; a head that a row lacks is absent there.
 
         Raises KeyError when a row holds a head the table does not have.
         """
         heads = TABLES[name]
         known = set(heads)
+        cells = []
         for row in rows:
             if not row.keys() <= known:
                 raise KeyError(f"table {name} has no head {sorted(row.keys() - known)}")
-        return cls(name, heads, tuple(tuple(map(_absent, map(row.get, heads))) for row in rows))
+            cells.append(tuple(map(_absent, map(row.get, heads))))
+        return cls(name, heads, tuple(cells))
 
     def __len__(self) -> int:
         return len(self.rows)
