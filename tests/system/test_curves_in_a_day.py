@@ -161,3 +161,11 @@ def test_standards_of_one_cylinder_widen_the_curve_together(tmp_path: Path) -> N
     part = row[(row["output"] == "ethylene") & (row["source"] == "curve ethylene@FID")].iloc[0]
     # all standards are off by the same 2 %, and so is every mole fraction read by the curve
     assert part["u / %"] / book.ledger.iloc[0]["FE / %"] == pytest.approx(0.02, rel=1e-6)
+
+
+def test_a_gas_named_as_tracer_is_no_product_in_any_mode(tmp_path: Path) -> None:
+    gas = {"gas.csv": GAS_HEAD + "a1,1,1800,FID,ethylene,12\n"}
+    # ethylene as tracer is odd, but the day says so, and the outlet flow is taken as the inlet flow all the same
+    toml = {"day.toml": DAY + '[gas]\noutlet_flow = "inlet"\ntracer = "ethylene"\n'}
+    assert len(_tally(tmp_path / "product", gas).ledger) == 1
+    assert len(_tally(tmp_path / "tracer", {**gas, **toml}).ledger) == 0

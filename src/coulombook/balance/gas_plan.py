@@ -177,7 +177,9 @@ def _peaks_with_curves(
     peaks, peak_curve = [], []
     without: dict[tuple[str, str], list[Peak]] = {}
     for peak in day.peaks:
-        if day.species[peak.analyte].carrier and peak.analyte != tracer:
+        # a gas named as tracer is no product, even where the outlet flow is found in another way
+        idle = day.species[peak.analyte].carrier or peak.analyte == day.settings.tracer
+        if idle and peak.analyte != tracer:
             continue
         index = curves.index(GAS, peak.channel, peak.analyte)
         if index is not None:

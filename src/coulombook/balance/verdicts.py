@@ -224,7 +224,8 @@ def report_doubts(settled: Settled, status: list[str], closure: list[str], findi
             )
     # behind the declared ones stand the assumed ones
     for declared, moved in zip(plan.settings.declared, settled.inputs.moved, strict=False):
-        if not moved and (declared.relative or declared.absolute):  # a stated zero moves nothing, and is meant to
+        # a stated zero moves nothing, and is meant to
+        if not moved and (declared.relative or declared.absolute):
             findings.add(
                 "uncertainty-not-used",
                 declared.origin,
