@@ -104,6 +104,7 @@ KINDS: dict[str, tuple[Severity, str]] = {
     "missing-standard": (Severity.STOP, "a vial has no usable internal standard"),
     "broken-trace": (Severity.STOP, "a potentiostat log cannot be integrated"),
     "anodic-run": (Severity.STOP, "the mean current of a run is not cathodic"),
+    "broken-spectrum": (Severity.STOP, "an impedance spectrum cannot give a resistance"),
     "broken-scan": (Severity.STOP, "a voltammogram cannot give a charging current"),
     # --- warnings: a number may mislead ---
     "calibration-expired": (Severity.WARN, "a calibration is past its date of validity"),
@@ -136,6 +137,12 @@ KINDS: dict[str, tuple[Severity, str]] = {
     "no-curve": (Severity.WARN, "a signal has no curve in the calibration; proton counting was used"),
     "injection-left-out": (Severity.WARN, "an injection cannot be used and was left out"),
     "uncertainty-not-used": (Severity.WARN, "a declared uncertainty acts on nothing in this day"),
+    "spectrum-unsteady": (Severity.WARN, "an impedance spectrum breaks the Kramers-Kronig relations"),
+    "circuit-misfit": (Severity.WARN, "an impedance spectrum is not that of the circuit fitted to it"),
+    "capacitances-apart": (
+        Severity.WARN,
+        "voltammograms and spectra of an electrode give capacitances far apart",
+    ),
     "scan-left-out": (Severity.WARN, "the charging current of a scan has not settled; its rate was left out"),
     "scan-contaminated": (Severity.WARN, "a capacitance scan holds a current that is no double layer's"),
     "scan-rate-off": (Severity.WARN, "a scan rate as entered is not that of the record's own time"),
@@ -168,6 +175,11 @@ KINDS: dict[str, tuple[Severity, str]] = {
     "assumed-default": (Severity.NOTE, "a value was not given; the default was taken"),
     "left-out": (Severity.NOTE, "a row marked unused was left out"),
     "several-channels": (Severity.NOTE, "a product was measured on several channels; the mean was taken"),
+    "resistance-from-spectrum": (
+        Severity.NOTE,
+        "a run names no resistance; that of an impedance spectrum was taken",
+    ),
+    "capacitance-from-table": (Severity.NOTE, "the specific capacitance is that of the shipped table"),
     "window-chosen": (
         Severity.NOTE,
         "a window of a capacitance scan was chosen, for the whole scan is not clean",

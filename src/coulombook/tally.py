@@ -19,6 +19,12 @@ from coulombook.balance.make_plan import make_plan, recentred_requests, trace_re
 from coulombook.balance.readings import Day, FloatArray, Run
 from coulombook.balance.scan_verdicts import judge_scans
 from coulombook.balance.settle import Settled, settle
+from coulombook.balance.spectra_used import (
+    SpectrumFigures,
+    impedance_capacitances,
+    report_capacitances,
+    use_spectra,
+)
 from coulombook.balance.trace_figures import TraceFigures, TraceRequest, figures_of
 from coulombook.balance.verdicts import (
     closures,
@@ -40,6 +46,8 @@ from coulombook.book.judgements import (
     series_groups,
 )
 from coulombook.cell.capacitance import ScanError
+from coulombook.cell.impedance import ImpedanceError, fit_circuit
+from coulombook.cell.kramers_kronig import kramers_kronig
 from coulombook.cell.scans import ScanFigures, scan_figures
 from coulombook.findings import DayFaults, Finding, Findings
 from coulombook.intake.day import DaySource, open_day
@@ -196,9 +204,13 @@ def settle_day(
     requests = trace_requests(day, injections, samplings)
     figures = _read_traces(source, day, dict(enumerate(requests)), findings, progress)
     scans = judge_scans(day, _read_scans(source, day, findings, progress), findings)
+    spectra = _read_spectra(source, day, findings, progress)
+    day = use_spectra(day, spectra, findings)
     if len(figures) < len(day.runs):
         return None
-    plan = make_plan(day, injections, [figures[number] for number in range(len(day.runs))], scans, findings)
+    plan = make_plan(
+        day, injections, [figures[number] for number in range(len(day.runs))], scans, findings, spectra
+    )
     if findings.stops:
         return None
     again = recentred_requests(plan, requests, for_draws)
@@ -209,6 +221,7 @@ def settle_day(
     report_faults(settled, findings)
     if findings.stops:
         return None
+    report_capacitances(plan.surface, impedance_capacitances(day, spectra), findings)
     report_assumed(day.settings, settled.inputs.moved, findings)
     closure, _ = closures(settled)
     report_doubts(settled, product_status(settled), closure, findings)
@@ -335,6 +348,39 @@ def _read_scans(
 
     figures: list[ScanFigures | None] = [None] * len(day.scans)
     for number, one in _in_threads(read, list(range(len(day.scans))), "scans", progress):
+        if isinstance(one, Findings):
+            findings.extend(one)
+        else:
+            figures[number] = one
+    return figures
+
+
+def _read_spectra(
+    source: DaySource, day: Day, findings: Findings, progress: Progress
+) -> list[SpectrumFigures | None]:
+    """What is taken from each impedance spectrum, None where it has faults."""
+
+    def read(number: int) -> SpectrumFigures | Findings:
+        spectrum, own = day.spectra[number], Findings()
+        try:
+            record = source.spectrum(spectrum)
+            fit = fit_circuit(record.frequency_hertz, record.impedance_ohm)
+            return SpectrumFigures(fit, kramers_kronig(record.frequency_hertz, record.impedance_ohm))
+        except DayFaults as faults:
+            own.extend(faults.findings)
+        except ImpedanceError as error:
+            own.add(
+                "broken-spectrum",
+                f"{spectrum.file} ({spectrum.origin})",
+                "the spectrum gives no resistance",
+                "check the file and the signs of its columns",
+                found=str(error),
+                expected=error.expected,
+            )
+        return own
+
+    figures: list[SpectrumFigures | None] = [None] * len(day.spectra)
+    for number, one in _in_threads(read, list(range(len(day.spectra))), "spectra", progress):
         if isinstance(one, Findings):
             findings.extend(one)
         else:

@@ -197,6 +197,7 @@ SECTIONS_OF_TABLES: dict[str, Schema] = {
     **schema.DAY_TABLES,
     "traces": schema.TRACE,
     "voltammograms": schema.VOLTAMMOGRAM,
+    "spectrum files": schema.SPECTRUM,
     "standards.csv of a gas calibration": schema.GAS_STANDARDS,
     "standards.csv of a liquid calibration": schema.LIQUID_STANDARDS,
 }

@@ -11,6 +11,7 @@ from tests.unit.cell.rc_circuit import Record, sweep
 
 import coulombook
 from coulombook.book import Book
+from coulombook.cell.impedance import brug_capacitance, circuit_impedance, hsu_mansfeld_capacitance
 
 RATES = (0.02, 0.04, 0.08, 0.16)
 
@@ -175,3 +176,165 @@ def test_change_of_area_is_told_of_and_runs_keep_the_former(tmp_path: Path, afte
     assert list(book.surface["electrode"]) == ["m1", "m1"]
     # noise of 0.1 uA, averaged over the samples of a fifth, against 160 uA
     assert book.summary["roughness factor"][0] == pytest.approx(1000 / 28, rel=2e-3)
+
+
+# --- the shipped table ---
+
+FROM_TABLE = 'material = "copper"\nelectrolyte = "0.1 mol/L KHCO3"'
+
+
+def test_shipped_capacitance_carries_one_large_error_shared_by_all_electrodes(tmp_path: Path) -> None:
+    sets = {
+        ("m1", ""): [scan(1e-3, rate, noise=1e-7, seed=1) for rate in RATES],
+        ("m2", ""): [scan(2e-3, rate, noise=1e-7, seed=2) for rate in RATES],
+    }
+    folder = write_day(tmp_path / "day", sets, FROM_TABLE)
+    book = coulombook.tally(folder)
+    told = [one.text for one in book.findings if one.kind == "capacitance-from-table"]
+    assert len(told) == 1
+    assert "29 uF/cm^2" in told[0]
+    found = book.summary.set_index("run")
+    factor, u = found["roughness factor"], found["u(roughness factor)"]
+    assert factor["r-m1"] == pytest.approx(1000 / 29, rel=2e-3)
+    # 40 % of the table; the gain of the current range and the scatter add next to nothing
+    assert u["r-m1"] / factor["r-m1"] == pytest.approx(0.40, rel=1e-3)
+
+
+def test_error_of_the_shipped_capacitance_cancels_between_electrodes(tmp_path: Path) -> None:
+    from coulombook.findings import Findings
+    from coulombook.intake.day import open_day
+    from coulombook.tally import settle_day
+    from coulombook.uncertainty.linearised import gather, standard_uncertainty
+
+    sets = {
+        ("m1", ""): [scan(1e-3, rate, noise=1e-7, seed=1) for rate in RATES],
+        ("m2", ""): [scan(2e-3, rate, noise=1e-7, seed=2) for rate in RATES],
+    }
+    findings = Findings()
+    settled = settle_day(open_day(write_day(tmp_path / "day", sets, FROM_TABLE), [], findings), findings)
+    assert settled is not None
+    factor = settled.outcome.roughness_factor
+    ratio = gather(factor, np.array([1])) / gather(factor, np.array([0]))
+    # 0.1 uA of noise against 160 uA, some ten samples to a fifth
+    assert standard_uncertainty(ratio)[0] < 0.01
+    assert standard_uncertainty(factor)[0] > 10.0
+
+
+@pytest.mark.parametrize(
+    ("surface", "kind", "text"),
+    [
+        ('material = "brass"\nelectrolyte = "KOH"', "unknown-name", "this material"),
+        ('material = "copper"\nelectrolyte = "KOH"', "unknown-name", "this electrolyte for copper"),
+        ('material = "copper"', "missing-value", "without 'electrolyte'"),
+        (
+            'material = "copper"\nelectrolyte = "acid"\nsmooth_reference = "m1"',
+            "not-allowed",
+            "two references",
+        ),
+    ],
+)
+def test_what_the_shipped_table_lacks_is_a_fault(tmp_path: Path, surface: str, kind: str, text: str) -> None:
+    folder = write_day(tmp_path / "day", {("m1", ""): [scan(1e-3, rate) for rate in RATES]}, surface)
+    with pytest.raises(coulombook.DayFaults) as caught:
+        coulombook.tally(folder)
+    assert [(one.kind, text in one.text) for one in caught.value.stops] == [(kind, True)]
+
+
+# --- spectra ---
+
+
+def spectrum(resistance: float, *, noise: float = 0.0, drift: float = 0.0) -> str:
+    """A constant-phase element of 1 mF s^-0.1 bridged by 200 ohm; ``drift`` is the growth of the resistance."""
+    frequency = np.geomspace(1e5, 0.1, 43)
+    growing = resistance * (1.0 + drift * np.linspace(0.0, 1.0, frequency.size))
+    z = circuit_impedance(2 * np.pi * frequency, 0.0, 200.0, 1e-3, 0.9) + growing
+    random = np.random.default_rng(4).standard_normal((2, frequency.size))
+    z = z * (1.0 + noise * (random[0] + 1j * random[1]))
+    rows = [f"{f:.15g},{one.real:.15g},{one.imag:.15g}" for f, one in zip(frequency, z, strict=True)]
+    return "\n".join(["f / Hz,Zre / ohm,Zim / ohm", *rows]) + "\n"
+
+
+def test_spectrum_gives_the_resistance_of_runs_that_name_none(tmp_path: Path) -> None:
+    tables = {
+        "spectra.csv": "run,electrode,file\nr-m1,,spectra/a.csv\n,m2,spectra/b.csv\n",
+        "spectra/a.csv": spectrum(8.0, noise=0.003),
+        "spectra/b.csv": spectrum(12.0, noise=0.003),
+    }
+    book = coulombook.tally(write_day(tmp_path / "day", {}, "", tables=tables, resistance=False))
+    assert kinds(book).count("resistance-from-spectrum") == 2
+    assert "resistance-missing" not in kinds(book)
+    found = book.summary.set_index("run")
+    spectra = book.tables["spectra"].frame().set_index("file")
+    assert list(spectra["Kramers-Kronig"]) == ["passed", "passed"]
+    for run, file, truth in (("r-m1", "spectra/a.csv", 8.0), ("r-m2", "spectra/b.csv", 12.0)):
+        row = spectra.loc[file]
+        u = row["u(resistance) / ohm"]
+        assert abs(row["resistance / ohm"] - truth) < 3.0 * u < 0.3
+        # cathodic: E + 0.210 + 0.0591594 x 6.8 + 10 mA x R
+        potential = -1.5 + 0.210 + 0.0591594 * 6.8 + 0.010 * row["resistance / ohm"]
+        assert found["E vs RHE / V"][run] == pytest.approx(potential, abs=1e-6)
+        # what nothing else moves: the current's 0.2 % acts through the resistance as well
+        expected = 0.010 * np.hypot(u, 0.002 * row["resistance / ohm"])
+        assert found["u(E vs RHE) / V"][run] == pytest.approx(expected, rel=1e-6)
+
+
+def test_resistance_of_the_table_stands_before_that_of_a_spectrum(tmp_path: Path) -> None:
+    tables = {"spectra.csv": "electrode,file\nm1,spectra/a.csv\n", "spectra/a.csv": spectrum(8.0)}
+    book = coulombook.tally(write_day(tmp_path / "day", {}, "", tables=tables))
+    assert "resistance-from-spectrum" not in kinds(book)
+    assert book.summary["E vs RHE / V"][0] == pytest.approx(-1.5 + 0.210 + 0.0591594 * 6.8 + 0.1, abs=1e-6)
+
+
+def test_runs_without_a_spectrum_still_miss_their_resistance(tmp_path: Path) -> None:
+    tables = {
+        "spectra.csv": "electrode,file,purpose\nm1,spectra/a.csv,\nm2,spectra/a.csv,capacitance\n",
+        "spectra/a.csv": spectrum(8.0),
+    }
+    book = coulombook.tally(write_day(tmp_path / "day", {}, "", tables=tables, resistance=False))
+    assert [one.text[:40] for one in book.findings if one.kind == "resistance-missing"] == [
+        "no resistance is given for 1 of 2 runs; "
+    ]
+
+
+def test_drifting_spectrum_is_told_of(tmp_path: Path) -> None:
+    tables = {"spectra.csv": "electrode,file\nm1,spectra/a.csv\n", "spectra/a.csv": spectrum(8.0, drift=1.0)}
+    book = coulombook.tally(write_day(tmp_path / "day", {}, "", tables=tables))
+    assert "spectrum-unsteady" in kinds(book, "spectra/a.csv")
+    assert book.tables["spectra"].column("Kramers-Kronig") == ["failed"]
+
+
+@pytest.mark.parametrize(("capacitance", "apart"), [(0.5e-3, False), (5e-3, True)])
+def test_capacitances_of_scans_and_spectra_are_compared(
+    tmp_path: Path, capacitance: float, apart: bool
+) -> None:
+    tables = {"spectra.csv": "electrode,file\nm1,spectra/a.csv\n", "spectra/a.csv": spectrum(8.0)}
+    scans = {("m1", ""): [scan(capacitance, rate) for rate in RATES]}
+    book = coulombook.tally(write_day(tmp_path / "day", scans, tables=tables))
+    row = book.surface.iloc[0]
+    # the equations themselves are held against published numbers elsewhere
+    assert row["capacitance by Brug / mF"] == pytest.approx(
+        1e3 * brug_capacitance(1e-3, 0.9, 8.0, 200.0), rel=1e-4
+    )
+    assert row["capacitance by Hsu-Mansfeld / mF"] == pytest.approx(
+        1e3 * hsu_mansfeld_capacitance(1e-3, 0.9, 200.0), rel=1e-4
+    )
+    assert ("capacitances-apart" in kinds(book)) is apart
+
+
+@pytest.mark.parametrize(
+    ("rows", "text", "kind"),
+    [
+        ("m9,spectra/a.csv", spectrum(8.0), "unknown-name"),
+        ("m1,spectra/b.csv", spectrum(8.0), "missing-file"),
+        (",spectra/a.csv", spectrum(8.0), "missing-value"),
+        ("m1,spectra/a.csv", "f / Hz,Zre / ohm,Zim / ohm\n1,2,-3\n", "broken-spectrum"),
+        ("m1,spectra/a.csv", "f / Hz,Zre / ohm\n1,2\n", "missing-column"),
+        ("m1,spectra/a.csv", "f / Hz,Zre / ohm,Zim / V\n1,2,-3\n", "wrong-dimension"),
+    ],
+)
+def test_fault_of_a_spectrum_is_told(tmp_path: Path, rows: str, text: str, kind: str) -> None:
+    tables = {"spectra.csv": f"electrode,file\n{rows}\n", "spectra/a.csv": text}
+    folder = write_day(tmp_path / "day", {}, "", tables=tables)
+    with pytest.raises(coulombook.DayFaults) as caught:
+        coulombook.tally(folder)
+    assert [one.kind for one in caught.value.stops] == [kind]

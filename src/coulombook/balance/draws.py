@@ -189,7 +189,7 @@ def _part_of(plan: Plan, runs: list[int]) -> Plan:
     unheard = Findings()
     injections = list_injections(part, unheard)
     figures = [plan.figures[run] for run in runs]
-    return make_plan(part, injections, figures, plan.scans, unheard)
+    return make_plan(part, injections, figures, plan.scans, unheard, plan.spectra)
 
 
 def _labels(plan: Plan) -> dict[str, list[Hashable]]:

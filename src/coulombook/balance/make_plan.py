@@ -15,6 +15,7 @@ from coulombook.balance.liquid_plan import Samplings, plan_liquid
 from coulombook.balance.plan import Plan, make_inputs, plan_flow, plan_products
 from coulombook.balance.readings import Day, FloatArray, FlowKind, Run
 from coulombook.balance.scan_verdicts import JudgedScans
+from coulombook.balance.spectra_used import SpectrumFigures
 from coulombook.balance.surface_plan import plan_surface
 from coulombook.balance.trace_figures import TraceFigures, TraceRequest
 from coulombook.cell.headspace import HALF_RANGE
@@ -64,6 +65,7 @@ def make_plan(
     figures: Sequence[TraceFigures],
     scans: JudgedScans,
     findings: Findings,
+    spectra: Sequence[SpectrumFigures | None] = (),
 ) -> Plan:
     """Lay out the day; faults and doubts go to ``findings``."""
     usable = np.concatenate([one.usable for one in figures]) if figures else np.zeros(0, dtype=bool)
@@ -74,6 +76,7 @@ def make_plan(
     return Plan(
         day,
         scans,
+        tuple(spectra),
         tuple(figures),
         curves,
         plan_flow([run.inlet_flow for run in day.runs]),

@@ -19,6 +19,7 @@ from coulombook.balance.gas_plan import GasPlan
 from coulombook.balance.liquid_plan import LiquidPlan
 from coulombook.balance.readings import Day, DaySettings, FloatArray, Flow, FlowKind, OutletFlow, Run, Signal
 from coulombook.balance.scan_verdicts import JudgedScans
+from coulombook.balance.spectra_used import SpectrumFigures
 from coulombook.balance.surface_plan import SurfacePlan
 from coulombook.balance.trace_figures import TraceFigures
 from coulombook.curves.inverse import invert
@@ -83,6 +84,7 @@ class Plan:
 
     day: Day
     scans: JudgedScans
+    spectra: tuple[SpectrumFigures | None, ...]  # in the order of ``day.spectra``
     figures: tuple[TraceFigures, ...]
     curves: CurvesUsed
     inlet: FlowPlan
@@ -168,7 +170,7 @@ def make_inputs(plan: Plan) -> Inputs:
     return build_inputs(
         blocks,
         [*declarations, *assumed_declarations(settings)],
-        [*_curve_errors(plan), *_capacitance_errors(plan)],
+        [*_curve_errors(plan), *_capacitance_errors(plan), *_resistance_errors(plan)],
         ((INJECTION_SCATTER, len(plan.gas.injections.label)), (VIAL_SCATTER, len(plan.liquid.vials))),
     )
 
@@ -405,9 +407,42 @@ def _coefficients(number: int) -> tuple[tuple[str, int], ...]:
 
 
 def _capacitance_errors(plan: Plan) -> list[Correlated]:
-    return [
+    settings = plan.settings
+    value, share = settings.specific_capacitance_farad_per_m2, settings.u_specific_capacitance
+    errors = []
+    # what day.toml declares of it stands in place of the table's own
+    if (
+        value is not None
+        and share > 0
+        and not any(one.quantity == "specific capacitance" for one in settings.declared)
+    ):
+        errors.append(
+            # one error for every electrode held against it, so that it cancels between them
+            Correlated(
+                Source("specific capacitance", DAY),
+                (("specific capacitance", 0),),
+                np.array([[share * value]]),
+            )
+        )
+    return errors + [
         Correlated(Source(name, DAY), (("capacitance scatter", number),), np.array([[u]]))
         for number, one in enumerate(plan.surface.methods)
         for name, u in (("capacitance fit", one.u_scatter), ("capacitance method", one.u_method))
         if np.isfinite(u) and u > 0
+    ]
+
+
+def _resistance_errors(plan: Plan) -> list[Correlated]:
+    """Errors of resistances from spectra, shared by the runs that have them from the same ones."""
+    groups: dict[str, list[int]] = {}
+    for number, run in enumerate(plan.runs):
+        if run.resistance_from and np.isfinite(run.u_resistance_ohm) and run.u_resistance_ohm > 0:
+            groups.setdefault(run.resistance_from, []).append(number)
+    return [
+        Correlated(
+            Source(f"spectrum {files}", DAY),
+            tuple(("resistance", number) for number in numbers),
+            np.array([[plan.runs[number].u_resistance_ohm] for number in numbers]),
+        )
+        for files, numbers in groups.items()
     ]

@@ -92,6 +92,8 @@ class DaySettings:
     feed_co2: float = 1.0
     weighted_signals: bool = True
     specific_capacitance_farad_per_m2: float | None = None
+    u_specific_capacitance: float = 0.0  # of a value of the shipped table, as a fraction
+    specific_capacitance_source: str = ""  # of a value of the shipped table
     smooth_reference: str | None = None
     level_of_confidence: float = 0.95
     unaccounted: float | None = None  # prior standard deviation of a share that nothing measures, a fraction
@@ -125,6 +127,9 @@ class Run:
     carbonate_uptake_mol_per_s: float
     note: str
     origin: RowOrigin
+    resistance_given: bool = True
+    u_resistance_ohm: float = 0.0  # of a resistance that spectra told
+    resistance_from: str = ""  # the spectra; runs with the same ones share the error
 
 
 @dataclass(frozen=True, slots=True)
@@ -189,6 +194,17 @@ class Scan:
     window_high_volt: float | None
     origin: RowOrigin
     purpose: str = ""  # tells sets of scans of one electrode apart: "before", "after"
+
+
+@dataclass(frozen=True, slots=True)
+class Spectrum:
+    """One impedance spectrum: a row of ``spectra``."""
+
+    run: str | None
+    electrode: str | None  # one of the two is given
+    file: str  # path relative to the day folder
+    purpose: str
+    origin: RowOrigin
 
 
 @dataclass(frozen=True, slots=True)
@@ -263,6 +279,7 @@ class Day:
     carried: Mapping[str, Mapping[str, tuple[str, ...]]] = field(
         default_factory=dict
     )  # table -> head -> cells
+    spectra: tuple[Spectrum, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -285,6 +302,14 @@ class Voltammogram:
     cycle: FloatArray | None  # (n_samples,)
 
 
+@dataclass(frozen=True, slots=True, eq=False)
+class SpectrumRecord:
+    """An impedance spectrum, in SI, a capacitive imaginary part negative."""
+
+    frequency_hertz: FloatArray  # (n_points,)
+    impedance_ohm: NDArray[np.complex128]  # (n_points,)
+
+
 __all__ = [
     "Calibration",
     "Check",
@@ -302,6 +327,8 @@ __all__ = [
     "Signal",
     "Species",
     "SpeciesTable",
+    "Spectrum",
+    "SpectrumRecord",
     "StandardSet",
     "Trace",
     "Vial",

@@ -136,6 +136,17 @@ def plan_surface(day: Day, judged_scans: JudgedScans, findings: Findings) -> Sur
     runs = [(number, first[run.electrode]) for number, run in enumerate(day.runs) if run.electrode in first]
     smooth = _smooth_electrode(day, first, findings)
     judged = smooth is not None or day.settings.specific_capacitance_farad_per_m2 is not None
+    if electrodes and smooth is None and day.settings.specific_capacitance_source:
+        value = 100.0 * (day.settings.specific_capacitance_farad_per_m2 or math.nan)  # uF/cm^2
+        source = day.settings.specific_capacitance_source
+        share = 100.0 * day.settings.u_specific_capacitance
+        findings.add(
+            "capacitance-from-table",
+            "[surface]",
+            f"the specific capacitance {value:.3g} uF/cm^2 was taken for {source}; its "
+            f"relative standard uncertainty of {share:.0f} % is one error for all electrodes",
+            "scan a smooth electrode of the same material, and name it as smooth_reference",
+        )
     if electrodes and not judged:
         findings.add(
             "no-roughness",

@@ -9,6 +9,7 @@ import numpy as np
 
 from coulombook.balance.readings import Run
 from coulombook.balance.settle import Settled
+from coulombook.balance.spectra_used import capacitances_of_sets, electrode_of, impedance_capacitances
 from coulombook.balance.verdicts import closures, product_status
 from coulombook.book.tables import Cell, Table
 from coulombook.compare.series import pool_points, series_points
@@ -61,6 +62,7 @@ def enter(
         "injections": _injections(settled),
         "series": _series(settled),
         "surface": _surface(settled),
+        **({"spectra": _spectra(settled)} if settled.plan.day.spectra else {}),
         "calibrations": _calibrations(settled),
         "budget": _budget(settled),
         **(judgements or {}),
@@ -240,6 +242,8 @@ def _series(settled: Settled) -> list[Row]:
 
 def _surface(settled: Settled) -> list[Row]:
     surface, outcome = settled.plan.surface, settled.outcome
+    plan = settled.plan
+    spectra = capacitances_of_sets(surface, impedance_capacitances(plan.day, plan.spectra))
     capacitance = _Measured.of(outcome.capacitance_farad, MILLIFARAD)
     roughness = _Measured.of(outcome.roughness_factor, 1.0)
     return [
@@ -256,9 +260,44 @@ def _surface(settled: Settled) -> list[Row]:
             "form": surface.fits[number].form,
             "capacitance by window / mF": surface.methods[number].by_window * MILLIFARAD,
             "capacitance by charge / mF": surface.methods[number].by_charge * MILLIFARAD,
+            "capacitance by Brug / mF": None if one is None else one.brug_farad * MILLIFARAD,
+            "capacitance by Hsu-Mansfeld / mF": None if one is None else one.hsu_mansfeld_farad * MILLIFARAD,
         }
-        for number, (electrode, purpose) in enumerate(surface.owners)
+        for number, ((electrode, purpose), one) in enumerate(zip(surface.owners, spectra, strict=True))
     ]
+
+
+def _spectra(settled: Settled) -> list[Row]:
+    plan = settled.plan
+    rows: list[Row] = []
+    for spectrum, one in zip(plan.day.spectra, plan.spectra, strict=True):
+        if one is None:
+            continue
+        fit, check = one.fit, one.check
+        blocking = not np.isfinite(fit.transfer_ohm)
+        rows.append(
+            {
+                "file": spectrum.file,
+                "run": spectrum.run,
+                "electrode": electrode_of(spectrum, plan.day),
+                "purpose": spectrum.purpose,
+                "points": fit.points,
+                "resistance / ohm": fit.resistance_ohm,
+                "u(resistance) / ohm": fit.u_resistance_ohm,
+                "charge transfer / ohm": None if blocking else fit.transfer_ohm,
+                "u(charge transfer) / ohm": fit.u_transfer_ohm,
+                "constant phase / F s^(a-1)": fit.admittance,
+                "u(constant phase) / F s^(a-1)": fit.u_admittance,
+                "exponent": fit.alpha,
+                "u(exponent)": fit.u_alpha,
+                "capacitance by Brug / mF": fit.brug_farad * MILLIFARAD,
+                "capacitance by Hsu-Mansfeld / mF": fit.hsu_mansfeld_farad * MILLIFARAD,
+                "misfit / %": fit.misfit * PERCENT,
+                "Kramers-Kronig residual / %": None if check is None else check.residual * PERCENT,
+                "Kramers-Kronig": None if check is None else "passed" if check.sound else "failed",
+            }
+        )
+    return rows
 
 
 def _calibrations(settled: Settled) -> list[Row]:

@@ -39,7 +39,13 @@ SERIES = (
 SURFACE = (
     "electrode", "capacitance / mF", "u(capacitance) / mF", "roughness factor", "u(roughness factor)",
     "linearity", "exponent", "purpose", "u(exponent)", "form", "capacitance by window / mF",
-    "capacitance by charge / mF",
+    "capacitance by charge / mF", "capacitance by Brug / mF", "capacitance by Hsu-Mansfeld / mF",
+)  # fmt: skip
+SPECTRA = (
+    "file", "run", "electrode", "purpose", "points", "resistance / ohm", "u(resistance) / ohm",
+    "charge transfer / ohm", "u(charge transfer) / ohm", "constant phase / F s^(a-1)", "u(constant phase) / F s^(a-1)",
+    "exponent", "u(exponent)", "capacitance by Brug / mF", "capacitance by Hsu-Mansfeld / mF", "misfit / %",
+    "Kramers-Kronig residual / %", "Kramers-Kronig",
 )  # fmt: skip
 CALIBRATIONS = (
     "calibration", "channel", "analyte", "form", "weights", "points", "a0", "u(a0)", "a1", "u(a1)", "a2", "u(a2)",
@@ -76,6 +82,7 @@ TABLES: Mapping[str, tuple[str, ...]] = {
     "injections": INJECTIONS,
     "series": SERIES,
     "surface": SURFACE,
+    "spectra": SPECTRA,
     "calibrations": CALIBRATIONS,
     "budget": BUDGET,
     "closure": CLOSURE,

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Collection, Mapping, Sequence
 from datetime import datetime
 from typing import TypeVar
 
@@ -295,9 +295,13 @@ def declared_flow_kinds(
 
 
 def assumed(
-    table: TypedTable, defaults: Mapping[str, Default], settings: DaySettings, findings: Findings
+    table: TypedTable,
+    defaults: Mapping[str, Default],
+    settings: DaySettings,
+    with_spectra: Collection[str],
+    findings: Findings,
 ) -> None:
-    """Note the defaults that were taken, one finding a column."""
+    """Note the defaults that were taken, one finding a column; runs ``with_spectra`` get their resistance there."""
     total = len(table)
     for quantity, taken, kind in (
         ("temperature", "25 degC", "assumed-default"),
@@ -307,7 +311,11 @@ def assumed(
     ):
         if quantity == "carbonate uptake" and settings.outlet_flow is not OutletFlow.BALANCE:
             continue  # the uptake acts on nothing else
-        missing = sum(value is None for value in table.numbers(quantity))
+        told = with_spectra if quantity == "resistance" else ()
+        missing = sum(
+            value is None and run not in told
+            for value, run in zip(table.numbers(quantity), table.words("run"), strict=True)
+        )
         if not missing or quantity in defaults:
             continue
         runs = f"{missing} of {total} runs" if missing < total else "all runs" if total > 1 else "the run"

@@ -7,7 +7,20 @@ from dataclasses import dataclass, replace
 from functools import partial
 from pathlib import Path
 
-from coulombook.balance.readings import Calibration, Check, Day, Peak, Run, Scan, Signal, Trace, Voltammogram
+from coulombook.balance.readings import (
+    Calibration,
+    Check,
+    Day,
+    Peak,
+    Run,
+    Scan,
+    Signal,
+    Spectrum,
+    SpectrumRecord,
+    Trace,
+    Voltammogram,
+)
+from coulombook.balance.spectra_used import spectra_of_run
 from coulombook.findings import DayFaults, Findings
 from coulombook.intake import crosschecks, records, schema
 from coulombook.intake.calibration import find_calibrations
@@ -26,14 +39,14 @@ from coulombook.intake.settings import DayFile, TraceOptions, read_day_settings
 from coulombook.intake.tables import TypedTable, typed_table
 from coulombook.intake.text import UnreadableText
 from coulombook.intake.toml_text import read_settings
-from coulombook.intake.traces import read_trace, read_voltammogram
+from coulombook.intake.traces import read_spectrum, read_trace, read_voltammogram
 from coulombook.intake.workbook import read_sheets
 from coulombook.species import SpeciesTable, load_species
 
 WORKBOOK = "day.xlsx"
 _TABLE_SUFFIXES = (".csv", ".tsv")
 _TRACE_SUFFIXES = (".csv", ".tsv", ".txt")
-_TABLES = (*schema.DAY_TABLES, schema.SPECTRA)
+_TABLES = tuple(schema.DAY_TABLES)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -76,6 +89,16 @@ class DaySource:
             self._options,
             findings,
             self._long_byte,
+        )
+        if read is None:
+            raise DayFaults(tuple(findings))
+        return read
+
+    def spectrum(self, spectrum: Spectrum) -> SpectrumRecord:
+        """The impedance spectrum of a row of ``spectra``, in SI. Raises `DayFaults` with every fault of the file."""
+        findings = Findings()
+        read = read_spectrum(
+            self._folder, self._folder.root / spectrum.file, self._options, findings, self._long_byte
         )
         if read is None:
             raise DayFaults(tuple(findings))
@@ -174,15 +197,6 @@ def _tables(
             tables[name] = typed_table(grid, columns, findings, given)
     # a workbook that cannot be read may hold any table, and none must be called missing
     there = frozenset(files) | (frozenset(sheets) if read is not None else frozenset(schema.DAY_TABLES))
-    if schema.SPECTRA in there:
-        place = (
-            home.name_of(files[schema.SPECTRA][0])
-            if schema.SPECTRA in files
-            else f"{WORKBOOK}, sheet 'spectra'"
-        )
-        findings.add(
-            "unread-table", place, "impedance spectra are not used by the tally yet; they were left unread"
-        )
     return tables, there
 
 
@@ -288,6 +302,7 @@ def _day(
 
     run_table, gas, vial_table = tables.get("runs"), tables.get("gas"), tables.get("vials")
     liquid, scan_table, check_table = tables.get("liquid"), tables.get("scans"), tables.get("checks")
+    spectrum_table = tables.get("spectra")
     runs = (
         ()
         if run_table is None
@@ -298,12 +313,15 @@ def _day(
     signals = _signals(liquid, vial_table, names, signal_of)
     scans = () if scan_table is None else records.scans(scan_table)
     checks = () if check_table is None else records.checks(check_table, names, channel_of)
+    spectra = () if spectrum_table is None else records.spectra(spectrum_table, findings)
 
     if run_table is not None:
         crosschecks.unique_words(run_table, ("run",), "the run", findings)
     _check_names(tables, findings)
     if scan_table is not None:
-        _scan_files(home, scan_table, long_files, findings)
+        _scan_files(home, scan_table, "voltammogram", long_files, findings)
+    if spectrum_table is not None:
+        _scan_files(home, spectrum_table, "spectrum", long_files, findings)
     if vial_table is not None and liquid is not None:
         broken = frozenset(liquid.words("vial")[place] for place in liquid.broken)
         needed = {"vial", "analyte", "protons", "integral"}
@@ -314,13 +332,15 @@ def _day(
     if run_table is not None:
         crosschecks.starting_times(runs, peaks, checks, run_table, findings)
     if file is not None and run_table is not None:
-        _check_settings(file, run_table, runs, peaks, scans, "scans" in there, calibrations, findings)
+        _check_settings(
+            file, run_table, runs, peaks, scans, "scans" in there, spectra, calibrations, findings
+        )
     if file is None or run_table is None:
         return None, folders, long_files
     carried = {name: dict(table.carried) for name, table in tables.items() if table.carried}
     settings = replace(file.settings, title=file.settings.title or home.root.resolve().name)
     day = Day(home.root.resolve().name, settings, species, runs, peaks, vials, signals, scans, checks,
-              calibrations, carried)  # fmt: skip
+              calibrations, carried, spectra)  # fmt: skip
     return day, folders, long_files
 
 
@@ -358,9 +378,16 @@ def _check_names(tables: Mapping[str, TypedTable], findings: Findings) -> None:
     runs, vials = tables.get("runs"), tables.get("vials")
     gas, liquid = tables.get("gas"), tables.get("liquid")
     run_names = [name for name in runs.words("run") if name] if runs is not None else []
-    for table in (gas, vials):
+    for table in (gas, vials, tables.get("spectra")):
         if table is not None and runs is not None and "run" in runs.heads:
             crosschecks.known_names(table, "run", run_names, "run", "runs", findings)
+    spectra, scans = tables.get("spectra"), tables.get("scans")
+    if spectra is not None and runs is not None and "electrode" in runs.heads:
+        electrodes = [
+            name for one in (runs, scans) if one is not None for name in one.words("electrode") if name
+        ]
+        known = list(dict.fromkeys(electrodes))
+        crosschecks.known_names(spectra, "electrode", known, "electrode", "runs or scans", findings)
     if vials is not None:
         crosschecks.unique_words(vials, ("vial",), "the vial", findings)
         if liquid is not None:
@@ -402,6 +429,7 @@ def _check_settings(
     peaks: Sequence[Peak],
     scans: Sequence[Scan],
     has_scans: bool,
+    spectra: Sequence[Spectrum],
     calibrations: Sequence[Calibration],
     findings: Findings,
 ) -> None:
@@ -412,7 +440,8 @@ def _check_settings(
     crosschecks.flows(settings, runs, peaks, run_table, findings)
     crosschecks.smooth_reference(settings, scans, file, has_scans, findings)
     crosschecks.declared_flow_kinds(settings.declared, file.declared_flow_kinds, runs, findings)
-    crosschecks.assumed(run_table, file.defaults, settings, findings)
+    told = {run.name for run in runs if spectra_of_run(spectra, run.name, run.electrode)}
+    crosschecks.assumed(run_table, file.defaults, settings, told, findings)
     crosschecks.expiry(calibrations, settings, runs, findings)
 
 
@@ -432,15 +461,17 @@ def _trace_names(home: Folder, table: TypedTable, long_files: list[Path], findin
             others = [home.inside(f"traces/{run}{suffix}") for suffix in _TRACE_SUFFIXES]
             path = next((one for one in others if one is not None and is_file(one)), path)
             names[-1] = home.name_of(path)
-        _look_for(home, path, text, table, place, "trace", f"run '{run}'", long_files, findings)
+        _look_for(home, path, text, table, place, "trace", f"run '{run}' has no trace", long_files, findings)
     return names
 
 
-def _scan_files(home: Folder, table: TypedTable, long_files: list[Path], findings: Findings) -> None:
+def _scan_files(
+    home: Folder, table: TypedTable, kind: str, long_files: list[Path], findings: Findings
+) -> None:
     for place, given in enumerate(table.words("file")):
         if given:
             path = home.inside(given)
-            _look_for(home, path, given, table, place, "file", "the row", long_files, findings)
+            _look_for(home, path, given, table, place, "file", f"the row has no {kind}", long_files, findings)
 
 
 def _look_for(
@@ -461,7 +492,7 @@ def _look_for(
         near = ""
         if is_folder(path.parent) and home.holds(path.parent):
             near = did_you_mean(path.name, sorted(one.name for one in path.parent.iterdir()))
-        findings.add("missing-file", where, f"{what} has no {'trace' if quantity == 'trace' else 'voltammogram'}",
+        findings.add("missing-file", where, what,
                      f"add the file, or correct its name{near}", found=f"no file '{text}'",
                      expected=f"a file '{text}' in the day folder")  # fmt: skip
     else:

@@ -57,6 +57,9 @@ combine_signals = "weighted"
 # Capacitance of the smooth material, or an electrode of scans that counts as roughness 1:
 # specific_capacitance = "28 uF/cm^2"
 # smooth_reference = "polished-1"
+# ... or the material and its electrolyte, for a value of the shipped table:
+# material = "copper"
+# electrolyte = "0.1 mol/L KHCO3"
 
 [balance]
 # Level of confidence of the verdict on the charge balance
@@ -81,7 +84,7 @@ level = 0.95
 # phase = "liquid"
 """
 
-_OPTIONAL = ("gas", "vials", "liquid", "scans", "checks")
+_OPTIONAL = ("gas", "vials", "liquid", "scans", "checks", "spectra")
 
 
 def write_new_day(folder: Path, workbook: bool) -> tuple[Path, ...]:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterator, Sequence
 
-from coulombook.balance.readings import Check, Flow, FlowKind, Peak, Run, Scan, Signal, Vial
+from coulombook.balance.readings import Check, Flow, FlowKind, Peak, Run, Scan, Signal, Spectrum, Vial
 from coulombook.findings import Findings
 from coulombook.intake.files import did_you_mean
 from coulombook.intake.tables import TypedTable
@@ -118,6 +118,7 @@ def runs(table: TypedTable, traces: Sequence[str]) -> tuple[Run, ...]:
             carbonate_uptake_mol_per_s=_number(uptakes, place, 0.0),
             note=notes[place],
             origin=table.row_origin(place),
+            resistance_given=resistances[place] is not None,
         )
         for place in _whole(table)
     )
@@ -248,6 +249,29 @@ def scans(table: TypedTable) -> tuple[Scan, ...]:
         found.append(
             Scan(electrodes[place], files[place].replace("\\", "/"), rate, area, cycles[place], lows[place],
                  highs[place], table.row_origin(place), " ".join(purposes[place].split()))
+        )  # fmt: skip
+    return tuple(found)
+
+
+def spectra(table: TypedTable, findings: Findings) -> tuple[Spectrum, ...]:
+    """Impedance spectra."""
+    runs, electrodes = table.words("run"), table.words("electrode")
+    files, purposes = table.words("file"), table.words("purpose")
+    found: list[Spectrum] = []
+    for place in _whole(table):
+        if not runs[place] and not electrodes[place]:
+            findings.add(
+                "missing-value",
+                table.where(place, "electrode"),
+                "the spectrum has no run and no electrode",
+                "fill in one of the two",
+                found="nothing",
+                expected="a run of runs, or an electrode",
+            )
+            continue
+        found.append(
+            Spectrum(runs[place] or None, electrodes[place] or None, files[place].replace("\\", "/"),
+                     " ".join(purposes[place].split()), table.row_origin(place))
         )  # fmt: skip
     return tuple(found)
 

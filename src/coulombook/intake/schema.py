@@ -225,9 +225,18 @@ CHECKS = Schema(
         number("peak area / pA s", None, ABOVE_ZERO, needed=True, raw=True, synonyms=("area",)),
     ),
 )  # fmt: skip
-DAY_TABLES: Mapping[str, Schema] = {one.name: one for one in (RUNS, GAS, VIALS, LIQUID, SCANS, CHECKS)}
-# of the contract, read by no part of the tally yet
-SPECTRA = "spectra"
+SPECTRA = Schema(
+    "spectra",
+    (
+        words("run"),
+        words("electrode"),
+        words("file", needed=True),
+        words("purpose"),
+    ),
+)
+DAY_TABLES: Mapping[str, Schema] = {
+    one.name: one for one in (RUNS, GAS, VIALS, LIQUID, SCANS, CHECKS, SPECTRA)
+}
 
 GAS_STANDARDS = Schema(
     "standards",
@@ -271,5 +280,13 @@ VOLTAMMOGRAM = Schema(
         number("j / mA cm^-2", "current density", synonyms=("current density",)),
         number("t / s", "time", synonyms=("time",)),
         number("cycle"),
+    ),
+)
+SPECTRUM = Schema(
+    "spectrum",
+    (
+        number("f / Hz", "frequency", needed=True, synonyms=("frequency",)),
+        number("Zre / ohm", "resistance", needed=True, synonyms=("real part",)),
+        number("Zim / ohm", "resistance", needed=True, synonyms=("imaginary part",)),
     ),
 )

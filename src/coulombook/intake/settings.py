@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from datetime import date, datetime
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from coulombook.balance.readings import DaySettings, Declared, OutletFlow
 from coulombook.findings import Findings
@@ -16,6 +16,9 @@ from coulombook.intake.tables import Default, instant_of, unit_conversion
 from coulombook.intake.toml_text import Section, Settings, fold, section, shown
 from coulombook.species import Species, SpeciesTable, parse_formula
 from coulombook.units import UnitError, conversion, is_of_ordinary_size, parse_head, parse_quantity
+
+if TYPE_CHECKING:
+    from coulombook.cell.specific_capacitance import SpecificCapacitance
 
 _SECTIONS = (
     "day", "reference", "defaults", "gas", "liquid", "surface", "balance", "read", "uncertainty", "species",
@@ -246,17 +249,67 @@ def _liquid(part: Section, values: DaySettings) -> DaySettings:
 def _surface(part: Section, values: DaySettings) -> DaySettings:
     specific = _positive(part, "specific_capacitance", "capacitance per area", "28 uF/cm^2")
     smooth = part.text("smooth_reference", "the name of an electrode of scans")
+    material = part.text("material", "a material of the shipped table, such as 'copper'")
+    electrolyte = part.text("electrolyte", "an electrolyte, such as '0.1 mol/L KHCO3'")
     part.report_unknown()
-    if part.has("specific_capacitance") and part.has("smooth_reference"):
+    given = [key for key in ("specific_capacitance", "smooth_reference", "material") if part.has(key)]
+    if len(given) > 1:
         part.findings.add(
             "not-allowed",
-            part.where("smooth_reference"),
+            part.where(given[-1]),
             "two references of roughness are given",
             "delete one of them",
-            found="specific_capacitance and smooth_reference",
+            found=" and ".join(given),
             expected="one of them",
         )
+    shipped = _of_table(part, material, electrolyte)
+    if shipped is not None and specific is None:
+        return replace(
+            values,
+            specific_capacitance_farad_per_m2=shipped.farad_per_m2,
+            u_specific_capacitance=shipped.relative_uncertainty,
+            specific_capacitance_source=f"{shipped.material} in {shipped.electrolyte}, {shipped.source}",
+            smooth_reference=smooth,
+        )
     return replace(values, specific_capacitance_farad_per_m2=specific, smooth_reference=smooth)
+
+
+def _of_table(part: Section, material: str | None, electrolyte: str | None) -> SpecificCapacitance | None:
+    """The value of the shipped table for the day's material and electrolyte; None without them, or with a fault."""
+    from coulombook.cell.specific_capacitance import (
+        find_electrolyte,
+        find_material,
+        known_electrolytes,
+        known_materials,
+        specific_capacitance,
+    )
+
+    if not part.has("material") and not part.has("electrolyte"):
+        return None
+    for key, other in (("material", "electrolyte"), ("electrolyte", "material")):
+        if not part.has(key):
+            part.findings.add("missing-value", part.where(other), f"'{other}' is given without '{key}'",
+                              f"add the key '{key}'", found="nothing", expected="both, or neither")  # fmt: skip
+    if material is None or electrolyte is None:
+        return None
+    own, kind = find_material(material), find_electrolyte(electrolyte)
+    found = specific_capacitance(material, electrolyte)
+    if found is None:
+        key, text, known = (
+            ("material", material, known_materials())
+            if own is None
+            else ("electrolyte", electrolyte, known_electrolytes(own))
+        )
+        part.findings.add(
+            "unknown-name",
+            part.where(key),
+            f"the shipped table has no specific capacitance of this {key}"
+            + (f" for {own}" if own is not None and kind is not None else ""),
+            f"give specific_capacitance or smooth_reference{did_you_mean(text, known)}",
+            found=f"'{text}'",
+            expected=", ".join(f"'{one}'" for one in known),
+        )
+    return found
 
 
 def _balance(part: Section, values: DaySettings) -> DaySettings:

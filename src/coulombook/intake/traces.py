@@ -15,7 +15,7 @@ from typing import Any
 
 import numpy as np
 
-from coulombook.balance.readings import FloatArray, Trace, Voltammogram
+from coulombook.balance.readings import FloatArray, SpectrumRecord, Trace, Voltammogram
 from coulombook.findings import Findings, Origin
 from coulombook.intake import schema, text
 from coulombook.intake.files import Folder, report_outside, unreadable
@@ -107,6 +107,19 @@ def read_voltammogram(
     return Voltammogram(values["e"], values["i"], values.get("t"), values.get("cycle"))
 
 
+def read_spectrum(
+    folder: Folder, path: Path, options: TraceOptions, findings: Findings, all_byte: int = 0
+) -> SpectrumRecord | None:
+    """An impedance spectrum in SI, or None after a fault."""
+    read = _read(folder, path, schema.SPECTRUM, options, "broken-spectrum", 1.0, all_byte, findings)
+    if read is None:
+        return None
+    values, _ = read
+    impedance = values["zre"] + 1j * values["zim"]
+    impedance.setflags(write=False)
+    return SpectrumRecord(values["f"], impedance)
+
+
 def _read(
     folder: Folder,
     path: Path,
@@ -146,7 +159,7 @@ def _read(
     if values is None:
         findings.extend(own)
         return None
-    if "i" not in values:
+    if "i" in table.by_quantity and "i" not in values:
         values["i"] = values.pop("j")
         how["i"] = how["j"] * area_m2
     values.pop("j", None)
@@ -234,7 +247,7 @@ def _find_heads(lines: Sequence[str], table: Schema, options: TraceOptions) -> t
         if not known:
             return 0.0
         needed = {column.quantity for column in table.needed()}
-        if needed <= known and known & {"i", "j"}:
+        if needed <= known and ("i" not in table.by_quantity or known & {"i", "j"}):
             return 1.0
         return len(known) / (len(table.columns) + 1)
 
@@ -365,7 +378,7 @@ def _report_no_heads(
     heads = [head for head in text.split_line(lines[place], separator) if head]
     known = {_quantity_of(head, table, options) for head in heads}
     missing = [column for column in table.needed() if column.quantity not in known]
-    if not known & {"i", "j"}:
+    if "i" in table.by_quantity and not known & {"i", "j"}:
         missing.append(table.by_quantity["i"])
     for column in missing:
         names = [head for head in heads if _quantity_of(head, table, options) is None]
@@ -397,9 +410,10 @@ def _report_empty(findings: Findings, broken: str, name: str) -> None:
         broken,
         name,
         "the file holds no readings",
-        "put in the log of this run, or delete its row"
-        if broken == "broken-trace"
-        else "put in the voltammogram",
+        {
+            "broken-trace": "put in the log of this run, or delete its row",
+            "broken-scan": "put in the voltammogram",
+        }.get(broken, "put in the spectrum"),
         found="no rows of numbers",
         expected="a row of heads and rows of numbers",
     )
