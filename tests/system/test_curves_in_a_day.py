@@ -115,6 +115,12 @@ def test_saturation_of_counted_protons_is_corrected(tmp_path: Path) -> None:
     assert found == pytest.approx(ratio, rel=1e-12)
 
 
+def test_t1_without_repetition_time_is_a_fault(tmp_path: Path) -> None:
+    with pytest.raises(coulombook.DayFaults) as caught:
+        _liquid(tmp_path, "v1,DMSO,CH3,6,600,\nv1,formate,CH,1,250,9\n", ",T1 / s")
+    assert [(one.kind, one.where) for one in caught.value.stops] == [("missing-value", "liquid.csv, row 3")]
+
+
 def test_uncertainty_of_t1_travels_into_the_amount(tmp_path: Path) -> None:
     head = ",T1 / s,repetition time / s,flip angle / deg"
     declared = '[[uncertainty]]\nquantity = "T1"\nstandard = "10 %"\nshared = "reading"\n'

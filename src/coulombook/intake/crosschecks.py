@@ -138,6 +138,20 @@ def _window(findings: Findings, origin: RowOrigin, quantity: str, found: str, ex
     )
 
 
+def relaxation(signals: Sequence[Signal], findings: Findings) -> None:
+    """Fault signals with a T1 but no repetition time: how far they were saturated cannot be told."""
+    for signal in signals:
+        if signal.relaxation_second is not None and signal.repetition_second is None:
+            findings.add(
+                "missing-value",
+                signal.origin.of("repetition time"),
+                f"{signal.analyte} {signal.signal} has a T1 but no repetition time",
+                "fill in the repetition time, or leave T1 blank: saturation needs both",
+                found=f"T1 of {signal.relaxation_second:g} s alone",
+                expected="a column 'repetition time / s' with a number above zero",
+            )
+
+
 def flows(
     settings: DaySettings, runs: Sequence[Run], peaks: Sequence[Peak], table: TypedTable, findings: Findings
 ) -> None:

@@ -327,6 +327,7 @@ def _day(
         needed = {"vial", "analyte", "protons", "integral"}
         if needed <= liquid.heads.keys() and not needed & liquid.unread:
             crosschecks.standards(vials, signals, broken, findings)
+        crosschecks.relaxation(signals, findings)
     _check_doubles(peaks, signals, scans, checks, findings)
     crosschecks.windows(runs, scans, findings)
     if run_table is not None:
