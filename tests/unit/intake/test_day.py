@@ -272,7 +272,10 @@ def test_each_outlet_flow_needs_its_own_flow(open_changed: Open, outlet: str, ne
 
 def test_a_table_of_unknown_name_is_noted_with_the_nearest(open_changed: Open) -> None:
     opened = open_changed({"gass.csv": GAS, "potentials.csv": "file,run\n"})
-    assert [one.where for one in opened.findings if one.kind == "unread-table"] == ["gass.csv", "potentials.csv"]
+    assert [one.where for one in opened.findings if one.kind == "unread-table"] == [
+        "gass.csv",
+        "potentials.csv",
+    ]
     assert next(iter(opened.findings)).mend == "did you mean 'gas'?"
     assert opened.source.day is not None
 

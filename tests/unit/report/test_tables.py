@@ -88,10 +88,9 @@ def test_an_absent_value_is_an_empty_cell() -> None:
     assert csv_text(table("a", None, "b")) == "head 0,head 1,head 2\na,,b\n"
     heads = TABLES["surface"]
     assert heads[0] == "electrode"
-    assert (
-        csv_text(Table.of("surface", [{"electrode": "m1", "linearity": math.nan}])).splitlines()[1]
-        == "m1" + "," * (len(heads) - 1)
-    )
+    assert csv_text(Table.of("surface", [{"electrode": "m1", "linearity": math.nan}])).splitlines()[
+        1
+    ] == "m1" + "," * (len(heads) - 1)
 
 
 def test_commas_quotes_and_line_breaks_are_quoted_as_in_rfc_4180() -> None:
