@@ -26,6 +26,7 @@ TOLD_APART = 2.0 * np.log(10.0)
 PRIOR_SD = 0.10  # of a relative error or a lost share
 _ACCUSED_BY_CHANCE = 0.05
 _CHANCE_DAYS = 1000
+_CHANCE_TURNS = 4  # days of many causes would fill the memory all at once
 # chance gives the best of a hundred candidates 2 ln of a Bayes factor of this size in less than one day in a thousand
 _BEYOND_CHANCE = 25.0
 _SEED = 20430518
@@ -229,4 +230,5 @@ def _chance_gain(whitened: _Whitened, causes: Sequence[Cause], scatter: int) -> 
     """The evidence that the best of all causes exceeds by chance in 5 % of days without any cause."""
     spread = 1.0 / np.sqrt(whitened.weights[scatter])
     r = (np.random.default_rng(_SEED).standard_normal((_CHANCE_DAYS, len(spread))) * spread) @ whitened.axes.T
-    return float(np.quantile(whitened.gain(r, causes).max(axis=1), 1.0 - _ACCUSED_BY_CHANCE))
+    best = [whitened.gain(days, causes).max(axis=1) for days in np.array_split(r, _CHANCE_TURNS)]
+    return float(np.quantile(np.concatenate(best), 1.0 - _ACCUSED_BY_CHANCE))
