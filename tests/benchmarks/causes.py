@@ -15,7 +15,7 @@ import numpy as np
 
 from coulombook.balance.causes import Cause, candidate_causes, names
 from coulombook.balance.evaluate import evaluate
-from coulombook.balance.explain import Explained, rank
+from coulombook.balance.explain import CauseModel, Explained
 from coulombook.balance.settle import Settled
 from coulombook.findings import Findings
 from coulombook.intake.day import open_day
@@ -71,11 +71,8 @@ def shared_causes(settled: Settled) -> list[Cause]:
     return [cause for cause in candidate_causes(settled) if cause.where not in runs]
 
 
-def judge(residual: np.ndarray, settled: Settled, causes: list[Cause], truth: Cause | None) -> Verdict:
-    """Rank the causes of one day and hold the ranking against the truth."""
-    total = settled.outcome.total
-    assert isinstance(total, Linearised)
-    found: Explained = rank(residual, covariance(total), causes)
+def judge(found: Explained, causes: list[Cause], truth: Cause | None) -> Verdict:
+    """Hold the ranking of one day against the truth."""
     best = found.ranked[0]
     label = f"{best.cause} ({best.where})" if best.where else best.cause
     if truth is None:
@@ -84,9 +81,11 @@ def judge(residual: np.ndarray, settled: Settled, causes: list[Cause], truth: Ca
     # a constant and a growing unmeasured share are two shapes of one cause
     alike = {name for name, cause in zip(names(causes), causes, strict=True) if cause.kind == truth.kind}
     accepted = alike if truth.kind == "unmeasured-product" else {true}
-    own = next(one for one in found.ranked if (one.cause, one.where) == (truth.kind, truth.where))
+    # a share that would have to be gained is not ranked at all: its estimate counts as missed
+    ranked = (one for one in found.ranked if (one.cause, one.where) == (truth.kind, truth.where))
+    own = next(ranked, None)
     hit = not found.closes and bool(accepted & {label, *best.apart})
-    return Verdict(not found.closes, label, hit, own.estimate, own.u)
+    return Verdict(not found.closes, label, hit, own.estimate if own else 0.0, own.u if own else 0.0)
 
 
 def simulate(
@@ -99,7 +98,10 @@ def simulate(
     residuals = noise(settled, days, seed)
     if truth is not None:
         residuals = residuals + size * truth.pattern.sum(axis=1)
-    return [judge(residual, settled, causes, truth) for residual in residuals]
+    total = settled.outcome.total
+    assert isinstance(total, Linearised)
+    model = CauseModel(covariance(total), causes)
+    return [judge(model.rank(residual), causes, truth) for residual in residuals]
 
 
 def main() -> None:

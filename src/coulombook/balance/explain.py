@@ -166,47 +166,73 @@ def _of_the_quantity(one: Explanation) -> Explanation:
 
 def rank(residual: FloatArray, v: FloatArray, causes: Sequence[Cause]) -> Explained:
     """Fit and rank causes of residuals (R,) with covariance v (R, R)."""
-    n = len(residual)
-    if n == 0:
-        return Explained((), True, 0.0)
-    whitened = _Whitened(v)
-    gains = whitened.gain(residual[None, :], causes)[0].tolist()
-    scatter = int(whitened.deviance(residual[None, :])[0].argmin())
-    best = max(gains, default=0.0)
-    closes = best <= 0 or (best < _BEYOND_CHANCE and best <= _chance_gain(whitened, causes, scatter))
-    fits = whitened.estimates(residual, causes)
-    labels = names(causes)
-    alike = _of_one_pattern(causes)
-    # a share that would have to be gained, not lost, explains nothing
-    possible = [
-        number for number, cause in enumerate(causes) if not (cause.only_positive and fits[number][0] <= 0)
-    ]
-    order = sorted(possible, key=lambda number: -gains[number])
-    ranked = []
-    for number in order:
-        near = tuple(
-            labels[other]
-            for other in order
-            if other != number
-            and gains[number] > 0
-            and (
-                abs(gains[other] - gains[number]) < TOLD_APART or (alike[number, other] and gains[other] > 0)
+    return CauseModel(v, causes).rank(residual)
+
+
+class CauseModel:
+    """The causes of a day with the covariance of its residuals: made once, it ranks any residuals (R,) of that day."""
+
+    def __init__(self, v: FloatArray, causes: Sequence[Cause]) -> None:
+        self._causes = causes
+        self._whitened = _Whitened(v)
+        self._chance: dict[int, float] = {}
+
+    def rank(self, residual: FloatArray) -> Explained:
+        """Fit and rank the causes; see the module's text."""
+        if len(residual) == 0:
+            return Explained((), True, 0.0)
+        causes, whitened = self._causes, self._whitened
+        gains = whitened.gain(residual[None, :], causes)[0].tolist()
+        scatter = int(whitened.deviance(residual[None, :])[0].argmin())
+        best = max(gains, default=0.0)
+        closes = best <= 0 or (best < _BEYOND_CHANCE and best <= self._chance_gain(scatter))
+        fits = whitened.estimates(residual, causes)
+        labels = names(causes)
+        alike = _of_one_pattern(causes)
+        # a share that would have to be gained, not lost, explains nothing
+        possible = [
+            number
+            for number, cause in enumerate(causes)
+            if not (cause.only_positive and fits[number][0] <= 0)
+        ]
+        order = sorted(possible, key=lambda number: -gains[number])
+        ranked = []
+        for number in order:
+            near = tuple(
+                labels[other]
+                for other in order
+                if other != number
+                and gains[number] > 0
+                and (
+                    abs(gains[other] - gains[number]) < TOLD_APART
+                    or (alike[number, other] and gains[other] > 0)
+                )
             )
-        )
-        ranked.append(
-            Explanation(
-                causes[number].kind,
-                causes[number].where,
-                *fits[number],
-                gains[number],
-                near,
-                causes[number].bench_test,
+            ranked.append(
+                Explanation(
+                    causes[number].kind,
+                    causes[number].where,
+                    *fits[number],
+                    gains[number],
+                    near,
+                    causes[number].bench_test,
+                )
             )
-        )
-    nothing = Explanation("none", "", 0.0, 0.0, 0.0, (), "")
-    place_of_none = 0 if closes else sum(gains[number] > 0 for number in order)
-    ranked.insert(place_of_none, nothing)
-    return Explained(tuple(ranked), closes, float(_SCATTERS[scatter]))
+        nothing = Explanation("none", "", 0.0, 0.0, 0.0, (), "")
+        place_of_none = 0 if closes else sum(gains[number] > 0 for number in order)
+        ranked.insert(place_of_none, nothing)
+        return Explained(tuple(ranked), closes, float(_SCATTERS[scatter]))
+
+    def _chance_gain(self, scatter: int) -> float:
+        """The evidence that the best of all causes exceeds by chance in 5 % of days without any cause."""
+        if scatter not in self._chance:
+            whitened = self._whitened
+            spread = 1.0 / np.sqrt(whitened.weights[scatter])
+            normals = np.random.default_rng(_SEED).standard_normal((_CHANCE_DAYS, len(spread)))
+            turns = np.array_split((normals * spread) @ whitened.axes.T, _CHANCE_TURNS)
+            best = np.concatenate([whitened.gain(days, self._causes).max(axis=1) for days in turns])
+            self._chance[scatter] = float(np.quantile(best, 1.0 - _ACCUSED_BY_CHANCE))
+        return self._chance[scatter]
 
 
 # patterns whose directions agree to this cosine differ by less than the readings could ever show
@@ -224,11 +250,3 @@ def _of_one_pattern(causes: Sequence[Cause]) -> NDArray[np.bool_]:
     same: NDArray[np.bool_] = np.abs(direction.T @ direction) >= _SAME_DIRECTION
     same &= single & single[:, None]
     return same
-
-
-def _chance_gain(whitened: _Whitened, causes: Sequence[Cause], scatter: int) -> float:
-    """The evidence that the best of all causes exceeds by chance in 5 % of days without any cause."""
-    spread = 1.0 / np.sqrt(whitened.weights[scatter])
-    r = (np.random.default_rng(_SEED).standard_normal((_CHANCE_DAYS, len(spread))) * spread) @ whitened.axes.T
-    best = [whitened.gain(days, causes).max(axis=1) for days in np.array_split(r, _CHANCE_TURNS)]
-    return float(np.quantile(np.concatenate(best), 1.0 - _ACCUSED_BY_CHANCE))
