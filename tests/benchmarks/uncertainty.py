@@ -52,7 +52,7 @@ def ours(plan: Plan) -> Result:
         standard_uncertainty(efficiency),
         standard_uncertainty(outcome.total),
         standard_uncertainty(outcome.ratio),
-        [covariance(gather(efficiency, held)) for held in rows],  # type: ignore[arg-type]
+        [covariance(gather(efficiency, held)) for held in rows],  # type: ignore[arg-type] # Linearised here
     )
 
 

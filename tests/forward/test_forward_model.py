@@ -36,7 +36,7 @@ def _hold(**changes: object) -> Hold:
         "inlet_mol_per_s": 14.871678e-6,
         "injections_second": (1800.0,),
     }
-    return Hold(**{**plain, **changes})  # type: ignore[arg-type]
+    return Hold(**{**plain, **changes})  # type: ignore[arg-type] # keywords by name
 
 
 def test_integral_of_a_ramp_is_its_triangle() -> None:

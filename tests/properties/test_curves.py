@@ -43,10 +43,10 @@ class Points:
         return {"u_x": self.u_x, "parent": self.parent, "u_parent": self.u_parent}
 
     def fit(self) -> Curve:
-        return fit_curve(self.x, self.y, self.form, self.weights, **self.stated())  # type: ignore[arg-type]
+        return fit_curve(self.x, self.y, self.form, self.weights, **self.stated())  # type: ignore[arg-type] # keywords
 
     def judge(self) -> Judgement:
-        return judge(self.fit(), self.x, self.y, **self.stated())  # type: ignore[arg-type]
+        return judge(self.fit(), self.x, self.y, **self.stated())  # type: ignore[arg-type] # keywords
 
     def scaled(self, of_x: float, of_y: float) -> Points:
         u_x = None if self.u_x is None else of_x * self.u_x
@@ -145,7 +145,7 @@ def test_units_of_x_and_y_change_nothing_but_the_units(drawn: Points, of_x: int,
 @given(points(), st.randoms(use_true_random=False))
 def test_order_of_the_points_does_not_matter(drawn: Points, random: object) -> None:
     order = np.arange(drawn.x.size)
-    random.shuffle(order)  # type: ignore[attr-defined]
+    random.shuffle(order)  # type: ignore[attr-defined] # hypothesis gives a Random
     other = drawn.taken(order)
     same_curve(drawn.fit(), other.fit(), np.ones(3))
     same_judgement(drawn.judge(), other.judge(), order)

@@ -62,11 +62,11 @@ class World:
             if self.certificate
             else {}
         )
-        errors = standard_errors(x, **stated)  # type: ignore[arg-type]
+        errors = standard_errors(x, **stated)  # type: ignore[arg-type] # keywords
         for _ in range(count):
             true_x = x + errors @ rng.standard_normal(errors.shape[1])
             y = self.mean(true_x) + self.sd(true_x) * rng.standard_normal(x.size)
-            yield rng, fit_curve(x, y, self.form, self.weights, **stated)  # type: ignore[arg-type]
+            yield rng, fit_curve(x, y, self.form, self.weights, **stated)  # type: ignore[arg-type] # keywords
 
 
 def world(form: str, weights: str) -> World:

@@ -364,12 +364,12 @@ def _points(axes: object, drawn: Picture, values: FloatArray, *, labels: bool) -
         usual[drawn.outlier] = False
     style = {"ls": "none", "ms": 4.5, "zorder": 3}
     if usual.any():
-        axes.plot(  # type: ignore[attr-defined]
+        axes.plot(  # type: ignore[attr-defined] # matplotlib is loaded late; its Axes stand here as object
             drawn.x[usual], values[usual], marker="o", mfc="white", mec="black", **style,
             label="standard" if labels else None,
         )  # fmt: skip
     if drawn.outlier is not None:
-        axes.plot(  # type: ignore[attr-defined]
+        axes.plot(  # type: ignore[attr-defined] # matplotlib is loaded late; its Axes stand here as object
             drawn.x[~usual], values[~usual], marker="X", color=_ODD, **{**style, "ms": 7},
             label="outlying standard" if labels else None,
         )  # fmt: skip
