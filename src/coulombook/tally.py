@@ -26,6 +26,7 @@ from coulombook.balance.spectra_used import (
     use_spectra,
 )
 from coulombook.balance.trace_figures import TraceFigures, TraceRequest, figures_of
+from coulombook.balance.trace_picture import TracePicture, picture_of
 from coulombook.balance.verdicts import (
     closures,
     product_status,
@@ -105,7 +106,8 @@ def tally(
     folder, places = _folders(path, calibrations)
     findings = Findings()
     source = open_day(folder, places, findings)
-    settled = settle_day(source, findings, progress, for_draws=draws > 0)
+    pictures: dict[int, TracePicture] = {}
+    settled = settle_day(source, findings, progress, for_draws=draws > 0, pictures=pictures)
     findings.raise_stops()
     assert settled is not None  # without faults there is an account
     assert source.day is not None
@@ -122,6 +124,8 @@ def tally(
             "seed": str(seed),
             "reconcile": "yes" if reconcile else "no",
         },
+        settled,
+        tuple(pictures[number] for number in range(len(source.day.runs))),
     )
 
 
@@ -190,11 +194,17 @@ def _silent(what: str, done: int, of: int) -> None:
 
 
 def settle_day(
-    source: DaySource, findings: Findings, progress: Progress | None = None, *, for_draws: bool = False
+    source: DaySource,
+    findings: Findings,
+    progress: Progress | None = None,
+    *,
+    for_draws: bool = False,
+    pictures: dict[int, TracePicture] | None = None,
 ) -> Settled | None:
     """Everything between the tables and the book; None when faults stand in the way.
 
-    ``for_draws``: the settled day will be drawn (`draw_day`).
+    ``for_draws``: the settled day will be drawn (`draw_day`). ``pictures`` is filled with those of the logs, by the
+    places of their runs.
     """
     progress = progress or _silent
     day = source.day
@@ -202,7 +212,7 @@ def settle_day(
         return None
     injections, samplings = list_injections(day, findings), list_samplings(day)
     requests = trace_requests(day, injections, samplings)
-    figures = _read_traces(source, day, dict(enumerate(requests)), findings, progress)
+    figures = _read_traces(source, day, dict(enumerate(requests)), findings, progress, pictures)
     scans = judge_scans(day, _read_scans(source, day, findings, progress), findings)
     spectra = _read_spectra(source, day, findings, progress)
     day = use_spectra(day, spectra, findings)
@@ -231,7 +241,12 @@ def settle_day(
 
 
 def _read_traces(
-    source: DaySource, day: Day, requests: dict[int, TraceRequest], findings: Findings, progress: Progress
+    source: DaySource,
+    day: Day,
+    requests: dict[int, TraceRequest],
+    findings: Findings,
+    progress: Progress,
+    pictures: dict[int, TracePicture] | None = None,
 ) -> dict[int, TraceFigures]:
     """Figures of the logs asked for; a log with faults is missing from the result."""
 
@@ -242,6 +257,8 @@ def _read_traces(
             if _report_window(run, trace.time_second, own):
                 return own
             figures = figures_of(trace, requests[number])
+            if pictures is not None:
+                pictures[number] = picture_of(trace)
         except DayFaults as faults:
             own.extend(faults.findings)
             return own

@@ -15,6 +15,9 @@ from coulombook.findings import Finding
 if TYPE_CHECKING:
     import pandas as pd
 
+    from coulombook.balance.settle import Settled
+    from coulombook.balance.trace_picture import TracePicture
+
 Cell = str | float | int | None
 
 # The heads of every table, in the order of the files: the contract with readers of the results.
@@ -160,7 +163,8 @@ class Book:
     """Everything a tally produced.
 
     The attributes `ledger`, `summary`, `injections`, `series`, `surface` and `calibrations` are pandas frames;
-    `tables` holds the same as plain `Table` records.
+    `tables` holds the same as plain `Table` records. What they were computed from is in ``settled``, with the logs as
+    they are drawn in ``pictures``, in the order of the runs; a book without them shows its tables alone.
     """
 
     day: str
@@ -169,6 +173,8 @@ class Book:
     findings: tuple[Finding, ...]
     inputs: tuple[InputFile, ...]
     options: Mapping[str, str]
+    settled: Settled | None = None
+    pictures: tuple[TracePicture, ...] = ()
 
     @property
     def ledger(self) -> pd.DataFrame:
