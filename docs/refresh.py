@@ -10,7 +10,7 @@ of a document, in a folder of its own that holds the example days and their cali
   directly is what it prints;
 - a block with ``file=PATH`` behind its language: written to that file.
 
-Every other block is left alone.
+Every other block is left alone. The columns of the tables are described from the program's own words.
 """
 
 from __future__ import annotations
@@ -29,7 +29,10 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
 
+from coulombook.book.columns import about_tables
+
 ROOT = Path(__file__).resolve().parents[1]
+RESULTS = ROOT / "docs" / "results.md"
 PICTURE = ROOT / "docs" / "images" / "tally.svg"
 PICTURED = "coulombook tally example_experiments/2043-05-18-mesh-foil-foam"
 WIDTH = 100
@@ -188,6 +191,21 @@ def refreshed(document: str, folder: Path) -> str:
     return document
 
 
+def with_columns(document: str) -> str:
+    """The document of the results with the columns of every table as the program describes them."""
+    for name, about in about_tables().items():
+        rows = "".join(f"| `{one.head}` | {one.meaning} |\n" for one in about.columns)
+        opening = (
+            rf"(^## {name}\.csv\n(?:(?!^## ).*\n)*?\| column \| meaning \|\n\| --- \| --- \|\n)(?:\|.*\n)*"
+        )
+        document, found = re.subn(
+            opening, lambda head, rows=rows: head[1] + rows, document, count=1, flags=re.MULTILINE
+        )
+        if not found:
+            raise ValueError(f"the document of the results has no table of columns under '## {name}.csv'")
+    return document
+
+
 def picture(folder: Path) -> str:
     """The tables of the example day as an SVG drawing."""
     from rich.console import Console
@@ -231,6 +249,7 @@ def _by_words(text: re.Match[str]) -> str:
 
 def main() -> None:
     """Refresh every document and the picture."""
+    RESULTS.write_text(with_columns(RESULTS.read_text(encoding="utf-8")), encoding="utf-8")
     for path in documents():
         document = path.read_text(encoding="utf-8")
         if not runnable(document):

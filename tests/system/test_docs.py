@@ -328,6 +328,11 @@ def test_results_list_every_column_of_a_table(name: str) -> None:
     assert [head for row in rows for head in quoted(row["column"])] == list(TABLES[name])
 
 
+def test_results_describe_the_columns_in_the_words_of_the_program() -> None:
+    document = text_of("docs/results.md")
+    assert refresh.with_columns(document) == document
+
+
 def test_results_explain_every_status_and_verdict() -> None:
     told = set(quoted(prose(text_of("docs/results.md"))))
     assert told >= {QUANTIFIED, ABOVE, BELOW, CLOSED, SHORT, OVER}

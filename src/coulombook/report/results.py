@@ -16,6 +16,8 @@ from fnmatch import fnmatch
 from pathlib import Path
 
 from coulombook.book import TABLES, Book, Table
+from coulombook.report.datapackage import NAME as DATAPACKAGE
+from coulombook.report.datapackage import datapackage_text
 from coulombook.report.manifest import NAME as MANIFEST
 from coulombook.report.manifest import manifest_text, read_manifest
 from coulombook.report.tables import csv_text
@@ -29,7 +31,7 @@ class ResultsError(Exception):
 
 
 def write_results(book: Book, out: Path, *, created: datetime | None = None) -> Path:
-    """Write one CSV per table and the manifest into the folder ``out``, and return its path.
+    """Write one CSV per table, their description and the manifest into the folder ``out``, and return its path.
 
     Parameters
     ----------
@@ -49,6 +51,7 @@ def write_results(book: Book, out: Path, *, created: datetime | None = None) -> 
     check_destination(out)
     target = _real(out)
     files = {name: text.encode("utf-8", "backslashreplace") for name, text in _files(book).items()}
+    files[DATAPACKAGE] = datapackage_text(book, files).encode("utf-8")
     when = created or datetime.now(UTC)
     files[MANIFEST] = manifest_text(book, files, when).encode("utf-8")
     fresh = _sibling(target, "new")
