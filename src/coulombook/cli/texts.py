@@ -1,0 +1,98 @@
+"""The words of the help: an overview, and for each command what it does, with examples.
+
+They stand apart from the commands so that the overview need not load any of these.
+"""
+
+OVERVIEW = """\
+Faradaic-efficiency ledgers for CO2 electrolysis: from a day's bench files to a
+charge balance with honest uncertainty."""
+
+EXAMPLES = """\
+examples:
+  coulombook new "2043-05-18 mesh"      lay out an empty, commented day folder
+  coulombook check "2043-05-18 mesh"    see what would be computed, and what is missing
+  coulombook tally "2043-05-18 mesh"    compute the ledgers into its folder 'results'
+  coulombook explain "2043-05-18 mesh"  see why its balance does not close
+  coulombook budget "2043-05-18 mesh"   see where its uncertainty comes from
+  coulombook curves                     see the calibration curves in ./calibrations
+
+Each command has its own help: coulombook tally --help
+
+exit status: 0 done; 1 the day's data have faults (all are listed, nothing is
+written); 2 wrong option or missing file; 3 a fault of coulombook itself"""
+
+# name: (in a line, in a paragraph, examples), in the order of the overview
+COMMANDS = {
+    "tally": (
+        "compute the ledgers of a day",
+        """\
+Read a day folder and write its Faradaic-efficiency ledgers, as CSV with a
+manifest. The results are written whole or not at all; the day's own files are
+never touched.""",
+        """\
+examples:
+  coulombook tally "2043-05-18 mesh"
+  coulombook tally "2043-05-18 mesh" --out ledgers --calibrations ~/gc --calibrations ~/nmr
+  coulombook tally "2043-05-18 mesh" --draws 200000 --seed 7
+  coulombook tally "2043-05-18 mesh" --strict --quiet && echo fit to publish""",
+    ),
+    "check": (
+        "say what would be computed and what is missing",
+        """\
+Read a day folder, say what would be computed and what is missing, and list
+every fault. Nothing is written.""",
+        """\
+example:
+  coulombook check "2043-05-18 mesh" """,
+    ),
+    "explain": (
+        "say why a balance does not close",
+        """\
+Say how each run and the day as a whole close, and what explains it if they do
+not: candidate causes with their size, their evidence, and the test at the bench
+that would decide. Nothing is written.""",
+        """\
+example:
+  coulombook explain "2043-05-18 mesh" """,
+    ),
+    "budget": (
+        "say where an uncertainty comes from",
+        """\
+Say which source contributes what to the variance of an output, largest first:
+over the day (the mean of its runs) or for one run. Nothing is written.""",
+        """\
+examples:
+  coulombook budget "2043-05-18 mesh"                     total FE, mean over the runs
+  coulombook budget "2043-05-18 mesh" --product C2H4      FE of one product
+  coulombook budget "2043-05-18 mesh" --run m1-3 --product "C2+/C1" """,
+    ),
+    "new": (
+        "lay out an empty day folder",
+        """\
+Lay out an empty day folder: every table with its heads and units, and a
+commented day.toml. A folder that holds something already is left alone.""",
+        """\
+examples:
+  coulombook new "2043-05-18 mesh"              tables as CSV files
+  coulombook new "2043-05-18 mesh" --workbook   tables as sheets of day.xlsx""",
+    ),
+    "curves": (
+        "show and compare calibration curves",
+        """\
+Show the calibration curves at hand: all of them; one of them, with its
+uncertainty, limits, verdicts and a plot; or several against each other, with
+their drift.
+
+A NAME is a curve, such as ethylene@FID (the analyte by any of its names or its
+formula), gc-2043-04/ethylene@FID for one calibration's, or a calibration.""",
+        """\
+examples:
+  coulombook curves                            all curves in ./calibrations
+  coulombook curves --calibrations ~/gc --on 2043-06-30
+  coulombook curves C2H4@FID                   one curve, and its drift if there are several
+  coulombook curves C2H4@FID --figure ethylene.svg
+  coulombook curves gc-2042-09 gc-2043-04      every curve of two calibrations compared
+  coulombook curves C2H4@FID gc-2042-09 gc-2043-04
+  coulombook curves C2H4@FID --checks "2043-05-18 mesh"    its check injections charted""",
+    ),
+}
