@@ -70,8 +70,8 @@ def test_older_results_are_replaced_and_nothing_else_is_left(book: Book, tmp_pat
 
 def test_an_empty_folder_is_filled_and_missing_parents_are_made(book: Book, tmp_path: Path) -> None:
     (tmp_path / "empty").mkdir()
-    assert len(contents(write_results(book, tmp_path / "empty"))) == len(TABLES) + 1
-    assert len(contents(write_results(book, tmp_path / "a" / "b" / "results"))) == len(TABLES) + 1
+    for folder in (tmp_path / "empty", tmp_path / "a" / "b" / "results"):
+        assert contents(write_results(book, folder)).keys() >= {f"{name}.csv" for name in TABLES}
 
 
 @pytest.mark.parametrize(
