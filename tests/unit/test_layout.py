@@ -18,6 +18,7 @@ SOURCE = Path(_SPEC.origin).parent
 ROOMS = (
     "data",
     "constants",
+    "prose",
     "units",
     "species",
     "findings",
@@ -31,6 +32,7 @@ ROOMS = (
     "intake",
     "library",
     "tally",
+    "figures",
     "report",
     "cli",
     "__main__",

@@ -1,0 +1,1 @@
+"""How values and words from files look to people, in every medium."""
