@@ -22,11 +22,18 @@ _PROGRAM = "coulombook"
 _LIBRARIES = ("matplotlib", "numpy", "openpyxl", "pandas", "pint", "scipy", "xlsxwriter")
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class Written:
     """What a manifest says about the folder it lies in."""
 
-    files: frozenset[str]  # names of the files written beside it
+    version: str
+    created: str
+    day: str
+    title: str
+    options: Mapping[str, str]
+    libraries: Mapping[str, str]
+    inputs: Mapping[str, tuple[str, int]]  # path -> SHA-256, size in bytes
+    outputs: Mapping[str, str]  # name of a file written beside it -> SHA-256
 
 
 def manifest_text(book: Book, outputs: Mapping[str, bytes], created: datetime) -> str:
@@ -72,5 +79,26 @@ def read_manifest(folder: Path) -> Written | None:
         return None
     if not isinstance(content, dict) or content.get("program") != _PROGRAM:
         return None
-    outputs = content.get("outputs")
-    return Written(frozenset(outputs) if isinstance(outputs, dict) else frozenset())
+    return Written(
+        *(str(content.get(word, "")) for word in ("version", "created", "day", "title")),
+        *(
+            {key: str(value) for key, value in _mapping(content, word).items()}
+            for word in ("options", "libraries")
+        ),
+        {path: (str(said.get("sha256", "")), _size(said)) for path, said in _records(content, "inputs")},
+        {name: str(said.get("sha256", "")) for name, said in _records(content, "outputs")},
+    )
+
+
+def _mapping(content: Mapping[str, object], word: str) -> Mapping[str, object]:
+    found = content.get(word)
+    return found if isinstance(found, dict) else {}
+
+
+def _records(content: Mapping[str, object], word: str) -> list[tuple[str, Mapping[str, object]]]:
+    return [(key, said) for key, said in _mapping(content, word).items() if isinstance(said, dict)]
+
+
+def _size(said: Mapping[str, object]) -> int:
+    size = said.get("bytes")
+    return size if isinstance(size, int) else 0

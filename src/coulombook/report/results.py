@@ -91,7 +91,7 @@ def check_destination(out: Path) -> None:
             f"the folder '{out}' is not empty and was not written by coulombook; "
             "give a new or empty folder to --out"
         )
-    strangers = sorted(present - written.files - {MANIFEST})
+    strangers = sorted(present - written.outputs.keys() - {MANIFEST})
     if strangers:
         more = f" and {len(strangers) - 1} more" if len(strangers) > 1 else ""
         raise ResultsError(
