@@ -34,6 +34,7 @@ examples:
   coulombook tally "2043-05-18 mesh"
   coulombook tally "2043-05-18 mesh" --out ledgers --calibrations ~/gc --calibrations ~/nmr
   coulombook tally "2043-05-18 mesh" --draws 200000 --seed 7
+  coulombook tally "2043-05-18 mesh" --tables-only
   coulombook tally "2043-05-18 mesh" --strict --quiet && echo fit to publish""",
     ),
     "check": (

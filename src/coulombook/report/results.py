@@ -30,7 +30,9 @@ class ResultsError(Exception):
     """The results cannot be written to the place asked for; the message says why and what would do."""
 
 
-def write_results(book: Book, out: Path, *, created: datetime | None = None) -> Path:
+def write_results(
+    book: Book, out: Path, *, created: datetime | None = None, tables_only: bool = False
+) -> Path:
     """Write one CSV per table, their description and the manifest into the folder ``out``, and return its path.
 
     Parameters
@@ -41,6 +43,8 @@ def write_results(book: Book, out: Path, *, created: datetime | None = None) -> 
         Is made, with its parents, or replaced if it is empty or was written by coulombook.
     created : datetime, optional
         With time zone; now, if not given.
+    tables_only : bool
+        Leave out what people open instead of reading tables: see `_documents`.
 
     Raises
     ------
@@ -50,7 +54,9 @@ def write_results(book: Book, out: Path, *, created: datetime | None = None) -> 
     """
     check_destination(out)
     target = _real(out)
-    files = {name: text.encode("utf-8", "backslashreplace") for name, text in _files(book).items()}
+    files = _tables(book)
+    if not tables_only:
+        files |= _documents(book)
     files[DATAPACKAGE] = datapackage_text(book, files).encode("utf-8")
     when = created or datetime.now(UTC)
     files[MANIFEST] = manifest_text(book, files, when).encode("utf-8")
@@ -100,11 +106,21 @@ def check_destination(out: Path) -> None:
         )
 
 
-def _files(book: Book) -> Mapping[str, str]:
+def _tables(book: Book) -> dict[str, bytes]:
+    """The CSV files, by name."""
     tables = {name: book.tables.get(name, Table.of(name, [])) for name in TABLES} | dict(book.tables)
     if "findings" not in book.tables:
         tables["findings"] = findings_table(book)
-    return {f"{name}.csv": csv_text(table) for name, table in tables.items()}
+    return {
+        f"{name}.csv": csv_text(table).encode("utf-8", "backslashreplace") for name, table in tables.items()
+    }
+
+
+def _documents(book: Book) -> dict[str, bytes]:
+    """What people open, by file name; a book that has lost what it was computed from has none."""
+    if book.settled is None:
+        return {}
+    return {}
 
 
 def findings_table(book: Book) -> Table:

@@ -48,7 +48,7 @@ def run(options: argparse.Namespace) -> int:
             tell_findings(book.findings, warnings_too=True)
             say("coulombook: nothing was written, for --strict was given and the findings above may mislead")
             return FAULTS
-        written = write_results(book, out)
+        written = write_results(book, out, tables_only=options.tables_only)
     except DayFaults as faults:
         tell_findings(faults.findings, warnings_too=not options.quiet)
         say(f"coulombook: {faults_in_words(faults)}; nothing was written")
@@ -74,6 +74,11 @@ def give_options(parser: argparse.ArgumentParser) -> None:
         "--strict",
         action="store_true",
         help="write nothing and end with status 1 if a number may mislead (a warning)",
+    )
+    parser.add_argument(
+        "--tables-only",
+        action="store_true",
+        help="write the tables alone, without workbook and page",
     )
     parser.add_argument("--quiet", action="store_true", help="print nothing but what stopped the tally")
     parser.add_argument(
