@@ -382,7 +382,7 @@ def _read_spectra(
         try:
             record = source.spectrum(spectrum)
             fit = fit_circuit(record.frequency_hertz, record.impedance_ohm)
-            return SpectrumFigures(fit, kramers_kronig(record.frequency_hertz, record.impedance_ohm))
+            return SpectrumFigures(fit, kramers_kronig(record.frequency_hertz, record.impedance_ohm), record)
         except DayFaults as faults:
             own.extend(faults.findings)
         except ImpedanceError as error:

@@ -6,7 +6,7 @@ import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
-from coulombook.balance.readings import Day, Run, Spectrum
+from coulombook.balance.readings import Day, Run, Spectrum, SpectrumRecord
 from coulombook.balance.scan_verdicts import set_name
 from coulombook.balance.surface_plan import SurfacePlan
 from coulombook.cell.impedance import CircuitFit
@@ -22,10 +22,11 @@ _APART = 2.0
 
 @dataclass(frozen=True, slots=True, eq=False)
 class SpectrumFigures:
-    """What is taken from one spectrum."""
+    """What is taken from one spectrum, and the spectrum as it was read."""
 
     fit: CircuitFit
     check: KramersKronig | None  # None: too few points
+    record: SpectrumRecord
 
 
 @dataclass(frozen=True, slots=True)

@@ -39,6 +39,9 @@ class TraceFigures:
     mean_cell_voltage_volt: float  # NaN when it was not logged
     noise_weight: float  # noise of one sample -> noise of the mean over the window
     usable: NDArray[np.bool_]  # (k,) whether an injection has a current to be compared with
+    injection_window_second: (
+        FloatArray  # (k, 2) what its current is averaged over; NaN where it is not by a window
+    )
     injection_current_ampere: FloatArray  # (k,) mean over the injection's window; NaN when not usable
     injection_noise_weight: FloatArray  # (k,)
     injection_slope_ampere_per_second: (
@@ -96,6 +99,7 @@ def figures_of(trace: Trace, request: TraceRequest) -> TraceFigures:
     elif len(moment):
         mixed = _mixed(trace, start, held, request.mixing_time_second, request.mixing_reach)
         seen[usable], weight[usable], slope[usable] = now[usable], 0.0, 0.0
+    averaging = np.where(averaged[:, None], np.column_stack((low, high)), np.nan)
     until = np.clip(request.sampling_time_second, None, stop)
     sampled = np.maximum(until, start)
     return TraceFigures(
@@ -106,6 +110,7 @@ def figures_of(trace: Trace, request: TraceRequest) -> TraceFigures:
         float(voltage),
         float(weights[0]),
         usable,
+        averaging,
         seen,
         weight,
         slope,

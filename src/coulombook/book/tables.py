@@ -112,7 +112,11 @@ class Table:
 
         Raises KeyError when a row holds a head the table does not have.
         """
-        heads = TABLES[name]
+        return cls.under(name, TABLES[name], rows)
+
+    @classmethod
+    def under(cls, name: str, heads: tuple[str, ...], rows: Iterable[Mapping[str, Cell]]) -> Table:
+        """A table under heads of its own; otherwise like `of`."""
         known = set(heads)
         cells = []
         for row in rows:
