@@ -36,6 +36,7 @@ from coulombook.balance.verdicts import (
     report_signals,
 )
 from coulombook.book import Book, InputFile
+from coulombook.book.cautions import caution_rows
 from coulombook.book.closures import closure_rows
 from coulombook.book.efficiencies import carbon_rows, efficiency_rows
 from coulombook.book.entries import Row, enter
@@ -140,6 +141,7 @@ def _judge(
         "explanations": explanation_rows(explain(settled)),
         "carbon": carbon_rows(settled, account),
         "efficiencies": efficiency_rows(settled, product_efficiencies(settled)),
+        "cautions": caution_rows(settled),
     }
     if draws:
         turns = draw_day(

@@ -77,6 +77,10 @@ EFFICIENCIES = (
     "u(share of converted CO2) / %", "E equilibrium vs RHE / V", "cathodic energy efficiency / %",
     "u(cathodic energy efficiency) / %", "full-cell energy efficiency / %", "u(full-cell energy efficiency) / %",
 )  # fmt: skip
+CAUTIONS = (
+    "substance", "highest / ppm", "run", "injection", "lower flammable limit / %", "of flammable limit / %",
+    "exposure limit / ppm", "times exposure limit", "ceiling / ppm", "dangerous / ppm",
+)  # fmt: skip
 FINDINGS = ("severity", "kind", "where", "text", "mend")
 
 TABLES: Mapping[str, tuple[str, ...]] = {
@@ -94,6 +98,7 @@ TABLES: Mapping[str, tuple[str, ...]] = {
     "reconciliation": RECONCILIATION,
     "carbon": CARBON,
     "efficiencies": EFFICIENCIES,
+    "cautions": CAUTIONS,
     "findings": FINDINGS,
 }
 
