@@ -17,7 +17,7 @@ import numpy as np
 from coulombook.balance.readings import FloatArray
 from coulombook.balance.settle import Settled
 from coulombook.book.entries import PERCENT, PPM, Row
-from coulombook.uncertainty.linearised import nominal
+from coulombook.uncertainty.linearised import IntArray, nominal
 
 MIXTURE = "all together"
 CARBON_DIOXIDE = "carbon dioxide"
@@ -105,7 +105,8 @@ def flammable_share(
        1952, "Le Chatelier's law" (from memory).
     """
     share = np.nan_to_num(np.maximum(mole_fraction, 0.0) / lower_flammable)
-    return np.bincount(mixture, weights=share)
+    result: FloatArray = np.bincount(mixture, weights=share)
+    return result
 
 
 def caution_rows(settled: Settled) -> list[Row]:
@@ -140,9 +141,8 @@ def _mixture_row(settled: Settled, names: Sequence[str], fraction: FloatArray) -
     )
     share = flammable_share(fraction, limit, settled.plan.gas.reading_injection)
     worst = int(np.argmax(share))
-    return {"substance": MIXTURE, "of flammable limit / %": float(share[worst]) * PERCENT} | _place(
-        settled, worst
-    )
+    row: Row = {"substance": MIXTURE, "of flammable limit / %": float(share[worst]) * PERCENT}
+    return row | _place(settled, worst)
 
 
 def _place(settled: Settled, injection: int) -> Row:
