@@ -135,7 +135,8 @@ class PerProton:
     relaxed: Number
 
 
-def _per_proton(signals: Sequence[Signal], integral: Number, t1: Number) -> PerProton:
+def per_proton(signals: Sequence[Signal], integral: Number, t1: Number) -> PerProton:
+    """Integrals of some signals per proton, in the order of ``signals``."""
     protons = np.array([signal.protons for signal in signals], dtype=float)
     known = np.array([signal.relaxation_second is not None for signal in signals], dtype=bool)
     measured = integral_per_proton(integral, protons)
@@ -148,25 +149,28 @@ def _per_proton(signals: Sequence[Signal], integral: Number, t1: Number) -> PerP
 
 def standard_signals(plan: Plan, x: Numbers) -> PerProton:
     """Each signal of an internal standard, (T,)."""
-    return _per_proton(plan.liquid.standard_signals, x["standard integral"], x["standard t1"])
+    return per_proton(plan.liquid.standard_signals, x["standard integral"], x["standard t1"])
 
 
-def signal_ratios(plan: Plan, x: Numbers, standard: PerProton) -> Number:
-    """Amount ratio of each signal (S,) to its internal standard (V,).
+def response_ratios(plan: Plan, x: Numbers, standard: PerProton) -> Number:
+    """Response of each signal per proton over that of its internal standard, (S,).
 
-    Through the signal's curve, which holds the saturation of its standards already; without a curve by counting
-    protons, saturation corrected for.
+    A signal that is read by a curve stays as measured, for the curve holds the saturation of its standards already;
+    without a curve protons are counted, and saturation is corrected for.
     """
     liquid = plan.liquid
-    signal = _per_proton(liquid.signals, x["integral"], x["t1"])
-    counted = liquid.signal_curve < 0
-    response_ratio = select(
-        counted,
+    signal = per_proton(liquid.signals, x["integral"], x["t1"])
+    return select(
+        liquid.signal_curve < 0,
         signal.relaxed / gather(standard.relaxed, liquid.signal_vial),
         signal.measured / gather(standard.measured, liquid.signal_vial),
     )
-    a0, a1, a2 = (gather(x[name], liquid.signal_curve) for name in ("a0", "a1", "a2"))
-    return invert(a0, a1, a2, response_ratio)
+
+
+def signal_ratios(plan: Plan, x: Numbers, standard: PerProton) -> Number:
+    """Amount ratio of each signal (S,) to its internal standard (V,), through the signal's curve if it has one."""
+    a0, a1, a2 = (gather(x[name], plan.liquid.signal_curve) for name in ("a0", "a1", "a2"))
+    return invert(a0, a1, a2, response_ratios(plan, x, standard))
 
 
 def standards_of_vials(plan: Plan, standards: PerProton, weights: FloatArray) -> PerProton:
@@ -248,7 +252,7 @@ def read_injections(plan: Plan, x: Numbers, electrical: Electrical, liquids: Liq
     inlet = molar_flow(plan.inlet, x, "inlet flow")
     outlet = _outlet(plan, x, inlet, mole_fraction, electrical, liquids)
     # of the volume that a wet meter counts, in the headspace as in the meter, only a part is the gas of the outlet flow
-    density = molar_density(x["pressure"], x["temperature"]) * _dry(plan, x)
+    density = molar_density(x["pressure"], x["temperature"]) * dry_outlet(plan, x)
     # no outlet flow, no mixing: NaN passes silently to the verdicts, which tell of it; infinity would make noise
     dry = np.where(nominal(outlet) > 0.0, 0.0, np.nan)
     mixing = mixing_time_second(gather(x["headspace"], run), outlet + dry, gather(density, run))
@@ -270,7 +274,7 @@ def _outlet(
         case OutletFlow.INLET:
             return gather(inlet, run)
         case OutletFlow.MEASURED:
-            return gather(molar_flow(plan.outlet, x, "outlet flow") * _dry(plan, x), run)
+            return gather(molar_flow(plan.outlet, x, "outlet flow") * dry_outlet(plan, x), run)
         case OutletFlow.TRACER:
             tracer = molar_flow(plan.tracer, x, "tracer flow")
             # an injection that is not used may lack the tracer's peak: no flow is known then
@@ -279,19 +283,23 @@ def _outlet(
                 gather(tracer, run), gather(mole_fraction, plan.gas.tracer_reading) + known
             )
         case OutletFlow.BALANCE:
-            liquid = plan.liquid
-            rate = liquids.faradaic_efficiency * gather(electrical.mean_current_ampere, liquid.group_run)
-            electrons = np.array([one.electrons for one in liquid.group_species], dtype=float)
-            carbon = linear_map(liquid.carbon_per_run, rate / (electrons * FARADAY_CONSTANT))
             return outlet_from_carbon_balance(
                 gather(inlet, run),
-                gather(carbon, run),
+                gather(carbon_to_liquid_mol_per_s(plan, electrical, liquids), run),
                 gather(x["carbonate uptake"], run),
                 linear_map(plan.gas.net_gas, mole_fraction),
             )
 
 
-def _dry(plan: Plan, x: Numbers) -> Number:
+def carbon_to_liquid_mol_per_s(plan: Plan, electrical: Electrical, liquids: Liquids) -> Number:
+    """CO2 that ends in liquid products, mean over each run, (R,). [mol/s]"""
+    liquid = plan.liquid
+    rate = liquids.faradaic_efficiency * gather(electrical.mean_current_ampere, liquid.group_run)
+    electrons = np.array([one.electrons for one in liquid.group_species], dtype=float)
+    return linear_map(liquid.carbon_per_run, rate / (electrons * FARADAY_CONSTANT))
+
+
+def dry_outlet(plan: Plan, x: Numbers) -> Number:
     """Share of the metered outlet volume that is not water vapour, (R,): 1 unless a wet volume was measured."""
     every = np.ones(len(plan.runs))
     if plan.outlet_flow is not OutletFlow.MEASURED or not plan.settings.meter_gas_wet:
