@@ -75,9 +75,7 @@ def _least(row: Mapping[str, object], keys: Sequence[str], unit: float = 1.0) ->
     return min(found, default=None)
 
 
-def flammable_share(
-    mole_fraction: FloatArray, lower_flammable: FloatArray, mixture: FloatArray
-) -> FloatArray:
+def flammable_share(mole_fraction: FloatArray, lower_flammable: FloatArray, mixture: IntArray) -> FloatArray:
     """Share of the lower flammable limit that gases reach together. [1]
 
     Le Chatelier's rule, sum x_i / L_i [1]_: below 1 their mixture with any amount of air lies under its lower limit.
