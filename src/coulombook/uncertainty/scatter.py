@@ -23,13 +23,15 @@ class Pooled:
     """Repeats pooled by group.
 
     ``count`` (n_groups,) repeats; ``mean`` (n_groups,) with the law-of-propagation part of its uncertainty;
-    ``deviation`` (n_groups,) sample standard deviation s, NaN for a single repeat; ``unexplained`` (n_groups,) variance
-    of a single repeat beyond what its own uncertainty explains; ``residual`` (n,) repeat minus its group's mean.
+    ``deviation`` (n_groups,) sample standard deviation s, NaN for a single repeat; ``explained`` (n_groups,) variance
+    of a single repeat that its own uncertainty explains, without what all repeats share, 0 for a single one;
+    ``unexplained`` (n_groups,) variance beyond it; ``residual`` (n,) repeat minus its group's mean.
     """
 
     count: FloatArray
     mean: Number
     deviation: FloatArray
+    explained: FloatArray
     unexplained: FloatArray
     residual: FloatArray
 
@@ -69,4 +71,4 @@ def pool(x: Number, group: IntArray, groups: int) -> Pooled:
     else:
         explained = np.zeros(groups)
     unexplained = np.where(several, np.clip(variance - explained, 0.0, None), 0.0)
-    return Pooled(count, mean, np.sqrt(variance), unexplained, residual)
+    return Pooled(count, mean, np.sqrt(variance), explained, unexplained, residual)
