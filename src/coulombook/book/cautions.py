@@ -103,8 +103,7 @@ def flammable_share(mole_fraction: FloatArray, lower_flammable: FloatArray, mixt
        1952, "Le Chatelier's law" (from memory).
     """
     share = np.nan_to_num(np.maximum(mole_fraction, 0.0) / lower_flammable)
-    result: FloatArray = np.bincount(mixture, weights=share)
-    return result
+    return np.asarray(np.bincount(mixture, weights=share), dtype=np.float64)
 
 
 def caution_rows(settled: Settled) -> list[Row]:
