@@ -8,7 +8,7 @@ from coulombook.uncertainty.linearised import Number
 
 # Saturation-pressure equation of region 4, IAPWS-IF97 (IAPWS R7-97(2012), table 34); n[0] is not used, so
 # that the numbers stand as printed. Valid from 273.15 K to 647.096 K.
-_N = (
+SATURATION_COEFFICIENTS = (
     0.0,
     0.11670521452767e4,
     -0.72421316703206e6,
@@ -35,9 +35,18 @@ def saturated_water_vapour_pascal(temperature_kelvin: Number) -> Number:
     temperature_kelvin : float, array or `Linearised`
         Temperature of the electrolyte or of the meter, whichever is the colder. [K]
     """
-    theta = temperature_kelvin + _N[9] / (temperature_kelvin - _N[10])
-    a = theta**2 + _N[1] * theta + _N[2]
-    b = _N[3] * theta**2 + _N[4] * theta + _N[5]
-    c = _N[6] * theta**2 + _N[7] * theta + _N[8]
+    _, a, b, c = saturation_terms(temperature_kelvin)
     megapascal = (2.0 * c / (np.sqrt(b**2 - 4.0 * a * c) - b)) ** 4
     return 1.0e6 * megapascal
+
+
+def saturation_terms(temperature_kelvin: Number) -> tuple[Number, Number, Number, Number]:
+    """What the saturation-pressure equation is made of: theta [K], and A, B, C of the same source."""
+    n = SATURATION_COEFFICIENTS
+    theta = temperature_kelvin + n[9] / (temperature_kelvin - n[10])
+    return (
+        theta,
+        theta**2 + n[1] * theta + n[2],
+        n[3] * theta**2 + n[4] * theta + n[5],
+        n[6] * theta**2 + n[7] * theta + n[8],
+    )
