@@ -85,6 +85,11 @@ def _parser(arguments: Sequence[str]) -> Parser:
     return parser
 
 
+def whole_parser() -> Parser:
+    """The parser with the options of every command, for what must know all of them."""
+    return _parser(list(COMMANDS))
+
+
 def _module(command: str) -> ModuleType:
     from importlib import import_module
 

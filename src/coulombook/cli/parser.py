@@ -52,7 +52,7 @@ class Parser(argparse.ArgumentParser):
             known = [str(one) for one in action.choices]
             raise argparse.ArgumentError(
                 None,
-                f"unknown command '{value}'"
+                f"unknown {action.dest} '{value}'"
                 + (did_you_mean(str(value), known) or f"; known: {', '.join(known)}"),
             )
 

@@ -15,6 +15,7 @@ examples:
   coulombook explain "2043-05-18 mesh"  see why its balance does not close
   coulombook budget "2043-05-18 mesh"   see where its uncertainty comes from
   coulombook curves                     see the calibration curves in ./calibrations
+  coulombook show "2043-05-18 mesh"     see its results once more
 
 Each command has its own help: coulombook tally --help
 
@@ -95,5 +96,38 @@ examples:
   coulombook curves gc-2042-09 gc-2043-04      every curve of two calibrations compared
   coulombook curves C2H4@FID gc-2042-09 gc-2043-04
   coulombook curves C2H4@FID --checks "2043-05-18 mesh"    its check injections charted""",
+    ),
+    "show": (
+        "show results once more, or one run of them",
+        """\
+Show the results of a day as they were written, without computing anything: the
+whole day, one run, or one of the tables. Files that were changed since are named.""",
+        """\
+examples:
+  coulombook show "2043-05-18 mesh"
+  coulombook show "2043-05-18 mesh" --run m1-3
+  coulombook show "2043-05-18 mesh" --table series
+  coulombook show "2043-05-18 mesh" --table ledger --plain | sort -k 6""",
+    ),
+    "again": (
+        "compute results anew and compare to the bit",
+        """\
+Verify a results folder: that its files are as they were written, that the files
+of the day are the ones they were made from, and that computing them anew, with
+the same options, gives the same to the bit. Nothing is written. Ends with status
+1 if anything differs.""",
+        """\
+examples:
+  coulombook again "2043-05-18 mesh"
+  coulombook again ledgers --day "2043-05-18 mesh" --calibrations ~/gc""",
+    ),
+    "completion": (
+        "print a script that completes commands in a shell",
+        """\
+Print the script by which a shell completes commands, options and folders.""",
+        """\
+examples:
+  coulombook completion bash > ~/.local/share/bash-completion/completions/coulombook
+  coulombook completion zsh > ~/.zfunc/_coulombook""",
     ),
 }

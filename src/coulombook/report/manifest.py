@@ -80,14 +80,23 @@ def read_manifest(folder: Path) -> Written | None:
     if not isinstance(content, dict) or content.get("program") != _PROGRAM:
         return None
     return Written(
-        *(str(content.get(word, "")) for word in ("version", "created", "day", "title")),
-        *(
-            {key: str(value) for key, value in _mapping(content, word).items()}
-            for word in ("options", "libraries")
-        ),
-        {path: (str(said.get("sha256", "")), _size(said)) for path, said in _records(content, "inputs")},
-        {name: str(said.get("sha256", "")) for name, said in _records(content, "outputs")},
+        version=_text(content, "version"),
+        created=_text(content, "created"),
+        day=_text(content, "day"),
+        title=_text(content, "title"),
+        options=_texts(content, "options"),
+        libraries=_texts(content, "libraries"),
+        inputs={path: (_text(said, "sha256"), _size(said)) for path, said in _records(content, "inputs")},
+        outputs={name: _text(said, "sha256") for name, said in _records(content, "outputs")},
     )
+
+
+def _text(content: Mapping[str, object], word: str) -> str:
+    return str(content.get(word, ""))
+
+
+def _texts(content: Mapping[str, object], word: str) -> dict[str, str]:
+    return {key: str(value) for key, value in _mapping(content, word).items()}
 
 
 def _mapping(content: Mapping[str, object], word: str) -> Mapping[str, object]:

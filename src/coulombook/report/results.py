@@ -54,10 +54,7 @@ def write_results(
     """
     check_destination(out)
     target = _real(out)
-    files = _tables(book)
-    if not tables_only:
-        files |= _documents(book)
-    files[DATAPACKAGE] = datapackage_text(book, files).encode("utf-8")
+    files = result_files(book, tables_only=tables_only)
     when = created or datetime.now(UTC)
     files[MANIFEST] = manifest_text(book, files, when).encode("utf-8")
     fresh = _sibling(target, "new")
@@ -75,6 +72,15 @@ def write_results(
             "close programs that have its files open, check the space and rights there, or give another --out"
         ) from error
     return out
+
+
+def result_files(book: Book, *, tables_only: bool = False) -> dict[str, bytes]:
+    """Every file of the results but the manifest, which also knows the time; the same book gives the same bytes."""
+    files = _tables(book)
+    if not tables_only:
+        files |= _documents(book)
+    files[DATAPACKAGE] = datapackage_text(book, files).encode("utf-8")
+    return files
 
 
 def check_destination(out: Path) -> None:

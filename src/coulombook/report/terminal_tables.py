@@ -78,13 +78,13 @@ def _labelled(group: str, text: str) -> str:
 def _level_column(table: CatalystTable, level: Level, *, aligned: bool) -> Column:
     cells = [level.efficiency.get(product, ABSENT) for _, product in table.products]
     if aligned:
-        cells = _points_aligned(cells)
+        cells = points_aligned(cells)
     head = (crop(visible(level.name), LONGEST_LEVEL), level.potential, level.current_density, level.runs)
     styles = {len(cells) + 1: "bold", len(cells) + 2: _CLOSURE_STYLE.get(level.closure, "")}
     return Column(head, (*cells, "", level.total, visible(level.closure, LONGEST_LEVEL)), styles=styles)
 
 
-def _points_aligned(cells: Sequence[str]) -> list[str]:
+def points_aligned(cells: Sequence[str]) -> list[str]:
     """Numbers padded so that their decimal points (or last digits) stand under one another."""
     whole = [cell.partition(".")[0].partition("(")[0].rstrip() for cell in cells]
     rest = [cell[len(first) :] for cell, first in zip(cells, whole, strict=True)]
@@ -115,7 +115,7 @@ _NEVER_GIVEN_UP = 3  # the luxury of closure
 
 def _figures(runs: Sequence[Row]) -> list[_Figure]:
     def pair(head: str, spread: str) -> list[str]:
-        return _points_aligned([with_uncertainty(_float(row[head]), _float(row[spread])) for row in runs])
+        return points_aligned([with_uncertainty(_float(row[head]), _float(row[spread])) for row in runs])
 
     def alone(head: str, digits: int) -> list[str]:
         return [plain(_float(row[head]), digits) for row in runs]
