@@ -13,6 +13,7 @@ import sys
 
 TYPE_CHECKING = False  # type-checkers take it for true; importing `typing` for it would slow every start
 if TYPE_CHECKING:
+    from coulombook import figures as figures
     from coulombook.book import Book as Book
     from coulombook.book import Table as Table
     from coulombook.cell.charge import charge_coulomb as charge_coulomb
@@ -45,6 +46,7 @@ _MODULE_OF = {
     "check": "tally",
     "find_reference": "cell.potential",
     "electrons_of": "species",
+    "figures": "",  # a room of functions, public as a whole
     "fit_curve": "curves.fit",
     "invert": "curves.inverse",
     "load_species": "species",
@@ -62,7 +64,8 @@ def __getattr__(name: str) -> object:
         raise AttributeError(f"module {__name__!r} has no attribute {name!r}")
     from importlib import import_module
 
-    value: object = getattr(import_module(f"{__name__}.{module}"), name)
+    found = import_module(f"{__name__}.{module or name}")
+    value: object = getattr(found, name) if module else found
     globals()[name] = value
     return value
 
