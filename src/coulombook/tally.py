@@ -252,18 +252,18 @@ def _read_traces(
 ) -> dict[int, TraceFigures]:
     """Figures of the logs asked for; a log with faults is missing from the result."""
 
-    def read(number: int) -> TraceFigures | Findings:
+    def read(number: int) -> tuple[TraceFigures | None, Findings]:
         run, own = day.runs[number], Findings()
         try:
-            trace = source.trace(run)
+            trace = source.trace(run, own)
             if _report_window(run, trace.time_second, own):
-                return own
+                return None, own
             figures = figures_of(trace, requests[number])
             if pictures is not None:
                 pictures[number] = picture_of(trace)
         except DayFaults as faults:
             own.extend(faults.findings)
-            return own
+            return None, own
         except ValueError as error:
             own.add(
                 "broken-trace",
@@ -273,7 +273,7 @@ def _read_traces(
                 found=str(error),
                 expected="a log that covers the run's window",
             )
-            return own
+            return None, own
         if not figures.charge_coulomb > 0:
             own.add(
                 "anodic-run",
@@ -283,17 +283,16 @@ def _read_traces(
                 found=f"{-figures.charge_coulomb:.4g} C by the signs of the log",
                 expected="a negative (cathodic) charge",
             )
-            return own
+            return None, own
         if (figures.sampling_duration_second <= 0).any():
             _report_early_vials(day, run, figures.start_second, own)
-            return own
-        return figures
+            return None, own
+        return figures, own
 
     found = {}
-    for number, one in _in_threads(read, list(requests), "traces", progress):
-        if isinstance(one, Findings):
-            findings.extend(one)
-        else:
+    for number, (one, own) in _in_threads(read, list(requests), "traces", progress):
+        findings.extend(own)
+        if one is not None:
             found[number] = one
     return found
 
@@ -338,11 +337,11 @@ def _read_scans(
 ) -> list[ScanFigures | None]:
     """What is taken from each voltammogram, None where it has faults."""
 
-    def read(number: int) -> ScanFigures | Findings:
+    def read(number: int) -> tuple[ScanFigures | None, Findings]:
         scan, own = day.scans[number], Findings()
         try:
-            voltammogram = source.voltammogram(scan)
-            return scan_figures(
+            voltammogram = source.voltammogram(scan, own)
+            figures = scan_figures(
                 voltammogram.potential_volt,
                 voltammogram.current_ampere,
                 scan.scan_rate_volt_per_second,
@@ -352,6 +351,7 @@ def _read_scans(
                 window_low_volt=scan.window_low_volt,
                 window_high_volt=scan.window_high_volt,
             )
+            return figures, own
         except DayFaults as faults:
             own.extend(faults.findings)
         except ScanError as error:
@@ -363,14 +363,12 @@ def _read_scans(
                 found=str(error),
                 expected=error.expected,
             )
-        return own
+        return None, own
 
     figures: list[ScanFigures | None] = [None] * len(day.scans)
-    for number, one in _in_threads(read, list(range(len(day.scans))), "scans", progress):
-        if isinstance(one, Findings):
-            findings.extend(one)
-        else:
-            figures[number] = one
+    for number, (one, own) in _in_threads(read, list(range(len(day.scans))), "scans", progress):
+        findings.extend(own)
+        figures[number] = one
     return figures
 
 
@@ -379,12 +377,13 @@ def _read_spectra(
 ) -> list[SpectrumFigures | None]:
     """What is taken from each impedance spectrum, None where it has faults."""
 
-    def read(number: int) -> SpectrumFigures | Findings:
+    def read(number: int) -> tuple[SpectrumFigures | None, Findings]:
         spectrum, own = day.spectra[number], Findings()
         try:
-            record = source.spectrum(spectrum)
+            record = source.spectrum(spectrum, own)
             fit = fit_circuit(record.frequency_hertz, record.impedance_ohm)
-            return SpectrumFigures(fit, kramers_kronig(record.frequency_hertz, record.impedance_ohm), record)
+            check = kramers_kronig(record.frequency_hertz, record.impedance_ohm)
+            return SpectrumFigures(fit, check, record), own
         except DayFaults as faults:
             own.extend(faults.findings)
         except ImpedanceError as error:
@@ -396,14 +395,12 @@ def _read_spectra(
                 found=str(error),
                 expected=error.expected,
             )
-        return own
+        return None, own
 
     figures: list[SpectrumFigures | None] = [None] * len(day.spectra)
-    for number, one in _in_threads(read, list(range(len(day.spectra))), "spectra", progress):
-        if isinstance(one, Findings):
-            findings.extend(one)
-        else:
-            figures[number] = one
+    for number, (one, own) in _in_threads(read, list(range(len(day.spectra))), "spectra", progress):
+        findings.extend(own)
+        figures[number] = one
     return figures
 
 

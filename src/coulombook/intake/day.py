@@ -64,44 +64,56 @@ class DaySource:
     _options: TraceOptions
     _long_byte: int  # size of all traces and voltammograms together
 
-    def trace(self, run: Run) -> Trace:
-        """The potentiostat log of a run, in SI. Raises `DayFaults` with every fault of the file."""
-        findings = Findings()
+    def trace(self, run: Run, findings: Findings | None = None) -> Trace:
+        """The potentiostat log of a run, in SI. Raises `DayFaults` with every fault of the file;
+        what is milder goes to ``findings``.
+        """
+        own = Findings()
         read = read_trace(
             self._folder,
             self._folder.root / run.trace,
             run.electrode_area_m2,
             self._options,
-            findings,
+            own,
             self._long_byte,
         )
         if read is None:
-            raise DayFaults(tuple(findings))
+            raise DayFaults(tuple(own))
+        if findings is not None:
+            findings.extend(own)
         return read
 
-    def voltammogram(self, scan: Scan) -> Voltammogram:
-        """The voltammogram of a row of ``scans``, in SI. Raises `DayFaults` with every fault of the file."""
-        findings = Findings()
+    def voltammogram(self, scan: Scan, findings: Findings | None = None) -> Voltammogram:
+        """The voltammogram of a row of ``scans``, in SI. Raises `DayFaults` with every fault of the file;
+        what is milder goes to ``findings``.
+        """
+        own = Findings()
         read = read_voltammogram(
             self._folder,
             self._folder.root / scan.file,
             scan.electrode_area_m2,
             self._options,
-            findings,
+            own,
             self._long_byte,
         )
         if read is None:
-            raise DayFaults(tuple(findings))
+            raise DayFaults(tuple(own))
+        if findings is not None:
+            findings.extend(own)
         return read
 
-    def spectrum(self, spectrum: Spectrum) -> SpectrumRecord:
-        """The impedance spectrum of a row of ``spectra``, in SI. Raises `DayFaults` with every fault of the file."""
-        findings = Findings()
+    def spectrum(self, spectrum: Spectrum, findings: Findings | None = None) -> SpectrumRecord:
+        """The impedance spectrum of a row of ``spectra``, in SI. Raises `DayFaults` with every fault of the file;
+        what is milder goes to ``findings``.
+        """
+        own = Findings()
         read = read_spectrum(
-            self._folder, self._folder.root / spectrum.file, self._options, findings, self._long_byte
+            self._folder, self._folder.root / spectrum.file, self._options, own, self._long_byte
         )
         if read is None:
-            raise DayFaults(tuple(findings))
+            raise DayFaults(tuple(own))
+        if findings is not None:
+            findings.extend(own)
         return read
 
     def label(self, path: Path) -> str:
