@@ -110,6 +110,40 @@ def test_plain_lines_hold_the_table_in_full(tallied: Path, capsys: pytest.Captur
     assert [float(line[place]) for line in lines[1:]] == [row["FE / %"] for row in expected]
 
 
+def test_a_plain_tally_prints_its_summary_for_programs(
+    tallied: Path, tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    out = ["--out", str(tmp_path / "out")]
+    assert main(["tally", str(tallied), "--plain", "--tables-only", *out, *CALIBRATIONS]) == DONE
+    tally = capsys.readouterr().out
+    assert main(["show", str(tallied), "--plain"]) == DONE
+    assert capsys.readouterr().out == tally
+    assert len(tally.splitlines()) == 31
+
+
+def test_bar_of_the_runs_shows_what_the_charge_became(
+    tallied: Path, capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setenv("COLUMNS", "80")
+    assert main(["show", str(tallied)]) == DONE
+    runs = capsys.readouterr().out.partition("\nruns\n")[2].partition("\n\n")[0].splitlines()
+    assert max(map(len, runs)) <= 80
+    summary = {row["run"]: row for row in read_book(open_results(tallied)).tables["summary"].records()}
+    for line in runs[3:]:
+        if line:
+            row = summary[line.split()[0]]
+            for sign, head in zip(_signs(line), ("H2 FE / %", "C1 FE / %", "C2+ FE / %"), strict=True):
+                share = row[head]
+                assert isinstance(share, float)
+                # two ends of a stretch, each rounded to a sixteenth of the charge
+                assert abs(sign - 16 * share / 100) <= 1.0
+
+
+def _signs(line: str) -> list[int]:
+    shades = [line.count(sign) for sign in "\u2591\u2592\u2588"]
+    return shades if sum(shades) else [line.count(sign) for sign in "hc#"]
+
+
 def test_a_break_within_a_text_does_not_part_a_plain_line(capsys: pytest.CaptureFixture[str]) -> None:
     import sys
 

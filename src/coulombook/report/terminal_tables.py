@@ -44,7 +44,8 @@ def show_catalyst(table: CatalystTable, console: Console) -> None:
 
 def show_runs(runs: Sequence[Row], console: Console) -> None:
     """Print one line per run, with as many of its figures as the width allows."""
-    figures = [one for one in _figures(runs) if set(one.column.cells) != {ABSENT}]
+    signs = _LETTERS if console.options.ascii_only else _SHADES
+    figures = [one for one in _figures(runs, signs) if set(one.column.cells) != {ABSENT}]
     columns = [_parted(one.column, runs) for one in _fitting(figures, console.width)]
     console.print(Text("runs", style="bold"))
     if columns:
@@ -106,14 +107,33 @@ def _blocks(widths: Sequence[int], room: int) -> list[range]:
 class _Figure:
     """A column of the table of runs; those of the highest ``luxury`` are first to go for want of room."""
 
-    luxury: int
+    luxury: float
     column: Column
 
+
+BAR = 16  # columns that stand for 100 %
+_SHADES = "\N{LIGHT SHADE}\N{MEDIUM SHADE}\N{FULL BLOCK}"  # of hydrogen, C1, C2+; within code page 437
+_LETTERS = "hc#"  # of the same, where a terminal has no shades
 
 _NEVER_GIVEN_UP = 3  # the luxury of closure
 
 
-def _figures(runs: Sequence[Row]) -> list[_Figure]:
+def charge_bar(shares: Sequence[float | None], signs: str) -> str:
+    """What the charge became, as a bar of `BAR` columns for 100 %: what is missing stays blank, what is over is cut.
+
+    >>> charge_bar([50.0, 25.0, 12.5], "hc#"), charge_bar([None, 60.0, 60.0], "hc#"), charge_bar([-1.0, 0.0, 3.2], "hc#")
+    ('hhhhhhhhcccc##  ', 'cccccccccc######', '#               ')
+    """
+    if all(share is None for share in shares):
+        return ABSENT
+    bar, reached = "", 0.0
+    for share, sign in zip(shares, signs, strict=True):
+        reached += max(share or 0.0, 0.0)
+        bar += sign * (round(reached / 100.0 * BAR) - len(bar))
+    return bar[:BAR].ljust(BAR)
+
+
+def _figures(runs: Sequence[Row], signs: str) -> list[_Figure]:
     def pair(head: str, spread: str) -> list[str]:
         return points_aligned([with_uncertainty(_float(row[head]), _float(row[spread])) for row in runs])
 
@@ -126,6 +146,8 @@ def _figures(runs: Sequence[Row]) -> list[_Figure]:
     def words(head: str) -> list[str]:
         return [ABSENT if row[head] is None else crop(visible(str(row[head])), LONGEST_RUN) for row in runs]
 
+    groups = ("H2 FE / %", "C1 FE / %", "C2+ FE / %")
+    bars = [charge_bar([_float(row[head]) for head in groups], signs) for row in runs]
     closure = words("closure")
     verdicts = {place: _CLOSURE_STYLE.get(word, "") for place, word in enumerate(closure)}
     return [
@@ -133,6 +155,7 @@ def _figures(runs: Sequence[Row]) -> list[_Figure]:
         _Figure(12, Column(("", "catalyst"), tuple(words("catalyst")), True)),
         _Figure(13, Column(("", "electrode"), tuple(words("electrode")), True)),
         _Figure(1, Column(("E vs RHE", "V"), tuple(pair("E vs RHE / V", "u(E vs RHE) / V")))),
+        _Figure(5.5, Column(("charge went to", "{} H2 {} C1 {} C2+".format(*signs)), tuple(bars), True)),
         _Figure(6, Column(("j", "mA cm^-2"), tuple(alone("j / mA cm^-2", 3)))),
         _Figure(9, Column(("charge", "C"), tuple(alone("charge / C", 4)))),
         _Figure(7, Column(("H2 FE", "%"), tuple(percent("H2 FE / %")))),

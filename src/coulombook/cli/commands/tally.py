@@ -57,7 +57,12 @@ def run(options: argparse.Namespace) -> int:
         return refuse(str(error))
     except (FileNotFoundError, NotADirectoryError, PermissionError) as error:
         return refuse(plain_words(error))
-    if not options.quiet:
+    if options.plain:
+        from coulombook.report.table_view import print_plain
+
+        with quiet_pipe():
+            print_plain(book.tables["summary"], sys.stdout)
+    elif not options.quiet:
         from coulombook.report.terminal import console_for, show_book
 
         with quiet_pipe():
@@ -79,6 +84,11 @@ def give_options(parser: argparse.ArgumentParser) -> None:
         "--tables-only",
         action="store_true",
         help="write the tables alone, without workbook and page",
+    )
+    parser.add_argument(
+        "--plain",
+        action="store_true",
+        help="print the summary as lines of cells parted by tabs, numbers in full, and nothing else",
     )
     parser.add_argument("--quiet", action="store_true", help="print nothing but what stopped the tally")
     parser.add_argument(
