@@ -93,7 +93,7 @@ def test_a_borrowed_curve_is_scaled_by_carbon_numbers_and_says_so(tmp_path: Path
     }
 
 
-def _liquid(folder: Path, rows: str, head: str = "", toml: str = "") -> coulombook.Book:
+def _liquid(folder: Path, rows: str, head: str = "", toml: str = "", **files: str) -> coulombook.Book:
     return _tally(
         folder,
         {
@@ -101,6 +101,7 @@ def _liquid(folder: Path, rows: str, head: str = "", toml: str = "") -> coulombo
             "vials.csv": "vial,run,compartment,compartment volume / mL,aliquot / mL,standard,standard amount / umol\n"
             "v1,a1,catholyte,30,0.5,DMSO,0.2\n",
             "liquid.csv": f"vial,analyte,signal,protons,integral{head}\n{rows}",
+            **files,
         },
     )
 
@@ -113,6 +114,21 @@ def test_saturation_of_counted_protons_is_corrected(tmp_path: Path) -> None:
     ratio = (1 - math.exp(-3)) / (1 - math.exp(-1))
     found = book.ledger.iloc[0]["FE / %"] / plain.ledger.iloc[0]["FE / %"]
     assert found == pytest.approx(ratio, rel=1e-12)
+
+
+def test_t1_of_a_signal_that_is_read_by_a_curve_corrects_nothing_and_is_told(tmp_path: Path) -> None:
+    curve = {
+        "day.toml": DAY.replace('["gc"]', '["nmr"]'),
+        "calibrations/nmr/calibration.toml": 'kind = "liquid"\n',
+        "calibrations/nmr/standards.csv": "analyte,signal,amount ratio,integral ratio\n"
+        "formate,CH,0.5,0.5\nformate,CH,1,1\nformate,CH,4,4\n",
+    }
+    head = ",T1 / s,repetition time / s"
+    plain = _liquid(tmp_path / "plain", "v1,DMSO,CH3,6,600\nv1,formate,CH,1,250\n", **curve)
+    book = _liquid(tmp_path / "t1", "v1,DMSO,CH3,6,600,3,9\nv1,formate,CH,1,250,9,9\n", head, **curve)
+    assert "saturation-in-curve" not in _kinds(plain)
+    assert [one.where for one in book.findings if one.kind == "saturation-in-curve"] == ["liquid.csv, row 3"]
+    assert book.ledger.iloc[0]["FE / %"] == pytest.approx(plain.ledger.iloc[0]["FE / %"], rel=1e-12)
 
 
 def test_t1_without_repetition_time_is_a_fault(tmp_path: Path) -> None:

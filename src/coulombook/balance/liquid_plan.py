@@ -100,6 +100,7 @@ def plan_liquid(day: Day, curves: CurvesUsed, findings: Findings) -> LiquidPlan:
     )
     analytes: dict[tuple[int, str], int] = {}
     uncurved: dict[tuple[str, str], Signal] = {}
+    saturated: dict[tuple[str, str], Signal] = {}
     for signal in day.signals:
         place = vial_place.get(signal.vial)
         if place is None:
@@ -113,6 +114,8 @@ def plan_liquid(day: Day, curves: CurvesUsed, findings: Findings) -> LiquidPlan:
         curve = curves.index(LIQUID, signal.signal, signal.analyte)
         if curve is None and LIQUID in curves.kinds:
             uncurved.setdefault((signal.analyte, signal.signal), signal)
+        if curve is not None and signal.relaxation_second is not None:
+            saturated.setdefault((signal.analyte, signal.signal), signal)
         signals.append(signal)
         signal_vial.append(place)
         signal_curve.append(-1 if curve is None else curve)
@@ -123,6 +126,13 @@ def plan_liquid(day: Day, curves: CurvesUsed, findings: Findings) -> LiquidPlan:
             signal.origin,
             f"{analyte} {name} has no curve in the day's liquid calibrations; proton counting (slope 1) was used",
             "add standards of it to the liquid calibration",
+        )
+    for (analyte, name), signal in saturated.items():
+        findings.add(
+            "saturation-in-curve",
+            signal.origin,
+            f"{analyte} {name} is read by a curve, whose standards were saturated as well; its T1 corrects nothing",
+            "measure standards and samples with the same pulse and repetition time",
         )
 
     keys = list(analytes)
