@@ -38,10 +38,12 @@ from coulombook.uncertainty.linearised import (
     Number,
     chain,
     gather,
+    known_where,
     linear_map,
     nominal,
     select,
     sparse_map,
+    without_slope,
 )
 
 Numbers = Mapping[str, Number]
@@ -64,6 +66,7 @@ class Liquids:
     amount_ratio: Number  # (S,) of each signal to its internal standard
     concentration_mol_per_m3: Number  # (A,) blanks subtracted
     amount_mol: Number  # (L,) in a compartment up to its last sampling
+    compartment_efficiency: Number  # (L,)
     faradaic_efficiency: Number  # (LP,) of a run
 
 
@@ -213,7 +216,7 @@ def read_liquids(plan: Plan, x: Numbers, weights: SignalWeights) -> Liquids:
     )
     charge = charge_to_sampling(plan, x)
     efficiency = liquid.electrons * FARADAY_CONSTANT * amount / gather(charge, liquid.product_sampling)
-    return Liquids(ratio, concentration, amount, linear_map(liquid.compartments, efficiency))
+    return Liquids(ratio, concentration, amount, efficiency, linear_map(liquid.compartments, efficiency))
 
 
 def charge_to_sampling(plan: Plan, x: Numbers) -> Number:
@@ -254,14 +257,15 @@ def read_injections(plan: Plan, x: Numbers, electrical: Electrical, liquids: Liq
     # of the volume that a wet meter counts, in the headspace as in the meter, only a part is the gas of the outlet flow
     density = molar_density(x["pressure"], x["temperature"]) * dry_outlet(plan, x)
     # no outlet flow, no mixing: NaN passes silently to the verdicts, which tell of it; infinity would make noise
-    dry = np.where(nominal(outlet) > 0.0, 0.0, np.nan)
-    mixing = mixing_time_second(gather(x["headspace"], run), outlet + dry, gather(density, run))
+    flowing = known_where(lambda values: values > 0.0, outlet)
+    mixing = mixing_time_second(gather(x["headspace"], run), flowing, gather(density, run))
     current = _injection_current(plan, x, mixing)
     injection = gas.reading_injection
-    rate = mole_fraction * gather(outlet, injection)
     # likewise, no current, no efficiency
-    idle = np.where(nominal(current) == 0.0, np.nan, 0.0)
-    efficiency = charge_rate_ampere(gas.electrons, rate) / gather(current + idle, injection)
+    passing = known_where(lambda values: values != 0.0, current)
+    # divided before it is gathered: there are fewer injections than readings
+    per_ampere = gather(outlet / passing, injection)
+    efficiency = charge_rate_ampere(gas.electrons, mole_fraction * per_ampere)
     return GasReadings(mole_fraction, inlet, outlet, mixing, current, efficiency)
 
 
@@ -325,31 +329,35 @@ def _injection_current(plan: Plan, x: Numbers, mixing: Number) -> Number:
         now = np.concatenate([one.injection_now_ampere for one in plan.figures])
         direct = np.concatenate([one.injection_slope_ampere_per_second for one in plan.figures])
 
-        def mixed(tau: FloatArray) -> tuple[FloatArray, FloatArray]:
-            return mixed_current(plan, tau)
+        def mixed(tau: FloatArray, injections: IntArray) -> tuple[FloatArray, FloatArray]:
+            return mixed_current(plan, tau, injections)
 
         seen = select(mixed_run, chain(mixing, mixed), window)
         # a constant offset builds up in the headspace like any other current
         memory = select(mixed_run, offset * (1.0 - np.exp(-since / mixing)), offset)
-        slope = np.where(mixed_run, (now - nominal(seen)) / nominal(mixing), direct)
+        slope = select(mixed_run, (now - without_slope(seen)) / without_slope(mixing), direct)
     return seen * (1.0 + gain) + memory + x["injection current noise"] + slope * delay
 
 
-def mixed_current(plan: Plan, tau_second: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Current that the headspace remembers at each injection, with its derivative by tau; (..., K) each.
+def mixed_current(
+    plan: Plan, tau_second: FloatArray, injections: IntArray
+) -> tuple[FloatArray, FloatArray]:
+    """Current that the headspace remembers at some injections (k,), with its derivative by tau; (..., k) each.
 
     NaN where tau lies too far from what the log was read for.
     """
     value = np.full(tau_second.shape, np.nan)
     slope = np.full(tau_second.shape, np.nan)
-    first = 0
-    for figures in plan.figures:
-        held = slice(first, first + len(figures.injection_current_ampere))
-        first = held.stop
-        if figures.mixed is not None:
+    run = plan.gas.injections.run[injections]
+    for number in np.unique(run).tolist():
+        series = plan.figures[number].mixed
+        if series is not None:
+            held = np.flatnonzero(run == number)
+            part = series.of(injections[held] - plan.gas.injections.of_run(number)[0])
             tau = tau_second[..., held]
-            value[..., held], slope[..., held] = figures.mixed.value_and_slope(tau)
-            value[..., held][~figures.mixed.covers(tau)] = np.nan
+            covered = part.covers(tau)
+            found, slope[..., held] = part.value_and_slope(tau)
+            value[..., held] = np.where(covered, found, np.nan)
     return value, slope
 
 
