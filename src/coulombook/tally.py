@@ -38,6 +38,7 @@ from coulombook.balance.verdicts import (
 from coulombook.book import Book, InputFile
 from coulombook.book.cautions import caution_rows
 from coulombook.book.closures import closure_rows
+from coulombook.book.display import FindingList
 from coulombook.book.efficiencies import carbon_rows, efficiency_rows
 from coulombook.book.entries import Row, enter
 from coulombook.book.forecast import forecast
@@ -117,7 +118,7 @@ def tally(
         source.day.name,
         source.day.settings.title,
         enter(settled, tuple(findings), judgements),
-        tuple(findings),
+        FindingList(findings),
         _fingerprints(source),
         {
             "calibrations": os.pathsep.join(map(str, calibrations)),

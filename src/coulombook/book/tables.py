@@ -152,6 +152,11 @@ class Table:
         empty = [head for head in self.heads if len(frame) and frame[head].isna().all()]
         return frame.astype(dict.fromkeys(empty, float))
 
+    def _repr_html_(self) -> str:
+        from coulombook.book.display import table_html
+
+        return table_html(self)
+
 
 def _absent(cell: Cell) -> Cell:
     # NaN alone differs from itself
@@ -184,6 +189,11 @@ class Book:
     options: Mapping[str, str]
     settled: Settled | None = None
     pictures: tuple[TracePicture, ...] = ()
+
+    def _repr_html_(self) -> str:
+        from coulombook.book.display import book_html
+
+        return book_html(self)
 
     @property
     def ledger(self) -> pd.DataFrame:

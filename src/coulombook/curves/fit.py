@@ -97,6 +97,20 @@ class Curve:
         """Powers of x that are free."""
         return FORMS[self.form]
 
+    def _repr_html_(self) -> str:
+        from coulombook.prose.display import html_table
+        from coulombook.prose.numbers import plain, with_uncertainty
+
+        rows = [
+            (f"a{power}", with_uncertainty(self.coefficients[power], self.covariance[power, power] ** 0.5))
+            for power in self.powers
+        ]
+        caption = (
+            f"{self.form}, weights {self.weights}, {self.points} points from {plain(self.lowest)} to "
+            f"{plain(self.highest)}, R^2 = {plain(self.r_squared, 6)}"
+        )
+        return html_table(caption, ("coefficient", "value(u)"), rows, ("coefficient",))
+
 
 def _split(a: FloatArray) -> tuple[FloatArray, FloatArray]:
     """High and low half of the digits of each number, whose products with other halves are exact (Dekker)."""
