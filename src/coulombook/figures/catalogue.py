@@ -14,6 +14,7 @@ from coulombook.figures import data, details
 from coulombook.figures.results import draw
 from coulombook.figures.sheet import shown
 from coulombook.figures.single import draw_capacitance, draw_curve, draw_spectrum, draw_trace
+from coulombook.library.picture import LEVEL
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -137,7 +138,10 @@ def _traces(book: Book) -> Iterator[_Part]:
 def _curves(book: Book) -> Iterator[_Part]:
     for name in details.curves_of(book):
         table = details.curve(book, name)
-        text = f"Standards of {shown(name, 200)}, the curve through them with its bands at 95 %, and the residuals."
+        text = (
+            f"Standards of {shown(name, 200)}, the curve through them with its bands at {100.0 * LEVEL:.0f} %, and the "
+            "residuals."
+        )
         yield (name,), f"Calibration curve {shown(name)}", text, table, partial(draw_curve, table)
 
 

@@ -128,14 +128,17 @@ def _efficiencies(ax: Axes, rows: Sequence[Row], own: bool) -> None:
             held[place] += value
         handles.append(bars)
         names.append(name)
+    total = None
     for row in rows:
         if row["what"] == data.WHOLE:
             value, u = number(row["FE / %"]) or 0.0, number(row["u(FE) / %"]) or 0.0
-            total = _point(ax, places[row["level"]], value, str(row[MARK]), BLACK, "D", face="white")
+            total = _point(
+                ax, places[row["level"]], value, str(row[MARK]), BLACK, "D", face="white", size=2.8
+            )
             _errors(ax, [places[row["level"]]], [value], [u])
-            if "total" not in names:
-                handles.append(total)
-                names.append("total")
+    if total is not None:
+        handles.append(total)
+        names.append("total")
     ax.axhline(100.0, color=BLACK, lw=0.6, ls=(0, (4, 3)), zorder=0)
     if any(below):
         ax.axhline(0.0, color=BLACK, lw=0.6)
@@ -243,8 +246,19 @@ _PAINTERS = {
 }
 
 
-def _point(ax: Axes, x: float, y: float, gid: str, colour: str, marker: Any, face: str | None = None) -> Any:
-    (line,) = ax.plot([x], [y], ls="none", marker=marker, mfc=face or colour, mec=BLACK, zorder=4, gid=gid)
+def _point(
+    ax: Axes,
+    x: float,
+    y: float,
+    gid: str,
+    colour: str,
+    marker: Any,
+    face: str = "",
+    size: float | None = None,
+) -> Any:
+    (line,) = ax.plot(
+        [x], [y], ls="none", marker=marker, mfc=face or colour, mec=BLACK, ms=size, zorder=4, gid=gid
+    )
     return line
 
 
@@ -256,7 +270,10 @@ def _errors(
     u_x: Sequence[float] | None = None,
     colour: str = BLACK,
 ) -> None:
-    ax.errorbar(x, y, u_y, u_x, fmt="none", ecolor=colour, elinewidth=0.6, zorder=3)
+    ax.errorbar(x, y, u_y, fmt="none", ecolor=colour, elinewidth=0.6, zorder=3)
+    if u_x is not None:
+        # the same for all that was measured at one potential, and so only a hint
+        ax.errorbar(x, y, xerr=u_x, fmt="none", ecolor=colour, elinewidth=0.4, capsize=0.0, zorder=2)
 
 
 def _column(rows: Sequence[Row], head: str) -> list[float]:

@@ -105,9 +105,9 @@ def name_ticks(axes: Axes, names: Sequence[str], size: float = 6.5) -> None:
     if not names:
         axes.set_xticks([])
         return
-    place_mm = width_mm_of(axes) * 0.85 / len(names)
+    place_mm = width_mm_of(axes) / len(names)
     across = max(text_width_mm(one, size) for one in names) + 1.0 <= place_mm
-    every = 1 if across else max(1, math.ceil(size * _POINT_MM * 1.05 / place_mm))
+    every = 1 if across else max(1, math.ceil(size * _POINT_MM * 0.95 / place_mm))
     places = range(0, len(names), every)
     axes.set_xticks(
         list(places), [names[one] for one in places], rotation=0 if across else 90, parse_math=False

@@ -22,12 +22,14 @@ from coulombook.figures.sheet import (
     plain_labels,
     shown,
 )
+from coulombook.library.picture import LEVEL
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
 
 _TWO_PANELS = 0.85  # height over width
 _HIGHEST_MM = 95.0
+_LEAST_SPAN_VOLT = 0.02  # what a potentiostat holds a potential to is noise, not news
 
 
 def trace(book: Book, run: str, ax: Axes | None = None, *, width_mm: float = COLUMN_MM) -> Axes:
@@ -66,11 +68,10 @@ def _current(ax: Axes, rows: Sequence[Row]) -> tuple[list[Any], list[str]]:
     for row in rows:
         time, until = number(row["time / s"]) or 0.0, number(row["until / s"]) or 0.0
         if row["what"] == details.WINDOW:
-            outside = [time, until]
-            for at in outside:
-                handles["window of the run"] = ax.axvline(
-                    at, color=BLACK, lw=0.6, ls=(0, (4, 2)), gid=str(row[MARK])
-                )
+            handles["window of the run"] = ax.vlines(
+                [time, until], 0.0, 1.0, transform=ax.get_xaxis_transform(), color=BLACK, lw=0.6, ls=(0, (4, 2)),
+                gid=str(row[MARK]),
+            )  # fmt: skip
         elif row["what"] == details.AVERAGED:
             handles["averaged"] = ax.axvspan(
                 time, until, color=SKY, alpha=0.45, lw=0, gid=str(row[MARK]), zorder=0
@@ -90,6 +91,10 @@ def _envelope(ax: Axes, rows: Sequence[Row], quantity: str, colour: str) -> None
     mark = str(log[0][MARK]) if log else ""
     ax.fill_between(time, low, high, color=colour, lw=0.6, gid=f"{mark}:{quantity[0]}")
     ax.margins(x=0.01)
+    bottom, top = ax.get_ylim()
+    if quantity.startswith("E") and top - bottom < _LEAST_SPAN_VOLT:
+        middle = 0.5 * (bottom + top)
+        ax.set_ylim(middle - 0.5 * _LEAST_SPAN_VOLT, middle + 0.5 * _LEAST_SPAN_VOLT)
 
 
 def capacitance(book: Book, electrode: str, ax: Axes | None = None, *, width_mm: float = COLUMN_MM) -> Axes:
@@ -187,13 +192,10 @@ def _curve(ax: Axes, rows: Sequence[Row], heads: Sequence[str]) -> tuple[list[An
     handles: dict[str, Any] = {}
     # a band may reach below zero, where a logarithmic axis ends; it is drawn down to the axis
     floor = float(y.min()) * 0.5 if wide else -math.inf
-    for head, alpha, what in (
-        (reading_band, 0.3, "95 % band of a reading"),
-        (curve_band, 0.6, "95 % band of the curve"),
-    ):
+    for head, alpha, what in ((reading_band, 0.3, "of a reading"), (curve_band, 0.6, "of the curve")):
         if all(row[head] is not None for row in grid):
             band = np.array(_column(grid, head)) * (y / 100.0 if wide else 1.0)
-            handles[what] = ax.fill_between(
+            handles[f"{100.0 * LEVEL:.0f} % band {what}"] = ax.fill_between(
                 x, np.maximum(y - band, floor), y + band, color=SKY, alpha=alpha, lw=0
             )
     handles["curve"] = ax.plot(x, y, color=BLUE, gid=str(grid[0][MARK]))[0]
