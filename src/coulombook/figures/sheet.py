@@ -33,6 +33,12 @@ _HEIGHT_SHARE, _HIGHEST_MM = 0.72, 80.0
 # groups that matplotlib numbers: in a page of several figures each would come again
 _NUMBERED = re.compile(r'<g id="[A-Za-z0-9. ]+_\d+">')
 _HEAD = re.compile(r"\A.*?(?=<svg)", re.DOTALL)
+# names of title and description, and what would change with the clock
+_METADATA_OF = {
+    "svg": (("Title", "Description"), ("Date",)),
+    "pdf": (("Title", "Subject"), ("CreationDate",)),
+    "png": (("Title", "Description"), ()),
+}
 _METADATA = re.compile(r"\s*<metadata>.*?</metadata>", re.DOTALL)
 
 
@@ -150,11 +156,9 @@ def rendered(
     """
     if file_format not in FORMATS:
         raise ValueError(f"a figure is written as {', '.join(FORMATS)}, not '{file_format}'")
-    about = {
-        "svg": {"Date": None, "Title": title or None, "Description": description or None},
-        "pdf": {"CreationDate": None, "Title": title or None, "Subject": description or None},
-        "png": {"Title": title, "Description": description} if title else {},
-    }[file_format]
+    words, undated = _METADATA_OF[file_format]
+    about: dict[str, str | None] = dict.fromkeys(undated)
+    about |= {key: text for key, text in zip(words, (title, description), strict=True) if text}
     stream = io.BytesIO()
     with house_style(salt):
         figure.savefig(stream, format=file_format, metadata=about)

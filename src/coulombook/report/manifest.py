@@ -18,6 +18,7 @@ import coulombook
 from coulombook.book import Book
 
 NAME = "manifest.json"
+RESULTS, FIGURES = "results", "figures"  # what the folder of a manifest holds
 _PROGRAM = "coulombook"
 _LIBRARIES = ("matplotlib", "numpy", "openpyxl", "pandas", "pint", "scipy", "xlsxwriter")
 
@@ -26,6 +27,7 @@ _LIBRARIES = ("matplotlib", "numpy", "openpyxl", "pandas", "pint", "scipy", "xls
 class Written:
     """What a manifest says about the folder it lies in."""
 
+    holds: str
     version: str
     created: str
     day: str
@@ -36,8 +38,8 @@ class Written:
     outputs: Mapping[str, str]  # name of a file written beside it -> SHA-256
 
 
-def manifest_text(book: Book, outputs: Mapping[str, bytes], created: datetime) -> str:
-    """The manifest of one results folder as JSON, keys sorted.
+def manifest_text(book: Book, outputs: Mapping[str, bytes], created: datetime, holds: str = RESULTS) -> str:
+    """The manifest of one folder of results or figures as JSON, keys sorted.
 
     Parameters
     ----------
@@ -47,9 +49,12 @@ def manifest_text(book: Book, outputs: Mapping[str, bytes], created: datetime) -
         The other files of the folder, as written.
     created : datetime
         With time zone.
+    holds : str
+        `RESULTS` or `FIGURES`.
     """
     content = {
         "program": _PROGRAM,
+        "holds": holds,
         "version": coulombook.__version__,
         "python": sys.version.split()[0],
         # only what was loaded has had a part in the numbers
@@ -80,6 +85,7 @@ def read_manifest(folder: Path) -> Written | None:
     if not isinstance(content, dict) or content.get("program") != _PROGRAM:
         return None
     return Written(
+        holds=_text(content, "holds") or RESULTS,
         version=_text(content, "version"),
         created=_text(content, "created"),
         day=_text(content, "day"),

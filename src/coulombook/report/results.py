@@ -19,7 +19,7 @@ from coulombook.book import TABLES, Book, Table
 from coulombook.report.datapackage import NAME as DATAPACKAGE
 from coulombook.report.datapackage import datapackage_text
 from coulombook.report.manifest import NAME as MANIFEST
-from coulombook.report.manifest import manifest_text, read_manifest
+from coulombook.report.manifest import RESULTS, manifest_text, read_manifest
 from coulombook.report.tables import csv_text
 
 # What file managers and office programs leave lying in a folder; nobody misses it.
@@ -53,10 +53,25 @@ def write_results(
         untouched.
     """
     check_destination(out)
+    return write_folder(book, result_files(book, tables_only=tables_only), out, created=created)
+
+
+def write_folder(
+    book: Book,
+    files: Mapping[str, bytes],
+    out: Path,
+    *,
+    holds: str = RESULTS,
+    created: datetime | None = None,
+) -> Path:
+    """Write files made from a book, and their manifest, into a folder of its own; see `write_results`.
+
+    ``holds`` says what they are; a folder is only replaced by one that holds the same.
+    """
+    check_destination(out, holds)
     target = _real(out)
-    files = result_files(book, tables_only=tables_only)
     when = created or datetime.now(UTC)
-    files[MANIFEST] = manifest_text(book, files, when).encode("utf-8")
+    files = {**files, MANIFEST: manifest_text(book, files, when, holds).encode("utf-8")}
     fresh = _sibling(target, "new")
     try:
         try:
@@ -68,7 +83,7 @@ def write_results(
             shutil.rmtree(fresh, ignore_errors=True)
     except OSError as error:
         raise ResultsError(
-            f"the results cannot be written to '{out}': {error.strerror or error}; "
+            f"the {holds} cannot be written to '{out}': {error.strerror or error}; "
             "close programs that have its files open, check the space and rights there, or give another --out"
         ) from error
     return out
@@ -83,8 +98,8 @@ def result_files(book: Book, *, tables_only: bool = False) -> dict[str, bytes]:
     return files
 
 
-def check_destination(out: Path) -> None:
-    """Raise `ResultsError` unless ``out`` is absent, empty, or a results folder as it was written."""
+def check_destination(out: Path, holds: str = RESULTS) -> None:
+    """Raise `ResultsError` unless ``out`` is absent, empty, or a folder of results (or figures) as it was written."""
     target = _real(out)
     if not os.path.lexists(target):
         return
@@ -103,11 +118,15 @@ def check_destination(out: Path) -> None:
             f"the folder '{out}' is not empty and was not written by coulombook; "
             "give a new or empty folder to --out"
         )
+    if written.holds != holds:
+        raise ResultsError(
+            f"the folder '{out}' holds {written.holds}, not {holds}; give another folder to --out"
+        )
     strangers = sorted(present - written.outputs.keys() - {MANIFEST})
     if strangers:
         more = f" and {len(strangers) - 1} more" if len(strangers) > 1 else ""
         raise ResultsError(
-            f"the results folder '{out}' holds '{strangers[0]}'{more}, which coulombook did not write "
+            f"the {holds} folder '{out}' holds '{strangers[0]}'{more}, which coulombook did not write "
             "and would delete; move it elsewhere or give another --out"
         )
 
