@@ -46,7 +46,6 @@ from coulombook.book.judgements import (
     explanation_rows,
     interval_rows,
     reconciliation_rows,
-    series_groups,
 )
 from coulombook.cell.capacitance import ScanError
 from coulombook.cell.impedance import ImpedanceError, fit_circuit
@@ -145,9 +144,7 @@ def _judge(
         "cautions": caution_rows(settled),
     }
     if draws:
-        turns = draw_day(
-            settled, series_groups(settled), draws, seed, lambda done, of: progress("draws", done, of)
-        )
+        turns = draw_day(settled, draws, seed, lambda done, of: progress("draws", done, of))
         judgements["intervals"] = interval_rows(settled, turns, draws, findings)
     if reconcile:
         try:

@@ -1,28 +1,47 @@
 """Monte Carlo: the same measurement function, evaluated for draws of its inputs (JCGM 101:2008).
 
-Runs that are pooled into one point of a series are drawn together; the rest of the day waits its turn, so that memory
-does not grow with the number of runs. Every error column has its own stream of random numbers, made from the seed and
-its place: an error that runs share is the same error in whichever turn it is drawn.
+The measurement function is written down once (`uncertainty/recorded.py`) and repeated for some runs at a time, so that
+memory does not grow with the number of runs. What the wanted outputs do not need is neither evaluated nor drawn.
+
+An error that runs of several turns share has a stream of random numbers of its own, made from the seed and its place:
+it is the same error in whichever turn it is drawn. The errors that one turn has for itself come from one stream.
 """
 
 from __future__ import annotations
 
-from collections.abc import Callable, Hashable, Iterator, Sequence
-from dataclasses import dataclass, replace
+import os
+from collections import Counter
+from collections.abc import Callable, Iterator, Sequence
+from concurrent.futures import ThreadPoolExecutor
+from dataclasses import dataclass
+from threading import Lock
 
 import numpy as np
 
-from coulombook.balance.evaluate import Outcome, SignalWeights, evaluate
-from coulombook.balance.gas_plan import list_injections
-from coulombook.balance.make_plan import make_plan
-from coulombook.balance.plan import Plan
+from coulombook.balance.evaluate import evaluate
 from coulombook.balance.readings import FloatArray
 from coulombook.balance.settle import Settled
-from coulombook.findings import Findings
-from coulombook.uncertainty.linearised import IntArray, Linearised, Number, nominal
+from coulombook.uncertainty.coverage import Coverage, coverage
+from coulombook.uncertainty.linearised import (
+    IntArray,
+    Linearised,
+    Number,
+    nominal,
+    select,
+    squared_norms,
+)
+from coulombook.uncertainty.recorded import Recorded, UnitErrors, map_linearly
+from coulombook.uncertainty.replay import Needs, Program, aligned
 
-# of one turn: rows of draws that are evaluated at a time
-CHUNK = 4096
+# draws that are evaluated at a time: with the runs of a turn, what a processor holds in its own memory
+CHUNK = 256
+
+_THREADS = min(2, os.cpu_count() or 1)
+_RUNS_OF_A_TURN = 8  # what runs share is then evaluated once for so many
+_TURN_BYTE = (
+    36_000_000  # of the draws of a turn's outputs, which are kept to be sorted; one run may need more
+)
+_SHARED_BYTE = 48_000_000  # of the draws of shared errors, which are kept to be used again
 
 # Quantities that cannot be negative. Where a normal distribution would put more than 3e-7 of its draws below zero (zero
 # within five standard deviations), a lognormal one of the same mean and standard deviation takes its place.
@@ -36,205 +55,197 @@ _POSITIVE = (
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Drawn:
-    """Draws of one turn: the runs of ``day_runs`` (places in the day) and what came out for them.
+    """What the draws of one turn say of its runs, ``day_runs`` (places in the day).
 
-    ``efficiency`` (n_products, n_draws) with ``products`` the rows of the ledger they stand for; ``total``,
-    ``c2_plus``, ``ratio`` (n_runs, n_draws).
+    ``efficiency`` of the products (rows of the ledger) and ``total``, ``c2_plus``, ``ratio`` of the runs.
     """
 
     day_runs: IntArray
     products: IntArray
-    efficiency: FloatArray
-    total: FloatArray
-    c2_plus: FloatArray
-    ratio: FloatArray
+    efficiency: Coverage
+    total: Coverage
+    c2_plus: Coverage
+    ratio: Coverage
 
 
 def draw_day(
-    settled: Settled,
-    groups: Sequence[Sequence[int]],
-    count: int,
-    seed: int,
-    progress: Callable[[int, int], None] | None = None,
+    settled: Settled, count: int, seed: int, progress: Callable[[int, int], None] | None = None
 ) -> Iterator[Drawn]:
-    """Draw each group of runs in turn.
+    """Draw every run of the day, some at a time, in order.
 
     Parameters
     ----------
     settled
         The settled account of the day.
-    groups : sequence of sequences of int
-        Runs (places in the day) that are drawn together; each in one group.
     count : int
         Number of draws M; JCGM 101 asks for 1e4/(1 - level) and more.
     seed : int
-        The same seed gives the same draws.
+        The same seed and number give the same draws.
+    progress : callable, optional
+        Called as progress(done, of), in runs.
     """
-    places = {
-        name: {label: place for place, label in enumerate(labels)}
-        for name, labels in _labels(settled.plan).items()
-    }
-    for done, runs in enumerate(groups, start=1):
-        yield _draw_group(settled, list(runs), places, count, seed)
-        if progress is not None:
-            progress(done, len(groups))
+    record = _Record(settled)
+    turns = _turns(settled, count)
+    held_by = Counter(column for turn in turns for column in record.columns(turn).tolist())
+    shared = _SharedErrors({column: turns for column, turns in held_by.items() if turns > 1}, count, seed)
+    level = settled.plan.settings.level_of_confidence
+
+    def draw(number: int) -> Drawn:
+        own = np.random.SFC64([seed, len(record.errors) + number])
+        return _draw_turn(record, turns[number], shared, np.random.Generator(own), count, level)
+
+    done = 0
+    with ThreadPoolExecutor(_THREADS) as pool:
+        for drawn in pool.map(draw, range(len(turns))):
+            yield drawn
+            done += len(drawn.day_runs)
+            if progress is not None:
+                progress(done, len(settled.plan.runs))
 
 
-def _draw_group(
-    settled: Settled,
-    runs: list[int],
-    places: dict[str, dict[Hashable, int]],
-    count: int,
-    seed: int,
-) -> Drawn:
-    plan = _part_of(settled.plan, runs)
-    rows = {
-        name: np.array([places[name][label] for label in labels], dtype=np.intp)
-        for name, labels in _labels(plan).items()
-    }
-    inputs = {
-        name: _Rows(settled.inputs.numbers[name], rows[name], name in _POSITIVE)
-        for name in settled.inputs.nominal
-    }
-    scatter = _Rows(settled.scatter, rows["group"], False)
-    liquid_scatter = _Rows(settled.liquid_scatter, rows["liquid group"], False)
-    columns = np.unique(np.concatenate([one.columns for one in (*inputs.values(), scatter, liquid_scatter)]))
-    streams = [np.random.Generator(np.random.SFC64([seed, int(column)])) for column in columns]
-    weights = SignalWeights(
-        _renormalised(settled.weights.standard[rows["standard integral"]], plan.liquid.standard_vial),
-        _renormalised(settled.weights.analyte[rows["integral"]], plan.liquid.signal_analyte),
-        settled.weights.u_ratio[rows["integral"]],
-    )
-    counted = settled.detection.counted[rows["product"]]
-    products, n_runs = len(plan.products.run), len(runs)
-    drawn = Drawn(
-        np.array(runs, dtype=np.intp),
-        rows["product"],
-        np.empty((products, count)),
-        *(np.empty((n_runs, count)) for _ in range(3)),
-    )
-    normals = np.empty((len(columns), min(CHUNK, count)))
-    for first in range(0, count, CHUNK):
-        held = slice(first, min(first + CHUNK, count))
-        part = normals[:, : held.stop - first]
-        for stream, row in zip(streams, part, strict=True):
-            stream.standard_normal(out=row)
-        x = {name: one.draw(part, columns) for name, one in inputs.items()}
-        scattered = scatter.draw(part, columns), liquid_scatter.draw(part, columns)
-        outcome = evaluate(plan, x, weights, counted, *scattered)
-        _keep(drawn, held, outcome)
-    return drawn
+def _turns(settled: Settled, count: int) -> list[IntArray]:
+    """Runs that are drawn together: neighbours, for these share the most."""
+    products = settled.plan.products.run
+    outputs = 3 + len(products) / max(len(settled.plan.runs), 1)
+    fitting = int(_TURN_BYTE / (outputs * count * 8))
+    runs = np.arange(len(settled.plan.runs))
+    size = max(1, min(_RUNS_OF_A_TURN, fitting))
+    return [runs[first : first + size] for first in range(0, len(runs), size)]
 
 
-def _keep(drawn: Drawn, held: slice, outcome: Outcome) -> None:
-    for kept, name in (
-        (drawn.efficiency, "faradaic_efficiency"),
-        (drawn.total, "total"),
-        (drawn.c2_plus, "c2_plus"),
-        (drawn.ratio, "ratio"),
-    ):
-        kept[:, held] = nominal(getattr(outcome, name)).T
+class _Record:
+    """The measurement function of a day, written down."""
+
+    def __init__(self, settled: Settled) -> None:
+        inputs = settled.inputs
+        self.errors = UnitErrors(len(inputs.sources))
+        self._product_run = settled.plan.products.run
+        x = {
+            name: _recorded(number, self.errors, name in _POSITIVE) for name, number in inputs.numbers.items()
+        }
+        scatter = _recorded(settled.scatter, self.errors), _recorded(settled.liquid_scatter, self.errors)
+        counted = settled.detection.counted
+        self._outcome = evaluate(settled.plan, x, settled.weights, counted, *scatter)
+
+    def products(self, turn: IntArray) -> IntArray:
+        """Rows of the ledger."""
+        first, last = np.searchsorted(self._product_run, (turn[0], turn[-1] + 1))
+        return np.arange(first, last)
+
+    def outputs(self, turn: IntArray) -> list[tuple[Number, IntArray]]:
+        """Faradaic efficiencies, totals, C2+ and C2+/C1 of some runs."""
+        outcome = self._outcome
+        of_runs = (outcome.total, outcome.c2_plus, outcome.ratio)
+        return [(outcome.faradaic_efficiency, self.products(turn)), *((number, turn) for number in of_runs)]
+
+    def columns(self, turn: IntArray) -> IntArray:
+        """The errors that some runs need."""
+        return Needs(_moving(self.outputs(turn))).rows.get(id(self.errors), np.zeros(0, dtype=np.intp))
 
 
-class _Rows:
-    """Some rows of a block of inputs, drawn from normals of the errors they depend on."""
+def _moving(outputs: Sequence[tuple[Number, IntArray]]) -> list[tuple[Recorded, IntArray]]:
+    """Those outputs that are not constant."""
+    return [(number, rows) for number, rows in outputs if isinstance(number, Recorded)]
 
-    def __init__(self, number: Number, rows: IntArray, positive: bool) -> None:
-        self.value = nominal(number)[rows]
-        self._jacobian = number.jacobian[rows] if isinstance(number, Linearised) else None
-        self.columns = (
-            np.zeros(0, dtype=np.intp) if self._jacobian is None else np.unique(self._jacobian.indices)
-        )
-        self._positive = positive and bool((self.value[np.isfinite(self.value)] > 0).all())
 
-    def draw(self, normals: FloatArray, columns: IntArray) -> FloatArray:
-        """(n_draws, n) from normals (n_columns, n_draws), whose columns of the day are ``columns``."""
-        shape = (normals.shape[1], len(self.value))
-        if self._jacobian is None or not self.columns.size:
-            return np.broadcast_to(self.value, shape)
-        held = self._jacobian[:, self.columns]
-        moved = (held @ normals[np.searchsorted(columns, self.columns)]).T
-        drawn: FloatArray = self.value + moved
-        if self._positive:
-            u = np.sqrt(np.asarray(held.multiply(held).sum(axis=1)).ravel())
-            near = u > _NEAR_ZERO * self.value
-            # lognormal with the mean and the standard deviation of the input: ln x is normal with variance
-            # ln(1 + (u/x)^2)
-            spread = np.sqrt(np.log1p((u[near] / self.value[near]) ** 2))
-            drawn[:, near] = self.value[near] * np.exp(spread * moved[:, near] / u[near] - 0.5 * spread**2)
+def _recorded(number: Number, errors: UnitErrors, positive: bool = False) -> Number:
+    """An input as a function of the unit errors; one without errors stays what it is."""
+    if not isinstance(number, Linearised):
+        return number
+    value = number.value
+    drawn: Number = value + map_linearly(number.jacobian, errors)
+    if not positive or not (value[np.isfinite(value)] > 0.0).all():
         return drawn
+    u = np.sqrt(squared_norms(number.jacobian))
+    near = u > _NEAR_ZERO * value
+    if not near.any():
+        return drawn
+    # lognormal with the mean and the standard deviation of the input: ln x is normal with variance ln(1 + (u/x)^2)
+    spread, centre = np.zeros(len(value)), np.zeros(len(value))
+    spread[near] = np.sqrt(np.log1p((u[near] / value[near]) ** 2))
+    centre[near] = np.log(value[near]) - 0.5 * spread[near] ** 2
+    unit = Linearised(value, number.jacobian) * np.divide(spread, u, out=np.zeros(len(u)), where=near)
+    assert isinstance(unit, Linearised)
+    return select(near, np.exp(centre + map_linearly(unit.jacobian, errors)), drawn)
 
 
-def _renormalised(weights: FloatArray, group: IntArray) -> FloatArray:
-    """Weights that add up to one in each group; they do already, unless the group was cut."""
-    if not len(group):
-        return weights
-    result: FloatArray = weights / np.bincount(group, weights=weights)[group]
-    return result
+class _SharedErrors:
+    """Draws of errors that several turns need: kept from the first of these turns to the last, as room allows."""
+
+    def __init__(self, turns: dict[int, int], count: int, seed: int) -> None:
+        self._left = turns
+        self._count = -(-count // CHUNK) * CHUNK
+        self._room = max(_SHARED_BYTE // (self._count * 8), 0)
+        self._seed = seed
+        self._kept: dict[int, FloatArray] = {}
+        self._lock = Lock()
+
+    def __contains__(self, column: int) -> bool:
+        return column in self._left
+
+    def stream(self, column: int) -> np.random.Generator:
+        """The random numbers of one error, from their start."""
+        return np.random.Generator(np.random.SFC64([self._seed, column]))
+
+    def fetch(self, columns: Sequence[int]) -> dict[int, FloatArray]:
+        """Draws of those of some errors that there is room for."""
+        with self._lock:
+            for column in columns:
+                if column not in self._kept and len(self._kept) < self._room:
+                    self._kept[column] = self.stream(column).standard_normal(self._count)
+            return {column: self._kept[column] for column in columns if column in self._kept}
+
+    def release(self, columns: Sequence[int]) -> None:
+        """A turn is done with them."""
+        with self._lock:
+            for column in columns:
+                self._left[column] -= 1
+                if not self._left[column]:
+                    self._kept.pop(column, None)
 
 
-def _part_of(plan: Plan, runs: list[int]) -> Plan:
-    """The plan of some runs of the day, with all its checks, blanks, scans and calibrations."""
-    day = plan.day
-    names = {day.runs[run].name for run in runs}
-    vials = tuple(vial for vial in day.vials if vial.blank or vial.run in names)
-    kept = {vial.name for vial in vials}
-    part = replace(
-        day,
-        runs=tuple(day.runs[run] for run in runs),
-        peaks=tuple(peak for peak in day.peaks if peak.run in names),
-        vials=vials,
-        signals=tuple(signal for signal in day.signals if signal.vial in kept),
+def _draw_turn(
+    record: _Record,
+    turn: IntArray,
+    shared: _SharedErrors,
+    own: np.random.Generator,
+    count: int,
+    level: float,
+) -> Drawn:
+    outputs = record.outputs(turn)
+    moving = _moving(outputs)
+    needs = Needs(moving)
+    columns = needs.rows.get(id(record.errors), np.zeros(0, dtype=np.intp)).tolist()
+    of_others = [column for column in columns if column in shared]
+    n_own = len(columns) - len(of_others)
+    normals = aligned(len(columns), CHUNK)
+    row_of = {column: n_own + row for row, column in enumerate(of_others)}
+    free = iter(range(n_own))
+    place = np.array(
+        [row_of[column] if column in row_of else next(free) for column in columns], dtype=np.intp
     )
-    unheard = Findings()
-    injections = list_injections(part, unheard)
-    figures = [plan.figures[run] for run in runs]
-    return make_plan(part, injections, figures, plan.scans, unheard, plan.spectra)
+    program = Program(moving, needs, record.errors, place, normals)
 
-
-def _labels(plan: Plan) -> dict[str, list[Hashable]]:
-    """A name for every element of every block of inputs, unique in its block, the same in every part of the day."""
-    gas, liquid, surface = plan.gas, plan.liquid, plan.surface
-    run = [one.name for one in plan.runs]
-    peaks: list[Hashable] = [(one.run, one.injection, one.channel, one.analyte) for one in gas.peaks]
-    injections: list[Hashable] = [
-        (run[number], label) for number, label in zip(gas.injections.run, gas.injections.label, strict=True)
+    kept = shared.fetch(of_others)
+    held = [(normals[row_of[column]], draws) for column, draws in kept.items()]
+    anew = [(normals[row_of[column]], shared.stream(column)) for column in of_others if column not in kept]
+    drawn = [np.empty((len(rows), count)) for _, rows in outputs]
+    filled = [
+        draws for draws, (number, _) in zip(drawn, outputs, strict=True) if isinstance(number, Recorded)
     ]
-    vials: list[Hashable] = [vial.name for vial in liquid.vials]
-    signals: list[Hashable] = [(one.vial, one.analyte, one.signal) for one in liquid.signals]
-    standards: list[Hashable] = [(one.vial, one.analyte, one.signal) for one in liquid.standard_signals]
-    curves: list[Hashable] = [*((one.standards.calibration, one.name) for one in plan.curves.used), "slope 1"]
-    checks: list[Hashable] = list(range(len(gas.check_area)))
-    scans: list[Hashable] = list(range(len(surface.scan_electrode)))
-    by_run = (
-        "electrode area", "ph", "temperature", "pressure", "resistance", "compensated", "headspace", "carbonate uptake",
-        "inlet flow", "outlet flow", "tracer flow", "current gain", "current offset", "current noise", "mean potential",
-        "potential noise", "cell voltage",
-    )  # fmt: skip
-    once = (
-        "potential", "temperature coefficient", "standard temperature", "standard pressure", "dead time", "feed co2",
-        "specific capacitance",
-    )  # fmt: skip
-    return {
-        **{name: list[Hashable](run) for name in by_run},
-        **{name: list[Hashable](["once"]) for name in once},
-        **dict.fromkeys(("a0", "a1", "a2"), curves),
-        "peak area": peaks,
-        **dict.fromkeys(("check area", "check mole fraction"), checks),
-        **dict.fromkeys(("injection delay", "injection current noise"), injections),
-        **dict.fromkeys(("compartment volume", "aliquot", "standard amount"), vials),
-        **dict.fromkeys(("integral", "t1"), signals),
-        **dict.fromkeys(("standard integral", "standard t1"), standards),
-        **dict.fromkeys(("scan area", "scan rate", "charging current"), scans),
-        "capacitance scatter": list[Hashable](surface.electrodes),
-        "group": [
-            (run[number], one.name) for number, one in zip(gas.group_run, gas.group_species, strict=True)
-        ],
-        "liquid group": [
-            (run[number], one.name)
-            for number, one in zip(liquid.group_run, liquid.group_species, strict=True)
-        ],
-        "product": [
-            (run[number], name) for number, name in zip(plan.products.run, plan.products.species, strict=True)
-        ],
-    }
+    with np.errstate(all="ignore"):
+        for first in range(0, count, CHUNK):
+            own.standard_normal(out=normals[:n_own])
+            for row, draws in held:
+                row[:] = draws[first : first + CHUNK]
+            for row, stream in anew:
+                stream.standard_normal(out=row)
+            program.run()
+            for draws, found in zip(filled, program.results, strict=True):
+                part = draws[:, first : first + CHUNK]
+                part[...] = found[:, : part.shape[1]]
+        shared.release(of_others)
+        for draws, (number, rows) in zip(drawn, outputs, strict=True):
+            if not isinstance(number, Recorded):
+                draws[...] = nominal(number)[rows, None]
+        return Drawn(turn, record.products(turn), *(coverage(draws, level) for draws in drawn))

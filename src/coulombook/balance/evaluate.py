@@ -36,7 +36,7 @@ from coulombook.curves.nmr import saturation_factor
 from coulombook.uncertainty.linearised import (
     IntArray,
     Number,
-    chain,
+    chain_each,
     gather,
     known_where,
     linear_map,
@@ -332,16 +332,14 @@ def _injection_current(plan: Plan, x: Numbers, mixing: Number) -> Number:
         def mixed(tau: FloatArray, injections: IntArray) -> tuple[FloatArray, FloatArray]:
             return mixed_current(plan, tau, injections)
 
-        seen = select(mixed_run, chain(mixing, mixed), window)
+        seen = select(mixed_run, chain_each(mixing, mixed), window)
         # a constant offset builds up in the headspace like any other current
         memory = select(mixed_run, offset * (1.0 - np.exp(-since / mixing)), offset)
         slope = select(mixed_run, (now - without_slope(seen)) / without_slope(mixing), direct)
     return seen * (1.0 + gain) + memory + x["injection current noise"] + slope * delay
 
 
-def mixed_current(
-    plan: Plan, tau_second: FloatArray, injections: IntArray
-) -> tuple[FloatArray, FloatArray]:
+def mixed_current(plan: Plan, tau_second: FloatArray, injections: IntArray) -> tuple[FloatArray, FloatArray]:
     """Current that the headspace remembers at some injections (k,), with its derivative by tau; (..., k) each.
 
     NaN where tau lies too far from what the log was read for.

@@ -12,7 +12,7 @@ from coulombook.balance.explain import Explained
 from coulombook.balance.settle import Settled
 from coulombook.book.entries import PERCENT, Row, level_of
 from coulombook.findings import Findings
-from coulombook.uncertainty.coverage import propagation_validated, shortest_interval, symmetric_interval
+from coulombook.uncertainty.coverage import Coverage, propagation_validated
 from coulombook.uncertainty.linearised import FloatArray, nominal, standard_uncertainty
 
 
@@ -48,7 +48,7 @@ def interval_rows(settled: Settled, drawn: Iterable[Drawn], count: int, findings
     keyed: list[tuple[int, int, Row]] = []
     for part in drawn:
         runs = part.day_runs
-        outputs: Sequence[tuple[FloatArray, FloatArray, FloatArray, Sequence[int], Sequence[str], float]] = [
+        outputs: Sequence[tuple[Coverage, FloatArray, FloatArray, Sequence[int], Sequence[str], float]] = [
             (
                 part.efficiency,
                 nominal(outcome.faradaic_efficiency)[part.products],
@@ -74,9 +74,8 @@ def interval_rows(settled: Settled, drawn: Iterable[Drawn], count: int, findings
             ),
         ]
         for kind, (draws, value, u, owner, names, unit) in enumerate(outputs):
-            deviation = draws.std(axis=1, ddof=1)
-            low, high = shortest_interval(draws, level)
-            agrees = propagation_validated(value, u, level, *symmetric_interval(draws, level), count)
+            quantiles = draws.low_quantile, draws.high_quantile
+            agrees = propagation_validated(value, u, level, *quantiles, count)
             for row in np.flatnonzero(np.isfinite(value)).tolist():
                 keyed.append(
                     (
@@ -87,9 +86,9 @@ def interval_rows(settled: Settled, drawn: Iterable[Drawn], count: int, findings
                             "output": names[row],
                             "value / %": float(value[row] * unit),
                             "u / %": float(u[row] * unit),
-                            "u(draws) / %": float(deviation[row] * unit),
-                            "low / %": float(low[row] * unit),
-                            "high / %": float(high[row] * unit),
+                            "u(draws) / %": float(draws.deviation[row] * unit),
+                            "low / %": float(draws.low[row] * unit),
+                            "high / %": float(draws.high[row] * unit),
                             "propagation": "agrees" if agrees[row] or u[row] == 0 else "differs",
                         },
                     )

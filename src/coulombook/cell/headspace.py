@@ -334,6 +334,14 @@ class MixedCurrent:
             np.concatenate([part.half_range for part in parts]),
         )
 
+    def of(self, injections: NDArray[np.intp]) -> MixedCurrent:
+        """The series of some of the injections."""
+        return MixedCurrent(
+            self.centre_ln_tau[injections],
+            self.coefficients_ampere[:, injections],
+            self.half_range[injections],
+        )
+
     def __len__(self) -> int:
         return len(self.centre_ln_tau)
 

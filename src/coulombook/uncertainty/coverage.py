@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import dataclass
 from statistics import NormalDist
 
 import numpy as np
@@ -39,6 +40,32 @@ def shortest_interval(draws: FloatArray, level: float) -> tuple[FloatArray, Floa
         np.where(unknown, np.nan, draws[rows, start]),
         np.where(unknown, np.nan, draws[rows, start + span]),
     )
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Coverage:
+    """What draws of some outputs say, (n_outputs,) each; NaN where a draw is."""
+
+    deviation: FloatArray  # standard deviation
+    low: FloatArray  # shortest coverage interval
+    high: FloatArray
+    low_quantile: FloatArray  # interval that leaves out as much above as below
+    high_quantile: FloatArray
+
+
+def coverage(draws: FloatArray, level: float) -> Coverage:
+    """Standard deviation and intervals at a level of confidence, of draws (n_outputs, n_draws).
+
+    The draws are sorted in place, one output after the other, so that an output's draws stay in fast memory while they
+    are looked at.
+    """
+    found = np.empty((5, len(draws)))
+    for row, one in enumerate(draws):
+        pair = one[None, :]
+        found[1, row], found[2, row] = (end[0] for end in shortest_interval(pair, level))
+        found[3, row], found[4, row] = (end[0] for end in symmetric_interval(pair, level))
+        found[0, row] = one.std(ddof=1)
+    return Coverage(*found)
 
 
 def numerical_tolerance(u: float, digits: int = SIGNIFICANT_DIGITS) -> float:

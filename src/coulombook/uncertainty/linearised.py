@@ -6,7 +6,9 @@ respect to every input. Here each input is written x = x0 + L e with independent
 same measurement function gives the nominal value from plain arrays, Monte Carlo values from arrays with a leading
 axis of draws, and covariances from `Linearised` numbers.
 
-The functions of this module (`gather`, `linear_map`, `select`, `chain`, `nominal`) take any of the three.
+A fourth kind, `Recorded`, writes the function down, to be repeated for draws (`recorded.py`).
+
+The functions of this module (`gather`, `linear_map`, `select`, `chain` and their like) take any of the four.
 """
 
 from __future__ import annotations
@@ -16,6 +18,8 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from numpy.typing import NDArray
+
+from coulombook.uncertainty.recorded import Recorded, Selected, apply, apply_to_each, map_linearly, pick
 
 if TYPE_CHECKING:
     from scipy.sparse import csr_array
@@ -137,11 +141,18 @@ _UFUNCS: dict[Any, Callable[..., Linearised]] = {
     np.log: _log,
 }
 
-Number = FloatArray | Linearised
+Number = FloatArray | Linearised | Recorded
 
 
 def nominal(x: Number) -> FloatArray:
     """The values without their derivatives."""
+    if isinstance(x, Recorded):
+        raise TypeError("a recorded number has no value")
+    return x.value if isinstance(x, Linearised) else x
+
+
+def without_slope(x: Number) -> Number:
+    """The same values, taken as constants where derivatives are carried."""
     return x.value if isinstance(x, Linearised) else x
 
 
@@ -149,6 +160,8 @@ def gather(x: Number, index: IntArray) -> Number:
     """Elements of x in the order of ``index``, along the last axis."""
     if isinstance(x, Linearised):
         return Linearised(x.value[index], x.jacobian[index])
+    if isinstance(x, Recorded):
+        return pick(x, index)
     return x[..., index]
 
 
@@ -156,12 +169,16 @@ def linear_map(matrix: csr_array, x: Number) -> Number:
     """matrix (m, n) times x (n,), along the last axis."""
     if isinstance(x, Linearised):
         return Linearised(matrix @ x.value, matrix @ x.jacobian)
+    if isinstance(x, Recorded):
+        return map_linearly(matrix, x)
     result: FloatArray = (matrix @ x.T).T
     return result
 
 
 def select(mask: NDArray[np.bool_], x: Number, otherwise: Number) -> Number:
     """x where ``mask`` (n,) holds, else ``otherwise``; the mask is part of the plan, never of the readings."""
+    if isinstance(x, Recorded) or isinstance(otherwise, Recorded):
+        return Selected(mask, x, otherwise)
     if not isinstance(x, Linearised) and not isinstance(otherwise, Linearised):
         return np.where(mask, x, otherwise)
     kept = np.where(mask, nominal(x), nominal(otherwise))
@@ -175,16 +192,42 @@ def select(mask: NDArray[np.bool_], x: Number, otherwise: Number) -> Number:
 
 def chain(x: Number, function: Callable[[FloatArray], tuple[FloatArray, FloatArray]]) -> Number:
     """A function given with its elementwise derivative, applied to x."""
+    return chain_each(x, lambda values, elements: function(values))
+
+
+def chain_each(
+    x: Number, function: Callable[[FloatArray, IntArray], tuple[FloatArray, FloatArray]]
+) -> Number:
+    """A function that differs between elements, applied to x: of values (..., k) and which elements (k,) they are of.
+
+    It is given with its derivative, as in `chain`.
+    """
+    if isinstance(x, Recorded):
+        return apply(lambda values, elements: function(values, elements)[0], x)
+    every = np.arange(nominal(x).shape[-1])
     if isinstance(x, Linearised):
-        value, slope = function(x.value)
+        value, slope = function(x.value, every)
         return x._linear(value, slope)
-    return function(x)[0]
+    return function(x, every)[0]
+
+
+def known_where(test: Callable[[FloatArray], NDArray[np.bool_]], x: Number) -> Number:
+    """x where its value passes the test, NaN elsewhere."""
+
+    def known(values: FloatArray) -> FloatArray:
+        return np.where(test(values), values, np.nan)
+
+    if isinstance(x, Linearised):
+        return Linearised(known(x.value), x.jacobian)
+    if isinstance(x, Recorded):
+        return apply_to_each(known, x)
+    return known(x)
 
 
 def standard_uncertainty(x: Number) -> FloatArray:
     """Standard uncertainty of each value: the norm of its row of derivatives. Zero for plain arrays."""
     if not isinstance(x, Linearised):
-        return np.zeros(x.shape)
+        return np.zeros(nominal(x).shape)
     return np.sqrt(squared_norms(x.jacobian))
 
 
