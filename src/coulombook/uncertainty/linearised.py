@@ -219,9 +219,7 @@ def known_where(test: Callable[[FloatArray], NDArray[np.bool_]], x: Number) -> N
 
     if isinstance(x, Linearised):
         return Linearised(known(x.value), x.jacobian)
-    if isinstance(x, Recorded):
-        return apply_to_each(known, x)
-    return known(x)
+    return apply_to_each(known, x) if isinstance(x, Recorded) else known(x)
 
 
 def standard_uncertainty(x: Number) -> FloatArray:
@@ -232,11 +230,13 @@ def standard_uncertainty(x: Number) -> FloatArray:
 
 
 def squared_norms(jacobian: csr_array) -> FloatArray:
-    """Sum of squares of each row."""
-    merged = jacobian.copy()
-    merged.sum_duplicates()
-    result: FloatArray = np.asarray(merged.multiply(merged).sum(axis=1), dtype=float).ravel()
-    return result
+    """Sum of squares of each row.
+
+    No place of a row may be stored twice: sums, products and selections of matrices of `sparse_map` never do that.
+    """
+    entry_row = np.repeat(np.arange(jacobian.shape[0]), np.diff(jacobian.indptr))
+    squares = np.bincount(entry_row, weights=jacobian.data**2, minlength=jacobian.shape[0])
+    return np.asarray(squares, dtype=np.float64)
 
 
 def covariance(x: Linearised) -> FloatArray:

@@ -94,6 +94,13 @@ def test_uncertainty_of_a_sum_carries_the_covariance_of_its_terms() -> None:
     np.testing.assert_allclose(covariance(XS), np.eye(3))
 
 
+def test_uncertainty_after_many_steps_is_the_root_of_the_diagonal_of_the_covariance() -> None:
+    repeated = sparse_map([0, 0, 1, 1, 1], [0, 0, 2, 1, 2], [1.0, 2.0, -3.0, 0.5, 1.0], (2, 3))
+    number = linear_map(repeated, XS * YS + gather(XS, np.array([2, 2, 0])) / YS - YS)
+    number = number + gather(number, np.array([1, 1]))
+    np.testing.assert_allclose(standard_uncertainty(number) ** 2, np.diag(covariance(number)), rtol=1e-12)
+
+
 def test_plain_numbers_have_no_uncertainty() -> None:
     assert standard_uncertainty(X).tolist() == [0.0, 0.0, 0.0]
 
