@@ -126,8 +126,9 @@ def _ledger(settled: Settled, status: Sequence[str]) -> list[Row]:
 
 
 def _beside(measured: _Measured, row: int) -> float | None:
-    """The uncertainty of a value that exists."""
-    return measured.u[row] if np.isfinite(measured.value[row]) else None
+    """The uncertainty of a value that exists; none of a sum or ratio of nothing, whose zero is not known to be one."""
+    value, u = measured.value[row], measured.u[row]
+    return u if np.isfinite(value) and (value, u) != (0.0, 0.0) else None
 
 
 def _finite(measured: _Measured, row: int) -> float | None:
@@ -154,11 +155,11 @@ def _summary(settled: Settled, closure: Sequence[str]) -> list[Row]:
             "charge / C": charge[row],
             "j / mA cm^-2": density[row],
             "total FE / %": total.value[row],
-            "u(total FE) / %": total.u[row],
+            "u(total FE) / %": _beside(total, row),
             "H2 FE / %": hydrogen.value[row],
             "C1 FE / %": c1.value[row],
             "C2+ FE / %": more.value[row],
-            "u(C2+ FE) / %": more.u[row],
+            "u(C2+ FE) / %": _beside(more, row),
             "C2+/C1": _finite(ratio, row),
             "u(C2+/C1)": _beside(ratio, row),
             "C2+/C1 molar": _finite(molar, row),
