@@ -14,6 +14,7 @@ examples:
   coulombook tally "2043-05-18 mesh"    compute the ledgers into its folder 'results'
   coulombook explain "2043-05-18 mesh"  see why its balance does not close
   coulombook budget "2043-05-18 mesh"   see where its uncertainty comes from
+  coulombook figures "2043-05-18 mesh"  draw it for print
   coulombook curves                     see the calibration curves in ./calibrations
   coulombook show "2043-05-18 mesh"     see its results once more
 
@@ -77,6 +78,28 @@ commented day.toml. A folder that holds something already is left alone.""",
 examples:
   coulombook new "2043-05-18 mesh"              tables as CSV files
   coulombook new "2043-05-18 mesh" --workbook   tables as sheets of day.xlsx""",
+    ),
+    "figures": (
+        "draw publication figures of a day",
+        """\
+Draw a day: figures fit to print, and the table of each as CSV beside it. They go
+into a folder of their own, written whole or not at all; the same day gives the
+same files. What to draw may be named with --only:
+
+  fe                Faradaic efficiencies of each catalyst against potential
+  partial-currents  partial current densities, on geometric and real area
+  selectivity       C2+/C1 of all catalysts against potential
+  closure           total Faradaic efficiency of each run
+  budget            what the uncertainty of the total comes from
+  trace             the log of each run, with its injections
+  curve             each calibration curve used, with its residuals
+  capacitance       charging current of each electrode against scan rate
+  spectrum          each impedance spectrum""",
+        """\
+examples:
+  coulombook figures "2043-05-18 mesh"
+  coulombook figures "2043-05-18 mesh" --only fe --only selectivity --width 178mm
+  coulombook figures "2043-05-18 mesh" --format png --out slides""",
     ),
     "curves": (
         "show and compare calibration curves",

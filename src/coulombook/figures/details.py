@@ -2,16 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
-
 import numpy as np
 
 from coulombook.balance.settle import Settled
 from coulombook.book.tables import Book, Cell, Table
 from coulombook.cell.impedance import circuit_impedance
-from coulombook.figures.data import MARK, Row, known, number
+from coulombook.figures.data import MARK, Row, known
 from coulombook.figures.marks import mark_id
-from coulombook.library.picture import Picture, picture
+from coulombook.library.picture import Picture, axis_heads, picture
 from coulombook.library.shelf import Entry
 
 TRACE = (
@@ -197,26 +195,4 @@ def curve_table(drawn: Picture, name: str, x_head: str, y_head: str) -> Table:
 def curve(book: Book, name: str) -> Table:
     """A calibration curve of the day; see `curve_table`."""
     entry = entry_of(book, name)
-    return curve_table(picture(entry), name, *curve_labels(entry))
-
-
-def curve_labels(entry: Entry) -> tuple[str, str]:
-    """Heads of x and response of a curve: what its axes say."""
-    return (
-        ("mole fraction / ppm", "peak area")
-        if entry.standards.kind == "gas"
-        else ("amount ratio", "integral ratio")
-    )
-
-
-def residual_reach(rows: Iterable[Row], heads: Sequence[str]) -> float:
-    """Half the height of a drawing of residuals: all of them, and the band where it is not far beyond them."""
-    residual, band = heads[3], heads[5]
-    rows = list(rows)
-    off = [
-        abs(value) for row in rows if row["what"] != CURVE and (value := number(row[residual])) is not None
-    ]
-    wide = [abs(value) for row in rows if row["what"] == CURVE and (value := number(row[band])) is not None]
-    most, typical = max(off, default=0.0), float(np.median(wide)) if wide else 0.0
-    half = max(1.05 * most, min(1.1 * max(wide, default=0.0), max(1.5 * most, 1.5 * typical)))
-    return 1.1 * half if half > 0.0 else 1.0
+    return curve_table(picture(entry), name, *axis_heads(entry))

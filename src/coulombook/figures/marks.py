@@ -18,8 +18,9 @@ GREY, BLACK = "#BBBBBB", "#222222"
 BLUE, SKY, GREEN, YELLOW = "#0072B2", "#56B4E9", "#009E73", "#F0E442"
 ORANGE, VERMILION, PURPLE = "#E69F00", "#D55E00", "#CC79A7"
 _COLOURS = (BLUE, ORANGE, GREEN, PURPLE, SKY, VERMILION, YELLOW)
-_HATCHES = ("", "////", "\\\\\\\\", "xxxx", "....", "----", "||||", "++++", "oooo", "//..", "\\\\..", "--..", "||..",
-            "//--", "\\\\||", "**")  # fmt: skip
+# lines alone: a dotted tile is a quarter of a megabyte of circles in an SVG
+_LEAN = ("////", "\\\\\\\\", "xxxx", "----", "||||", "++++")
+_HATCHES = ("", *_LEAN, *(one[:2] for one in _LEAN), "//--", "\\\\||", "//||", "\\\\--")
 
 
 @dataclass(frozen=True, slots=True)
@@ -31,23 +32,23 @@ class Style:
     marker: Marker
 
 
-# products that most days have, so that neighbours in a stack differ in colour as well as in hatch
+# products that days have, each with a hatch of its own, neighbours in a stack with colours far apart
 _PRODUCTS = {
     "hydrogen": Style(GREY, "", "o"),
     "carbon monoxide": Style(VERMILION, "////", "s"),
-    "methane": Style(ORANGE, "", "^"),
+    "methane": Style(ORANGE, "----", "^"),
     "formate": Style(YELLOW, "\\\\\\\\", "D"),
-    "methanol": Style(ORANGE, "xxxx", (5, 0, 0)),
-    "ethylene": Style(BLUE, "", "v"),
-    "ethane": Style(PURPLE, "....", "<"),
-    "ethanol": Style(SKY, "////", "P"),
-    "acetate": Style(GREEN, "....", "X"),
-    "acetaldehyde": Style(PURPLE, "xxxx", ">"),
-    "n-propanol": Style(GREEN, "", "h"),
+    "methanol": Style(ORANGE, "||", (5, 0, 0)),
+    "ethylene": Style(BLUE, "xx", "v"),
+    "ethane": Style(PURPLE, "--", "<"),
+    "ethanol": Style(SKY, "||||", "P"),
+    "acetate": Style(GREEN, "//", "X"),
+    "acetaldehyde": Style(PURPLE, "\\\\", ">"),
+    "n-propanol": Style(GREEN, "++++", "h"),
     "allyl alcohol": Style(SKY, "xxxx", (4, 1, 0)),
-    "propionaldehyde": Style(VERMILION, "....", (5, 1, 0)),
-    "acetone": Style(YELLOW, "oooo", "d"),
-    "propylene": Style(BLUE, "++++", (3, 1, 0)),
+    "propionaldehyde": Style(VERMILION, "++", (5, 1, 0)),
+    "acetone": Style(YELLOW, "//--", "d"),
+    "propylene": Style(BLUE, "\\\\||", (3, 1, 0)),
 }
 _HELD = {(one.colour, one.hatch) for one in _PRODUCTS.values()}
 _FREE = tuple(pair for pair in every(_COLOURS, _HATCHES) if pair not in _HELD)
@@ -59,7 +60,7 @@ _CATALYSTS = tuple(
     Style(colour, hatch, marker)
     for colour, hatch, marker in zip(
         (BLUE, VERMILION, GREEN, PURPLE, ORANGE, SKY, BLACK),
-        ("", "////", "....", "xxxx", "\\\\\\\\", "----", "||||"),
+        ("", "////", "++++", "xxxx", "\\\\\\\\", "----", "||||"),
         ("o", "s", "^", "D", "v", "P", "X"),
         strict=True,
     )

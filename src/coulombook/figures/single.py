@@ -22,10 +22,11 @@ from coulombook.figures.sheet import (
     plain_labels,
     shown,
 )
-from coulombook.library.picture import LEVEL
+from coulombook.library.picture import LEVEL, Picture, residual_reach
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
+    from matplotlib.figure import Figure
 
 _TWO_PANELS = 0.85  # height over width
 _HIGHEST_MM = 95.0
@@ -161,15 +162,26 @@ def curve_residuals(book: Book, name: str, ax: Axes | None = None, *, width_mm: 
 
 def draw_curve(table: Table, ax: Axes | None = None, width_mm: float = COLUMN_MM) -> Axes:
     """The figure of a table of `coulombook.figures.details.curve_table`."""
-    rows = list(table.records())
     if ax is not None:
-        _curve(ax, rows, table.heads)
+        _curve(ax, list(table.records()), table.heads)
         ax.set_xlabel(table.heads[1], parse_math=False)
         plain_labels(ax)
         return ax
+    return _curve_sheet(table, "", width_mm).axes[0]
+
+
+def curve_sheet(drawn: Picture, name: str, heads: tuple[str, str], title: str, width_mm: float) -> Figure:
+    """A curve and its residuals under a title, on a sheet of the house."""
+    return _curve_sheet(details.curve_table(drawn, name, *heads), title, width_mm)
+
+
+def _curve_sheet(table: Table, title: str, width_mm: float) -> Figure:
+    rows = list(table.records())
     with house_style():
         figure = new_figure(width_mm, min(width_mm * _TWO_PANELS, _HIGHEST_MM))
         upper, lower = figure.subplots(2, 1, sharex=True, height_ratios=(2.2, 1))
+        if title:
+            figure.suptitle(title, fontsize=8, parse_math=False)
         handles, names = _curve(upper, rows, table.heads)
         _residuals(lower, rows, table.heads)
         lower.set_xlabel(table.heads[1], parse_math=False)
@@ -177,7 +189,7 @@ def draw_curve(table: Table, ax: Axes | None = None, width_mm: float = COLUMN_MM
         legend(upper, handles, names, own=True)
         plain_labels(upper)
         plain_labels(lower)
-    return upper  # type: ignore[no-any-return] # subplots is typed as an array of anything
+    return figure
 
 
 def _wide(heads: Sequence[str]) -> bool:
@@ -233,8 +245,10 @@ def _residuals(ax: Axes, rows: Sequence[Row], heads: Sequence[str]) -> None:
         ax.set_xscale("log")
         plain_decades(ax, "x")
     ax.set_ylabel(residual, parse_math=False)
-    half = details.residual_reach(rows, heads)
-    ax.set_ylim(-half, half)
+    standards = [row for row in rows if row["what"] in (details.STANDARD, details.OUTLYING)]
+    known = [row for row in grid if row[reading_band] is not None]
+    half = residual_reach(np.array(_column(standards, residual)), np.array(_column(known, reading_band)))
+    ax.set_ylim(-1.1 * half, 1.1 * half)
 
 
 def _alone(paint: Any, table: Table, ax: Axes | None, width_mm: float) -> Axes:

@@ -97,6 +97,22 @@ def picture(entry: Entry, grid: int = 200, level: float = LEVEL) -> Picture:
     )
 
 
+def axis_heads(entry: Entry) -> tuple[str, str]:
+    """What the axes of a curve say, x and response."""
+    if entry.x_scale == 1.0:
+        return "amount ratio", "integral ratio"
+    return "mole fraction / ppm", "peak area"
+
+
+def residual_reach(residual: FloatArray, band: FloatArray) -> float:
+    """Half the height of a drawing of residuals: all of them, and the band where it is not far beyond them."""
+    wide = np.abs(band[np.isfinite(band)])
+    most = float(np.abs(residual).max()) if residual.size else 0.0
+    typical = float(np.median(wide)) if wide.size else 0.0
+    half = max(1.05 * most, min(1.1 * float(wide.max(initial=0.0)), max(1.5 * most, 1.5 * typical)))
+    return half if half > 0.0 else 1.0
+
+
 def reading_scatter(entry: Entry) -> tuple[float, float] | None:
     """Standard deviation of a single reading over the response, at the lowest and the highest standard. [1]
 

@@ -1,30 +1,22 @@
-"""Drawings of one curve: characters for the terminal, and a figure for paper.
+"""A drawing of one curve in characters: standards and curve above, residuals with the band of a reading below.
 
-Both show the same: standards and curve above, residuals with the band of a reading below.
+`coulombook.figures.single` draws the same for paper.
 """
 
 from __future__ import annotations
 
 import math
-import os
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
-from pathlib import Path
-from tempfile import mkstemp
 
 import numpy as np
 from rich.text import Text
 
-from coulombook.library.picture import FloatArray, Picture
-from coulombook.report.numbers import brief
+from coulombook.library.picture import FloatArray, Picture, residual_reach
+from coulombook.prose.numbers import brief
 
 ROWS, RESIDUAL_ROWS = 14, 9  # an odd number has a middle row
 NARROWEST, WIDEST = 24, 100  # columns of the drawing, without its labels
-FORMATS = (".svg", ".png", ".pdf")
-
-# of the palette of Okabe & Ito (2008), which colour-blind readers tell apart
-_CURVE, _BAND, _ODD, _MARK = "#0072B2", "#56B4E9", "#D55E00", "#666666"
-_DOTS_PER_INCH = 200
 
 
 @dataclass(frozen=True, slots=True)
@@ -93,7 +85,7 @@ def terminal_plot(
     """A curve and its residuals in characters, in so many columns. Colour repeats what the characters say."""
     signs = PLAIN if ascii_only else BOXES
     y = Axis(*_ends([drawn.y, drawn.grid_y], drawn.wide), drawn.wide, ROWS)
-    half = _half(drawn)
+    half = residual_reach(drawn.residual, drawn.scaled(drawn.reading_band))
     off = Axis(-half, half, False, RESIDUAL_ROWS)
     y_ticks = y.ticks(5)
     residual_ticks = [-_round_down(half), 0.0, _round_down(half)]
@@ -202,16 +194,6 @@ def _ends(values: Sequence[FloatArray], logarithmic: bool) -> tuple[float, float
     return (low, high) if high > low else (low - 1.0, high + 1.0)
 
 
-def _half(drawn: Picture) -> float:
-    """Half the height of the residuals' drawing: all residuals, and the band where it is not far beyond them."""
-    band = drawn.scaled(drawn.reading_band)
-    band = np.abs(band[np.isfinite(band)])
-    residual = float(np.abs(drawn.residual).max()) if drawn.residual.size else 0.0
-    typical = float(np.median(band)) if band.size else 0.0
-    half = max(1.05 * residual, min(1.1 * float(band.max(initial=0.0)), max(1.5 * residual, 1.5 * typical)))
-    return half if half > 0.0 else 1.0
-
-
 def _round_down(value: float) -> float:
     """The largest 1, 2 or 5 times a power of ten that is not above a value."""
     power = 10.0 ** math.floor(math.log10(value) + 1e-12)
@@ -249,127 +231,3 @@ def _tick_line(x: Axis, indent: int) -> str:
         line[start : start + len(label)] = label
         free = start + len(label) + 1
     return "".join(line).rstrip()
-
-
-# --- the figure
-
-
-def write_figure(drawn: Picture, path: Path, *, title: str, x_label: str, y_label: str) -> None:
-    """Write a figure of a curve as SVG, PNG or PDF by the name's ending: beside its place first, then into it.
-
-    Letters stay letters in SVG and are embedded in PDF. No text is taken for markup.
-
-    Raises
-    ------
-    ValueError
-        Another ending.
-    OSError
-        The place cannot be written.
-    """
-    ending = path.suffix.lower()
-    if ending not in FORMATS:
-        raise ValueError(f"a figure is written as {', '.join(FORMATS)}, not '{path.suffix}'")
-    # beside the place it goes to, so that the last step is a change of name
-    handle, beside = mkstemp(prefix=".figure-", suffix=ending, dir=path.parent)
-    os.close(handle)
-    try:
-        _save(drawn, beside, ending, title, x_label, y_label)
-        # a temporary file is private; a figure is like any other file its owner writes
-        mask = os.umask(0)
-        os.umask(mask)
-        os.chmod(beside, 0o666 & ~mask)
-        os.replace(beside, path)
-    except BaseException:
-        os.unlink(beside)
-        raise
-
-
-def _save(drawn: Picture, file: str, ending: str, title: str, x_label: str, y_label: str) -> None:
-    import warnings
-
-    import matplotlib as mpl
-    from matplotlib.figure import Figure
-
-    with mpl.rc_context(), warnings.catch_warnings():
-        # a letter the font lacks becomes a box; the title says the name in full elsewhere
-        warnings.simplefilter("ignore")
-        mpl.rcdefaults()  # the reader's own settings would change what the figure says
-        mpl.rcParams.update(
-            {
-                "svg.fonttype": "none",
-                "svg.hashsalt": "coulombook",
-                "pdf.fonttype": 42,
-                "font.size": 9.0,
-                "axes.spines.top": False,
-                "axes.spines.right": False,
-                "axes.unicode_minus": False,
-            }
-        )
-        figure = Figure(figsize=(6.3, 5.2), layout="constrained")
-        upper, lower = figure.subplots(2, 1, sharex=True, height_ratios=(3, 1.4))
-        figure.suptitle(title, fontsize=10, parse_math=False)
-        band = f"{drawn.level * 100:.0f} % band"
-        # a band may reach below zero, where a logarithmic axis ends; it is drawn down to the axis
-        floor = float(drawn.grid_y.min()) * 0.5 if drawn.wide else -math.inf
-        known = bool(np.isfinite(drawn.reading_band).any())
-        if known:
-            for wide, alpha, what in (
-                (drawn.reading_band, 0.35, "of a reading"),
-                (drawn.curve_band, 0.6, "of the curve"),
-            ):
-                below = np.maximum(drawn.grid_y - wide, floor)
-                upper.fill_between(
-                    drawn.grid_x,
-                    below,
-                    drawn.grid_y + wide,
-                    color=_BAND,
-                    alpha=alpha,
-                    lw=0,
-                    label=f"{band} {what}",
-                )
-        upper.plot(drawn.grid_x, drawn.grid_y, color=_CURVE, lw=1.3, label="curve")
-        _points(upper, drawn, drawn.y, labels=True)
-        lower.axhline(0.0, color=_CURVE, lw=1.3)
-        if known:
-            for wide, alpha in ((drawn.reading_band, 0.35), (drawn.curve_band, 0.6)):
-                off = drawn.scaled(wide)
-                lower.fill_between(drawn.grid_x, -off, off, color=_BAND, alpha=alpha, lw=0)
-        _points(lower, drawn, drawn.residual, labels=False)
-        half = _half(drawn) * 1.1
-        lower.set_ylim(-half, half)
-        for value, what, line in (
-            (drawn.detection, "detection limit", ":"),
-            (drawn.quantification, "quantification limit", "--"),
-        ):
-            if value is not None:
-                upper.axvline(value, color=_MARK, lw=0.9, ls=line, label=what)
-                lower.axvline(value, color=_MARK, lw=0.9, ls=line)
-        if drawn.wide:
-            upper.set_xscale("log")
-            upper.set_yscale("log")
-        upper.set_ylabel(y_label, parse_math=False)
-        lower.set_ylabel("residual / %" if drawn.wide else "residual", parse_math=False)
-        lower.set_xlabel(x_label, parse_math=False)
-        upper.legend(loc="upper left", fontsize=8, edgecolor="none", framealpha=0.9)
-        figure.align_ylabels([upper, lower])
-        # without a date, the same curve gives the same file
-        without_date = {".svg": {"Date": None}, ".pdf": {"CreationDate": None}, ".png": {}}[ending]
-        figure.savefig(file, format=ending[1:], dpi=_DOTS_PER_INCH, metadata=without_date)
-
-
-def _points(axes: object, drawn: Picture, values: FloatArray, *, labels: bool) -> None:
-    """Standards as circles, the outlying one in a shape and colour of its own."""
-    usual = np.ones(values.size, dtype=bool)
-    if drawn.outlier is not None:
-        usual[drawn.outlier] = False
-    style = {"ls": "none", "ms": 4.5, "zorder": 3}
-    if usual.any():
-        axes.plot(  # type: ignore[attr-defined] # matplotlib is loaded late; its Axes stand here as object
-            drawn.x[usual], values[usual], marker="o", mfc="white", mec="black", **style,
-            label="standard" if labels else None,
-        )  # fmt: skip
-    if drawn.outlier is not None:
-        axes.plot(  # type: ignore[attr-defined] # matplotlib is loaded late; its Axes stand here as object
-            drawn.x[~usual], values[~usual], marker="X", color=_ODD, **{**style, "ms": 7},
-            label="outlying standard" if labels else None,
-        )  # fmt: skip

@@ -8,7 +8,6 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from datetime import date
-from pathlib import Path
 
 import numpy as np
 from rich.console import Console
@@ -19,10 +18,10 @@ from coulombook.compare.curve_drift import Change, SlopeRatio
 from coulombook.curves.judgement import ADEQUATE_GOODNESS, Judgement
 from coulombook.library.answer import Answer
 from coulombook.library.history import Comparison
-from coulombook.library.picture import picture, reading_scatter
+from coulombook.library.picture import axis_heads, picture, reading_scatter
 from coulombook.library.shelf import Entry, Library, Validity, Verdict, validity
 from coulombook.report.checks_view import show_checks
-from coulombook.report.curve_plot import legend, terminal_plot, write_figure
+from coulombook.report.curve_plot import legend, terminal_plot
 from coulombook.report.grid import GAP, Column, grid
 from coulombook.report.numbers import ABSENT, between, brief, fixed, plain, with_uncertainty
 from coulombook.report.terminal import hanging
@@ -167,13 +166,6 @@ def _range(entry: Entry) -> str:
 # --- one of them
 
 
-def labels(entry: Entry) -> tuple[str, str]:
-    """Names of the axes, x and y."""
-    if entry.x_scale == 1.0:
-        return "amount ratio", "integral ratio"
-    return "mole fraction / ppm", "peak area"
-
-
 def show_curve(entry: Entry, console: Console, on: date) -> None:
     """Print one curve: coefficients, range, limits, verdicts in plain words, and a plot."""
     console.print(Text(visible(entry.name, 100), style="bold"))
@@ -189,7 +181,7 @@ def show_curve(entry: Entry, console: Console, on: date) -> None:
             _say(label, text, console, "" if good else _OTHERWISE)
     console.print()
     drawn = picture(entry)
-    x_label, y_label = labels(entry)
+    x_label, y_label = axis_heads(entry)
     ascii_only = console.options.ascii_only
     plot = terminal_plot(drawn, console.width, x_label=x_label, y_label=y_label, ascii_only=ascii_only)
     console.print(plot, soft_wrap=True)
@@ -207,7 +199,7 @@ def _say(label: str, text: str, console: Console, style: str = "") -> None:
 def _show_coefficients(entry: Entry, console: Console) -> None:
     curve, scale = entry.curve, entry.x_scale
     assert curve is not None
-    x_label, y_label = labels(entry)
+    x_label, y_label = axis_heads(entry)
     terms = [("a0", "a1 x", "a2 x^2")[power] for power in curve.powers]
     levels = np.unique(entry.standards.x).size
     standards = f", {entry.standards.x.size} standards on {levels} levels" if entry.judgement else ""
@@ -342,13 +334,6 @@ def _rise_verdict(judged: Judgement, entry: Entry) -> tuple[str, str, bool]:
 
 def _form_name(entry: Entry) -> str:
     return entry.curve.form if entry.curve else entry.standards.options.form
-
-
-def write_entry(entry: Entry, path: Path) -> None:
-    """Write a figure of one curve; see `coulombook.report.curve_plot.write_figure`."""
-    x_label, y_label = labels(entry)
-    title = f"{visible(entry.name, 60)}, {visible(entry.calibration.name, 60)}"
-    write_figure(picture(entry), path, title=title, x_label=x_label, y_label=y_label)
 
 
 # --- one against another

@@ -4,14 +4,13 @@ from __future__ import annotations
 
 import dataclasses
 import re
-from pathlib import Path
 
 import numpy as np
 import pytest
 from rich.cells import cell_len
 
 from coulombook.library.picture import Picture
-from coulombook.report.curve_plot import Axis, legend, terminal_plot, write_figure
+from coulombook.report.curve_plot import Axis, legend, terminal_plot
 
 LABELS = {"x_label": "mole fraction / ppm", "y_label": "peak area"}
 
@@ -131,78 +130,3 @@ def test_what_lies_outside_an_axis_has_no_place() -> None:
         None,
         None,
     ]
-
-
-@pytest.mark.parametrize(("ending", "begins"), [(".svg", b"<?xml"), (".png", b"\x89PNG"), (".PDF", b"%PDF")])
-def test_a_figure_is_written_whole_in_the_format_of_its_name(
-    tmp_path: Path, ending: str, begins: bytes
-) -> None:
-    path = tmp_path / f"curve{ending}"
-    write_figure(drawing(wide=True, outlier=1), path, title="t", **LABELS)
-    assert path.read_bytes().startswith(begins)
-    assert [one.name for one in tmp_path.iterdir()] == [path.name]
-
-
-def test_letters_of_a_figure_stay_letters_and_are_taken_for_no_markup(tmp_path: Path) -> None:
-    path = tmp_path / "curve.svg"
-    write_figure(drawing(outlier=1), path, title=r"$\frac{1}{0}$ <script>alert(1)</script> & 電極", **LABELS)
-    text = path.read_text(encoding="utf-8")
-    assert r"$\frac{1}{0}$ &lt;script&gt;alert(1)&lt;/script&gt; &amp; 電極" in text
-    for word in (
-        "mole fraction / ppm",
-        "peak area",
-        "residual",
-        "standard",
-        "outlying standard",
-        "detection limit",
-    ):
-        assert f">{word}</text>" in text
-    assert "95 % band of a reading" in text
-    assert "<script" not in text
-    assert not re.search(r"href=\"http", text)
-
-
-@pytest.mark.parametrize("ending", ["svg", "png", "pdf"])
-def test_the_same_curve_gives_the_same_figure(tmp_path: Path, ending: str) -> None:
-    one, other = tmp_path / f"one.{ending}", tmp_path / f"other.{ending}"
-    for path in (one, other):
-        write_figure(drawing(), path, title="t", **LABELS)
-    assert one.read_bytes() == other.read_bytes()
-
-
-def test_letters_of_a_pdf_are_embedded(tmp_path: Path) -> None:
-    write_figure(drawing(), tmp_path / "c.pdf", title="t", **LABELS)
-    content = (tmp_path / "c.pdf").read_bytes()
-    assert b"/FontFile2" in content  # TrueType
-    assert b"/Type3" not in content
-
-
-def test_a_figure_that_cannot_be_written_leaves_nothing(tmp_path: Path) -> None:
-    with pytest.raises(ValueError, match=r"written as \.svg, \.png, \.pdf"):
-        write_figure(drawing(), tmp_path / "c.bmp", title="t", **LABELS)
-    (tmp_path / "c.svg").mkdir()
-    with pytest.raises(OSError, match="directory"):
-        write_figure(drawing(), tmp_path / "c.svg", title="t", **LABELS)
-    assert [one.name for one in tmp_path.iterdir()] == ["c.svg"]
-
-
-def test_settings_of_the_reader_change_no_figure(tmp_path: Path) -> None:
-    import matplotlib as mpl
-
-    write_figure(drawing(), tmp_path / "one.svg", title="t", **LABELS)
-    with mpl.rc_context({"text.usetex": True, "axes.facecolor": "red", "svg.fonttype": "path"}):
-        write_figure(drawing(), tmp_path / "other.svg", title="t", **LABELS)
-        assert mpl.rcParams["axes.facecolor"] == "red"
-    assert (tmp_path / "one.svg").read_bytes() == (tmp_path / "other.svg").read_bytes()
-
-
-def test_no_figure_opens_a_window_or_keeps_state() -> None:
-    import subprocess
-    import sys
-
-    code = (
-        "import sys; from tests.unit.report.test_curve_plot import *; from pathlib import Path; import tempfile\n"
-        "with tempfile.TemporaryDirectory() as d: write_figure(drawing(), Path(d) / 'c.png', title='t', **LABELS)\n"
-        "assert 'matplotlib.figure' in sys.modules; assert 'matplotlib.pyplot' not in sys.modules"
-    )
-    subprocess.run([sys.executable, "-c", code], check=True, timeout=60)

@@ -23,7 +23,7 @@ def run(options: argparse.Namespace) -> int:
     from coulombook.library.answer import answer, answer_checks
     from coulombook.library.names import UnknownCurve
     from coulombook.library.shelf import open_library
-    from coulombook.report.curves_view import show_answer, write_entry
+    from coulombook.report.curves_view import show_answer
     from coulombook.report.terminal import console_for
     from coulombook.report.text import visible
     from coulombook.species import load_species
@@ -62,7 +62,9 @@ def run(options: argparse.Namespace) -> int:
         show_answer(found, library, console_for(sys.stdout), on)
     if figure is not None and found.entry is not None and found.entry.curve is not None:
         try:
-            write_entry(found.entry, figure)
+            from coulombook.report.figure_files import write_curve
+
+            write_curve(found.entry, figure)
         except OSError as error:
             return refuse(f"the figure cannot be written: {plain_words(error)}")
         with quiet_pipe():
@@ -93,10 +95,10 @@ def give_options(parser: argparse.ArgumentParser) -> None:
 
 def _no_figure(path: Path) -> str | None:
     """Why a figure cannot be written there, before any work is done."""
-    from coulombook.report.curve_plot import FORMATS
+    from coulombook.report.figure_files import ENDINGS
 
-    if path.suffix.lower() not in FORMATS:
-        return f"a figure is written as {', '.join(FORMATS)}; '{path.name}' has another ending"
+    if path.suffix.lower() not in ENDINGS:
+        return f"a figure is written as {', '.join(ENDINGS)}; '{path.name}' has another ending"
     if not path.parent.is_dir():
         return f"the folder of the figure, '{path.parent}', does not exist"
     return f"'{path}' is a folder" if path.is_dir() else None
