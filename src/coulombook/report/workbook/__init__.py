@@ -1,0 +1,44 @@
+"""The audit workbook: every number of a day, laid out in live formulas from peak area to charge balance."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from datetime import datetime
+
+from coulombook.book import Book
+
+NAME = "book.xlsx"
+
+# a day without any date; the format knows none before 1980
+_NO_DATE = datetime(1980, 1, 1)
+
+
+def workbook_bytes(book: Book) -> bytes:
+    """The workbook of a book that holds what it was computed from (``book.settled``).
+
+    The same book gives the same bytes. Raises ValueError for a book without it.
+    """
+    from coulombook.report.workbook.about import about_lines
+    from coulombook.report.workbook.assemble import assemble
+    from coulombook.report.workbook.write import written
+
+    if book.settled is None:
+        raise ValueError("a workbook needs what the tables were computed from")
+    sheets, charts = assemble(book)
+    return written(sheets, charts, about_lines(book, sheets), book.title or book.day, _date(book))
+
+
+def _date(book: Book) -> datetime:
+    """The day's own date: as its settings say, else that of its first run."""
+    assert book.settled is not None
+    day = book.settled.plan.day
+    if day.settings.date is not None:
+        return datetime(day.settings.date.year, day.settings.date.month, day.settings.date.day)
+    return min(_starts(book), default=_NO_DATE)
+
+
+def _starts(book: Book) -> Iterator[datetime]:
+    assert book.settled is not None
+    for run in book.settled.plan.runs:
+        if run.started is not None:
+            yield run.started.replace(tzinfo=None, microsecond=0)
