@@ -1,4 +1,4 @@
-"""Catalysts against one another at one level: differences and ratios with intervals in which shared errors cancel.
+"""Catalysts against one another at one point: differences and ratios with intervals in which shared errors cancel.
 
 What two catalysts share (one flow meter, one curve) moves both and leaves their difference or ratio nearly alone; what
 is each run's own, and the scatter between runs that nobody declared, does not.
@@ -12,27 +12,20 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from coulombook.compare.replicates import Scatter
 from coulombook.compare.statistics import holm, student_p, student_quantile
-from coulombook.uncertainty.linearised import (
-    FloatArray,
-    IntArray,
-    Linearised,
-    Number,
-    gather,
-    linear_map,
-    nominal,
-    sparse_map,
-    standard_uncertainty,
-)
-from coulombook.uncertainty.scatter import pool
+from coulombook.uncertainty.linearised import FloatArray, Linearised, standard_uncertainty
+
+CLEAR_OF_ZERO = 3.0  # standard uncertainties: less and the interval of a logarithm is no interval of a ratio
+_ENDLESS = 1e9  # degrees of freedom: Student's t is the normal distribution to nine digits
 
 
 @dataclass(frozen=True, slots=True)
 class Pair:
-    """One catalyst against another. ``ratio`` is NaN where a mean is not above zero.
+    """One catalyst against another, ``one`` having the larger mean.
 
-    ``p`` is that of equal means, ``p_adjusted`` after Holm over all pairs of the family; ``effect`` is the difference
-    in standard deviations of a single run.
+    ``ratio`` is NaN where one of the means is not clear of zero. ``p`` is that of equal catalysts, from the ratio
+    where there is one and from the difference elsewhere; ``p_holm`` is it after Holm over the family.
     """
 
     one: str
@@ -46,123 +39,101 @@ class Pair:
     ratio_high: float
     degrees_of_freedom: float
     p: float
-    p_adjusted: float
-    effect: float
+    p_holm: float
+
+    def told_apart(self, level: float) -> bool:
+        """Whether the family as a whole tells the two apart at a level of confidence."""
+        return self.p_holm < 1.0 - level
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Contest:
-    """Catalysts at one level, best mean first, with all their pairs."""
+    """Catalysts at one point, largest mean first, with all their pairs."""
 
     catalysts: tuple[str, ...]
     mean: FloatArray
     u: FloatArray
-    runs: tuple[int, ...]
     pairs: tuple[Pair, ...]
 
-    def tied_with_best(self, alpha: float) -> tuple[str, ...]:
-        """Catalysts that the data cannot tell from the best one."""
-        best = self.catalysts[0]
-        return tuple(pair.other for pair in self.pairs if pair.one == best and not pair.p_adjusted < alpha)
 
+def contest(x: Linearised, catalysts: Sequence[str], scatter: Scatter, level: float = 0.95) -> Contest:
+    """Compare catalysts by their means at one point.
 
-def contest(x: Number, catalyst: Sequence[str], level: float = 0.95) -> Contest:
-    """Compare catalysts by runs of one level.
-
-    The scatter between runs is taken as common to the catalysts of the level, so that a few replicates of each are
-    enough to know it; beyond what the runs' own uncertainties explain it enters with its degrees of freedom
-    (Welch-Satterthwaite).
+    Differences on the quantity, ratios on its logarithm, where a relative error that both share cancels exactly. The
+    degrees of freedom are those of Welch and Satterthwaite: the stated uncertainties count as known, the scatter
+    between runs as well as it was estimated, and of two catalysts neither need scatter as the other does.
 
     Parameters
     ----------
-    x : (n_runs,) numbers
-        One quantity of each run.
-    catalyst : (n_runs,) sequence of str
+    x : (n_catalysts,) Linearised
+        Means, the errors of `Scatter` among their errors.
+    catalysts : (n_catalysts,) sequence of str
+    scatter : Scatter
     level : float
         Level of confidence of the intervals.
     """
-    names = list(dict.fromkeys(catalyst))
-    place = {name: number for number, name in enumerate(names)}
-    group = np.array([place[name] for name in catalyst], dtype=np.intp)
-    found = pool(x, group, len(names))
-    scatter = _common_scatter(x, group, len(names))
-    mean, count = nominal(found.mean), found.count
-    u = np.sqrt(standard_uncertainty(found.mean) ** 2 + scatter.unexplained / count)
-    order = sorted(range(len(names)), key=lambda number: -mean[number])
-    ranked = [(a, b) for place_a, a in enumerate(order) for b in order[place_a + 1 :]]
-    raw = [_pair(found.mean, count, scatter, names, a, b, level) for a, b in ranked]
-    adjusted = holm([pair.p for pair in raw])
-    pairs = tuple(replace(pair, p_adjusted=p) for pair, p in zip(raw, adjusted, strict=True))
+    rows = x.jacobian.toarray()
+    u = standard_uncertainty(x)
+    order = sorted(range(len(catalysts)), key=lambda number: -x.value[number])
+    pairs = [
+        _pair(x.value, rows, u, catalysts, (a, b), scatter, level)
+        for place, a in enumerate(order)
+        for b in order[place + 1 :]
+    ]
     return Contest(
-        tuple(names[number] for number in order),
-        mean[order],
+        tuple(catalysts[number] for number in order),
+        x.value[order],
         u[order],
-        tuple(int(count[number]) for number in order),
-        pairs,
+        family([pairs])[0],
     )
 
 
-@dataclass(frozen=True, slots=True)
-class _Scatter:
-    """Variance of a run about its catalyst's mean: all of it, and what the runs' uncertainties leave unexplained."""
-
-    variance: float
-    unexplained: float
-    degrees_of_freedom: int
-
-
-def _common_scatter(x: Number, group: IntArray, groups: int) -> _Scatter:
-    pooled = pool(x, group, groups)
-    freedom = int((pooled.count - 1).sum())
-    if freedom == 0:
-        return _Scatter(math.nan, 0.0, 0)
-    variance = float((pooled.residual**2).sum()) / freedom
-    explained = 0.0
-    if isinstance(x, Linearised):
-        n = len(group)
-        own = standard_uncertainty(x) ** 2
-        averaging = sparse_map(group, np.arange(n), 1.0 / pooled.count[group], (groups, n))
-        within = (averaging @ own - standard_uncertainty(linear_map(averaging, x)) ** 2) * pooled.count
-        explained = float(within.sum()) / freedom
-    return _Scatter(variance, max(0.0, variance - explained), freedom)
+def family(points: Sequence[Sequence[Pair]]) -> list[tuple[Pair, ...]]:
+    """Pairs of several points judged together: at most one family in 1/(1 - level) holds a false verdict."""
+    adjusted = iter(holm([pair.p for pairs in points for pair in pairs]))
+    return [tuple(replace(pair, p_holm=next(adjusted)) for pair in pairs) for pairs in points]
 
 
 def _pair(
-    mean: Number, count: FloatArray, scatter: _Scatter, names: Sequence[str], a: int, b: int, level: float
+    mean: FloatArray,
+    rows: FloatArray,
+    u: FloatArray,
+    names: Sequence[str],
+    pair: tuple[int, int],
+    scatter: Scatter,
+    level: float,
 ) -> Pair:
-    one, other = (gather(mean, np.array([number], dtype=np.intp)) for number in (a, b))
-    weight = 1.0 / count[a] + 1.0 / count[b]
-    value, u, freedom = _with_scatter(one - other, scatter, weight)
-    half = _quantile(freedom, level) * u
-    p = math.nan if not u > 0 else _tail(value / u, freedom)
-    x_a, x_b = float(nominal(one)[0]), float(nominal(other)[0])
+    a, b = pair
+    difference = float(mean[a] - mean[b])
+    of_difference, freedom = _uncertainty(rows[a] - rows[b], scatter)
+    half = _quantile(freedom, level) * of_difference
+    p = _tail(difference, of_difference, freedom)
     ratio = ratio_low = ratio_high = math.nan
-    if x_a > 0 and x_b > 0:
-        # on the logarithm, where a relative error that both share cancels exactly
-        relative = 1.0 / (count[a] * x_a**2) + 1.0 / (count[b] * x_b**2)
-        logarithm, u_log, freedom_log = _with_scatter(np.log(one) - np.log(other), scatter, relative)
-        reach = _quantile(freedom_log, level) * u_log
+    if min(mean[a] - CLEAR_OF_ZERO * u[a], mean[b] - CLEAR_OF_ZERO * u[b]) > 0:
+        logarithm = math.log(mean[a] / mean[b])
+        of_logarithm, freedom = _uncertainty(rows[a] / mean[a] - rows[b] / mean[b], scatter)
+        reach = _quantile(freedom, level) * of_logarithm
         ratio, ratio_low, ratio_high = (math.exp(logarithm + shift) for shift in (0.0, -reach, reach))
-    deviation = math.sqrt(scatter.variance) if scatter.variance > 0 else math.nan
+        p = _tail(logarithm, of_logarithm, freedom)
     return Pair(
-        names[a], names[b], value, u, value - half, value + half, ratio, ratio_low, ratio_high, freedom, p, p,
-        value / deviation,
+        names[a], names[b], difference, of_difference, difference - half, difference + half, ratio, ratio_low,
+        ratio_high, freedom, p, p,
     )  # fmt: skip
 
 
-def _with_scatter(x: Number, scatter: _Scatter, weight: float) -> tuple[float, float, float]:
-    """Value, standard uncertainty and degrees of freedom of a contrast whose runs weigh ``weight`` in its variance."""
-    square = float(standard_uncertainty(x)[0]) ** 2 + scatter.unexplained * weight
-    freedom = math.inf
-    if scatter.unexplained > 0:
-        freedom = scatter.degrees_of_freedom * square**2 / (scatter.variance * weight) ** 2
-    return float(nominal(x)[0]), math.sqrt(square), freedom
+def _uncertainty(row: FloatArray, scatter: Scatter) -> tuple[float, float]:
+    """Standard uncertainty of a contrast with these errors, and its degrees of freedom."""
+    whole = float(row @ row)
+    own = row[scatter.first : scatter.first + len(scatter.group)]
+    parts = np.bincount(scatter.group, own**2, len(scatter.freedom))
+    doubt = float((parts**2 / scatter.freedom).sum())
+    return math.sqrt(whole), whole**2 / doubt if doubt > 0 else math.inf
 
 
 def _quantile(freedom: float, level: float) -> float:
-    # Student's t with more than 1e9 degrees of freedom is the normal distribution to nine digits
-    return student_quantile(min(freedom, 1e9), level)
+    return student_quantile(min(freedom, _ENDLESS), level)
 
 
-def _tail(t: float, freedom: float) -> float:
-    return student_p(t, min(freedom, 1e9))
+def _tail(value: float, u: float, freedom: float) -> float:
+    """Two-sided probability; NaN where nothing is uncertain."""
+    return math.nan if not u > 0 else student_p(value / u, min(freedom, _ENDLESS))

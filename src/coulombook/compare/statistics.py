@@ -1,8 +1,8 @@
-"""Tests between groups of replicates: Welch, one-way analysis of variance, Holm, random effects.
+"""Tests between groups of replicates: Welch, one-way analysis of variance, Holm.
 
 Sources: Welch, Biometrika 34 (1947) 28; Satterthwaite, Biometrics Bull. 2 (1946) 110; Holm, Scand. J. Stat. 6 (1979)
-65; Hedges, J. Educ. Stat. 6 (1981) 107; DerSimonian & Laird, Control. Clin. Trials 7 (1986) 177. Student's t and F come
-from `scipy.special`, which loads in a third of the time of `scipy.stats`.
+65; Hedges, J. Educ. Stat. 6 (1981) 107. Student's t and F come from `scipy.special`, which loads in a third of the time
+of `scipy.stats`.
 """
 
 from __future__ import annotations
@@ -178,35 +178,3 @@ def holm(p: Sequence[float]) -> list[float]:
         highest = max(highest, min(1.0, (len(order) - place) * p[number]))
         adjusted[number] = highest
     return adjusted
-
-
-@dataclass(frozen=True, slots=True)
-class RandomEffects:
-    """Values with uncertainties pooled: ``between`` is the standard deviation their uncertainties do not explain."""
-
-    mean: float
-    u: float
-    between: float
-    chi_square: float
-    p: float  # that the values agree within their uncertainties
-
-
-def random_effects(values: FloatArray, u: FloatArray) -> RandomEffects:
-    """Weighted mean of values that may disagree by more than their uncertainties (DerSimonian & Laird).
-
-    Raises ValueError for an uncertainty that is not above zero.
-    """
-    from scipy.special import chdtrc
-
-    if not (u > 0).all():
-        raise ValueError("every value needs an uncertainty above zero")
-    w = 1.0 / u**2
-    fixed = float((w * values).sum() / w.sum())
-    q = float((w * (values - fixed) ** 2).sum())
-    freedom = len(values) - 1
-    if freedom == 0:
-        return RandomEffects(float(values[0]), float(u[0]), 0.0, 0.0, 1.0)
-    tau2 = max(0.0, (q - freedom) / float(w.sum() - (w**2).sum() / w.sum()))
-    star = 1.0 / (u**2 + tau2)
-    mean = float((star * values).sum() / star.sum())
-    return RandomEffects(mean, float(star.sum() ** -0.5), math.sqrt(tau2), q, float(chdtrc(freedom, q)))

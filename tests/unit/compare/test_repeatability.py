@@ -1,0 +1,86 @@
+"""Scatter between runs: common to all, or apart where one scatters more."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+from scipy import stats
+
+from coulombook.compare.repeatability import Groups, repeatability
+
+
+def _groups(runs: list[np.ndarray], explained: float, owner: list[int] | None = None) -> Groups:
+    mean = np.array([one.mean() for one in runs])
+    return Groups(
+        np.arange(len(runs)) if owner is None else np.array(owner),
+        mean,
+        np.array([one.var(ddof=1) if len(one) > 1 else np.nan for one in runs]),
+        (explained * mean) ** 2,
+        np.array([len(one) - 1.0 for one in runs]),
+        np.ones(len(runs)),
+    )
+
+
+def test_the_unexplained_part_comes_back_with_its_degrees_of_freedom() -> None:
+    generator = np.random.default_rng(5)
+    runs = [
+        size * (1 + 0.03 * generator.standard_normal(3) + 0.01 * generator.standard_normal(3))
+        for size in np.linspace(0.1, 0.9, 200)
+    ]
+    found = repeatability(_groups(runs, 0.01))
+    # sqrt(1/(2 x 400)) = 3.5 % is the standard uncertainty of a deviation from 400 degrees of freedom; the stated part
+    # takes (0.001/0.0009)^2 of it more
+    assert found.relative[0] == pytest.approx(0.03, rel=3 * 0.035 * 1.11)
+    # 0.0009^2/0.001^2 of the 400
+    assert found.freedom[0] == pytest.approx(400 * 0.81, rel=0.1)
+
+
+def test_scatter_that_the_uncertainties_explain_is_not_counted_again() -> None:
+    # standard deviation 0.01 sqrt(2), stated 0.02
+    found = repeatability(_groups([np.array([0.99, 1.01]), np.array([0.98, 1.0])], 0.02))
+    assert found.relative[0] == 0.0
+    assert found.deviation.tolist() == [0.0, 0.0]
+
+
+def test_a_catalyst_that_scatters_more_stands_apart_and_leaves_the_others_alone() -> None:
+    generator = np.random.default_rng(4)
+    quiet = [0.5 * (1 + 0.01 * generator.standard_normal(3)) for _ in range(12)]
+    loud = [0.5 * (1 + 0.15 * generator.standard_normal(3)) for _ in range(3)]
+    found = repeatability(_groups([*quiet, *loud], 0.0, [*np.repeat(range(4), 3), 4, 4, 4]))
+    assert found.estimate[12:].tolist() == [1, 1, 1]
+    # one of twelve groups is set apart by chance now and then
+    assert (found.estimate[:12] == 0).sum() >= 11
+    assert found.relative[0] == pytest.approx(0.01, rel=0.35)
+    # 24 and 6 degrees of freedom: three standard uncertainties of a deviation are 3/sqrt(2 x 6) = 87 %
+    assert found.relative[1] == pytest.approx(0.15, rel=0.87)
+
+
+def test_setting_apart_is_cochrans_test() -> None:
+    # largest of k = 8 variances of three runs each, on either side of its critical value at 5 %,
+    # C = 1/(1 + (k - 1)/F), F the upper quantile at 0.05/k with 2 and 14 degrees of freedom
+    f = stats.f.ppf(1 - 0.05 / 8, 2, 14)
+    for factor, apart in ((0.99, 0), (1.01, 1)):
+        variance = np.ones(8)
+        variance[3] = f * factor
+        groups = Groups(np.arange(8), np.ones(8), variance, np.zeros(8), np.full(8, 2.0), np.ones(8))
+        assert (repeatability(groups).estimate > 0).sum() == apart
+
+
+def test_a_group_of_nothing_is_left_where_it_is() -> None:
+    groups = Groups(
+        np.arange(3),
+        np.array([0.0, 0.5, 0.4]),
+        np.array([0.0, 1e-4, 1e-4]),
+        np.zeros(3),
+        np.ones(3),
+        np.ones(3),
+    )
+    found = repeatability(groups)
+    assert found.deviation[0] == 0.0
+    assert found.relative[0] == pytest.approx(np.sqrt(0.5 * (1e-4 / 0.25 + 1e-4 / 0.16)))
+
+
+def test_single_runs_alone_tell_nothing_of_scatter() -> None:
+    found = repeatability(_groups([np.array([0.5]), np.array([0.4])], 0.01))
+    assert found.relative.tolist() == [0.0]
+    assert np.isinf(found.freedom[0])
