@@ -7,7 +7,7 @@ from pathlib import Path
 
 import pytest
 from tests.faults.answer import Command, Fault
-from tests.faults.day import TRACE, Changes, swap
+from tests.faults.day import TRACE, Changes, add, swap
 
 A1 = "traces/a1.csv"
 JUNK = bytes(range(256)) * 40
@@ -25,15 +25,51 @@ CASES: dict[str, tuple[Changes, tuple[Fault, ...]]] = {
             ),
         ),
     ),
-    "time is logged twice": (
-        {A1: swap("1800,-1.5", "900,-1.5")},
+    "time stands still": (
+        {A1: add("".join(f"3600,-1.5,-{second}\n" for second in range(60)))},
+        (
+            Fault(
+                "broken-trace",
+                f"{A1}, row 7, column 't / s'",
+                "61 readings at 3600 s",
+                "later than",
+                "delete the rows logged while it stood",
+            ),
+        ),
+    ),
+    "time hardly moves": (
+        {A1: swap("1800,-1.5", "900.0000000000001,-1.5")},
         (
             Fault(
                 "broken-trace",
                 f"{A1}, row 4, column 't / s'",
-                "900 s after 900 s",
-                "later than",
-                "delete rows logged twice",
+                "900.00000000000011 s after 900 s",
+                "steps of 1e-09 s and more",
+                "correct the unit",
+            ),
+        ),
+    ),
+    "time has steps of next to nothing": (
+        {A1: "t / s,E / V,I / mA\n0,-1.5,-10\n1e-300,-1.5,-10\n2e-300,-1.5,-10\n"},
+        (
+            Fault(
+                "not-a-number",
+                f"{A1}, column 't / s'",
+                "nothing larger than 2e-300",
+                "a size from 1e-60",
+                "correct the values",
+            ),
+        ),
+    ),
+    "time begins with steps of next to nothing": (
+        {A1: swap("0,-1.5,-10\n900", "0,-1.5,-10\n1e-300,-1.5,-10\n900")},
+        (
+            Fault(
+                "broken-trace",
+                f"{A1}, row 3, column 't / s'",
+                "1e-300 s after 0 s",
+                "steps of 1e-09 s",
+                "correct the unit",
             ),
         ),
     ),
@@ -173,14 +209,26 @@ CASES: dict[str, tuple[Changes, tuple[Fault, ...]]] = {
         ),
     ),
     "row is cut short": (
-        {A1: swap("3600,-1.5,-10\n", "3600,-1.")},
+        {A1: swap("2700,-1.5,-10\n", "2700,-1.\n")},
         (
             Fault(
                 "not-a-number",
-                f"{A1}, row 6, column 'I / mA'",
+                f"{A1}, row 5, column 'I / mA'",
                 "nothing",
                 "a finite number",
                 "delete the row",
+            ),
+        ),
+    ),
+    "end is cut off within the window of its run": (
+        {A1: swap("3600,-1.5,-10\n", "3600,-1.")},
+        (
+            Fault(
+                "not-allowed",
+                "runs.csv, row 2, column 'stop / s'",
+                "3600 s",
+                "from 0 s to 2700 s",
+                "correct the time",
             ),
         ),
     ),

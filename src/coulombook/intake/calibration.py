@@ -12,7 +12,6 @@ from coulombook.balance.readings import Calibration, CurveOptions, FloatArray, S
 from coulombook.findings import Findings
 from coulombook.intake import schema
 from coulombook.intake.files import (
-    LARGEST_TABLE_BYTE,
     Folder,
     did_you_mean,
     is_folder,
@@ -21,6 +20,7 @@ from coulombook.intake.files import (
     unreadable,
 )
 from coulombook.intake.grid import grid_of_text
+from coulombook.intake.limits import LARGEST_TABLE_BYTE
 from coulombook.intake.settings import date_of
 from coulombook.intake.tables import TypedTable, typed_table
 from coulombook.intake.text import UnreadableText

@@ -106,6 +106,20 @@ def known_names(
             )
 
 
+def logs_with_options(file: DayFile, names: Sequence[str], findings: Findings) -> None:
+    """Fault a section of [read.traces] for a file that no table names."""
+    for key in file.traces.files:
+        if key not in names:
+            findings.add(
+                "unknown-name",
+                file.source.where(f"read.traces.{key}"),
+                "no table of the day names this file",
+                f"correct the name, or delete the section{did_you_mean(key, names)}",
+                found=f"'{key}'",
+                expected="a trace, voltammogram or spectrum by its path in the day folder",
+            )
+
+
 def windows(runs: Sequence[Run], scans: Sequence[Scan], findings: Findings) -> None:
     """Fault windows that end before they begin."""
     for run in runs:

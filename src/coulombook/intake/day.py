@@ -25,7 +25,6 @@ from coulombook.findings import DayFaults, Findings
 from coulombook.intake import crosschecks, records, schema
 from coulombook.intake.calibration import find_calibrations
 from coulombook.intake.files import (
-    LARGEST_TABLE_BYTE,
     Folder,
     did_you_mean,
     is_file,
@@ -35,6 +34,7 @@ from coulombook.intake.files import (
     unreadable,
 )
 from coulombook.intake.grid import Grid, grid_of_rows, grid_of_text
+from coulombook.intake.limits import LARGEST_TABLE_BYTE
 from coulombook.intake.settings import DayFile, TraceOptions, read_day_settings
 from coulombook.intake.tables import TypedTable, typed_table
 from coulombook.intake.text import UnreadableText
@@ -73,9 +73,11 @@ class DaySource:
             self._folder,
             self._folder.root / run.trace,
             run.electrode_area_m2,
-            self._options,
+            self._options.of(run.trace),
             own,
             self._long_byte,
+            started=run.started,
+            window=(run.start_second, run.stop_second),
         )
         if read is None:
             raise DayFaults(tuple(own))
@@ -92,7 +94,7 @@ class DaySource:
             self._folder,
             self._folder.root / scan.file,
             scan.electrode_area_m2,
-            self._options,
+            self._options.of(scan.file),
             own,
             self._long_byte,
         )
@@ -108,7 +110,11 @@ class DaySource:
         """
         own = Findings()
         read = read_spectrum(
-            self._folder, self._folder.root / spectrum.file, self._options, own, self._long_byte
+            self._folder,
+            self._folder.root / spectrum.file,
+            self._options.of(spectrum.file),
+            own,
+            self._long_byte,
         )
         if read is None:
             raise DayFaults(tuple(own))
@@ -350,6 +356,7 @@ def _day(
         )
     if file is None or run_table is None:
         return None, folders, long_files
+    crosschecks.logs_with_options(file, [home.name_of(path) for path in long_files], findings)
     carried = {name: dict(table.carried) for name, table in tables.items() if table.carried}
     settings = replace(file.settings, title=file.settings.title or home.root.resolve().name)
     day = Day(home.root.resolve().name, settings, species, runs, peaks, vials, signals, scans, checks,

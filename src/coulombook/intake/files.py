@@ -9,9 +9,6 @@ from pathlib import Path
 from coulombook.findings import Findings
 from coulombook.units import nearest
 
-LARGEST_TABLE_BYTE = 100_000_000  # two million rows of a bench table; a larger file is not one
-LARGEST_SETTINGS_BYTE = 1_000_000
-
 
 @dataclass(slots=True)
 class Folder:

@@ -2,14 +2,17 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from datetime import date, datetime
+from pathlib import PurePosixPath
 from typing import TYPE_CHECKING, Any
 
 from coulombook.balance.readings import DaySettings, Declared, OutletFlow
 from coulombook.findings import Findings
 from coulombook.intake import schema
+from coulombook.intake.clock import CLOCK, DAY_FIRST, ELAPSED, MONTH_FIRST
 from coulombook.intake.files import did_you_mean
 from coulombook.intake.schema import Column, Content
 from coulombook.intake.tables import Default, instant_of, unit_conversion
@@ -21,7 +24,7 @@ if TYPE_CHECKING:
     from coulombook.cell.specific_capacitance import SpecificCapacitance
 
 _SECTIONS = (
-    "day", "reference", "defaults", "gas", "liquid", "surface", "balance", "read", "uncertainty", "species",
+    "day", "reference", "defaults", "gas", "liquid", "surface", "balance", "kinetics", "read", "uncertainty", "species",
 )  # fmt: skip
 
 # Keys of day.toml that an [[uncertainty]] may name, with their dimensions.
@@ -51,6 +54,14 @@ class TraceOptions:
     separator: str | None = None
     decimal: str | None = None
     skip: int | None = None
+    time: str | None = None  # "elapsed" or "clock": what hours, minutes and seconds count from
+    dates: str | None = None  # "day first" or "month first", where the year stands last
+    clock_put_forward: bool = False  # a step of an hour is the beginning of summer time
+    files: Mapping[str, TraceOptions] = field(default_factory=dict)  # of single files, complete, by path
+
+    def of(self, name: str) -> TraceOptions:
+        """The options of one file, by its path relative to the day folder."""
+        return self.files.get(PurePosixPath(name).as_posix(), self)
 
 
 @dataclass(frozen=True, slots=True)
@@ -76,6 +87,7 @@ def read_day_settings(source: Settings, species: SpeciesTable, findings: Finding
     values = _liquid(section(source, "liquid", findings), values)
     values = _surface(section(source, "surface", findings), values)
     values = _balance(section(source, "balance", findings), values)
+    values = _kinetics(section(source, "kinetics", findings), values)
     declared, kinds = _declared(source, findings)
     return DayFile(
         replace(values, declared=declared),
@@ -312,6 +324,14 @@ def _of_table(part: Section, material: str | None, electrolyte: str | None) -> S
     return found
 
 
+def _kinetics(part: Section, values: DaySettings) -> DaySettings:
+    onset = _positive(part, "onset", "current density", "0.1 mA cm^-2")
+    part.report_unknown()
+    return replace(
+        values, onset_current_density_ampere_per_m2=_or(onset, values.onset_current_density_ampere_per_m2)
+    )
+
+
 def _balance(part: Section, values: DaySettings) -> DaySettings:
     level = part.share("level", "a value between 0 and 1, such as 0.95")
     if level in (0.0, 1.0):
@@ -463,6 +483,9 @@ def _default_number(part: Section, key: str, unit: str | None, column: Column, v
     return Default(number, how.flow_kind)
 
 
+_FILE_NAME = re.compile(r".*[./\\].*", re.DOTALL)  # of a log; no key has a point or slash
+
+
 def _trace_options(source: Settings, findings: Findings) -> TraceOptions:
     whole = section(source, "read", findings)
     content = whole.value("traces")
@@ -472,7 +495,24 @@ def _trace_options(source: Settings, findings: Findings) -> TraceOptions:
             "not-allowed", "traces", "the name is that of a section", content, "a section [read.traces]"
         )
         content = None
-    part = Section(source, f"{whole.name}.traces", content or {}, findings)
+    content = content or {}
+    of_files = {
+        key: value for key, value in content.items() if isinstance(value, dict) and _FILE_NAME.fullmatch(key)
+    }
+    shared = {key: value for key, value in content.items() if key not in of_files}
+    section_name = f"{whole.name}.traces"
+    common = _options_of(Section(source, section_name, shared, findings), TraceOptions({}))
+    files = {
+        PurePosixPath(key.strip().replace("\\", "/")).as_posix(): _options_of(
+            Section(source, f"{section_name}.{key}", value, findings), common
+        )
+        for key, value in of_files.items()
+    }
+    return replace(common, files=files)
+
+
+def _options_of(part: Section, otherwise: TraceOptions) -> TraceOptions:
+    """The options of a section; what it leaves open is as ``otherwise``."""
     names = {"comma": ",", "semicolon": ";", "tab": "\t", "blank": " "}
     separator = part.text("separator", "',' or ';' or 'tab'")
     if separator is not None:
@@ -486,8 +526,9 @@ def _trace_options(source: Settings, findings: Findings) -> TraceOptions:
                 "',' or ';' or 'tab' or 'blank'",
             )
             separator = None
+    separator = separator or otherwise.separator
     decimal = part.choice("decimal", [".", ",", "point", "comma"])
-    decimal = {"point": ".", "comma": ","}.get(decimal or "", decimal)
+    decimal = {"point": ".", "comma": ","}.get(decimal or "", decimal) or otherwise.decimal
     if decimal is not None and decimal == separator:
         part.fault(
             "not-allowed", "decimal", "the decimal sign is the separator as well", decimal, "another sign"
@@ -500,8 +541,19 @@ def _trace_options(source: Settings, findings: Findings) -> TraceOptions:
         )
         skip = None
     columns = part.typed("columns", dict, "columns = { t = 'Time', E = 'Potential', I = 'Current' }")
+    time = part.choice("time", [ELAPSED, CLOCK])
+    dates = part.choice("dates", [DAY_FIRST, MONTH_FIRST])
+    forward = part.typed("clock_put_forward", bool, "true or false")
     part.report_unknown()
-    return TraceOptions(_trace_columns(part, columns or {}), separator, decimal, skip)
+    return TraceOptions(
+        {**otherwise.columns, **_trace_columns(part, columns or {})},
+        separator,
+        decimal,
+        otherwise.skip if skip is None else skip,
+        time or otherwise.time,
+        dates or otherwise.dates,
+        otherwise.clock_put_forward if forward is None else forward,
+    )
 
 
 def _trace_columns(part: Section, columns: Mapping[str, Any]) -> dict[str, tuple[str, str | None]]:

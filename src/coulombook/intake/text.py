@@ -8,9 +8,11 @@ import io
 import re
 from collections.abc import Callable, Sequence
 
+from coulombook.intake.limits import LONGEST_LINE
+
 # What stands between cells, the most telling first: a tab or semicolon is never a decimal sign.
 SEPARATORS = ("\t", ";", ",")
-LONGEST_LINE = 65_536  # characters; a line of the bench's tables has some hundred
+KNOWN_ENCODINGS = "text in UTF-8, UTF-16 with byte order mark or Windows-1252"
 
 _NEVER_IN_TEXT = re.compile(r"[\x00-\x08\x0b\x0e-\x1f]")
 
@@ -47,16 +49,17 @@ def decode(data: bytes) -> str:
     try:
         text = data.decode(encoding)
     except UnicodeDecodeError:
-        raise UnreadableText(
-            "bytes that are no text", "text in UTF-8, UTF-16 with byte order mark or Windows-1252"
-        ) from None
+        raise UnreadableText("bytes that are no text", KNOWN_ENCODINGS) from None
+    refuse_binary(text)
+    return text
+
+
+def refuse_binary(text: str, rows_above: int = 0) -> None:
+    """Raise `UnreadableText` for a text with control characters, of a file with some rows above it."""
     control = _NEVER_IN_TEXT.search(text)
     if control:
-        raise UnreadableText(
-            f"binary data (byte 0x{ord(control[0]):02x} in row {text.count(chr(10), 0, control.start()) + 1})",
-            "text in UTF-8, UTF-16 with byte order mark or Windows-1252",
-        )
-    return text
+        row = rows_above + text.count("\n", 0, control.start()) + 1
+        raise UnreadableText(f"binary data (byte 0x{ord(control[0]):02x} in row {row})", KNOWN_ENCODINGS)
 
 
 def lines_of(text: str) -> list[str]:

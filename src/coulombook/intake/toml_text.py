@@ -11,7 +11,8 @@ from pathlib import Path
 from typing import Any
 
 from coulombook.findings import Findings, Origin
-from coulombook.intake.files import LARGEST_SETTINGS_BYTE, Folder, did_you_mean, read_bytes
+from coulombook.intake.files import Folder, did_you_mean, read_bytes
+from coulombook.intake.limits import LARGEST_SETTINGS_BYTE
 from coulombook.intake.tables import quoted
 from coulombook.units import UnitError, is_of_ordinary_size, parse_quantity, quantity_to_si
 

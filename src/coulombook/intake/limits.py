@@ -1,0 +1,37 @@
+"""How much of a file is read, and why: every limit of the readers in one place.
+
+A limit keeps a damaged or hostile file from filling memory or an evening; each lies far above what a bench writes. What
+goes beyond one is a fault that names the limit, never a guess.
+"""
+
+from __future__ import annotations
+
+# --- text ---
+
+FIRST_LOOK_BYTE = 65_536  # enough for the heads of nearly every log; more is read where they are not among it
+LONGEST_PREAMBLE_BYTE = 4_194_304  # instruments that write their whole method above the heads stay well below
+LONGEST_LINE = 65_536  # characters; a line of the bench's tables has some hundred
+MOST_COLUMNS = 1_000  # of one table; the widest log of an instrument has some hundred
+LARGEST_TABLE_BYTE = 100_000_000  # two million rows of a bench table; a larger file is not one
+MOST_TABLE_ROWS = 500_000  # a day of 2,000 runs with 20 injections of 10 peaks each has 400,000
+LARGEST_SETTINGS_BYTE = (
+    1_000_000  # day.toml with an uncertainty and a species for everything has some ten thousand
+)
+
+# --- logs ---
+
+LARGEST_LOG_BYTE = 4_000_000_000  # 1e8 rows: a month of 40 readings a second
+# row by row costs 24 byte of memory and some two microseconds a reading: half a minute and 700 MB at this size
+LARGEST_UNTIDY_LOG_BYTE = 1_000_000_000
+SHORTEST_STEP_SECOND = (
+    1e-9  # no potentiostat takes a reading each nanosecond; shorter steps overflow their inverse
+)
+FARTHEST_START_SECOND = 86_400.0  # a log stamped more than a day from its run's `started` is another run's
+
+# --- workbooks ---
+
+LARGEST_UNPACKED_BYTE = 300_000_000  # pictures and all; ten times the text of a day of 50,000 peaks
+LARGEST_MARKUP_BYTE = 120_000_000  # what is read as XML takes some ten seconds by then
+MOST_PARTS = 10_000  # a part a sheet, picture and chart
+MOST_CELLS = 3_000_000  # of all tables, the blank ones of a row with them: some ten seconds and 300 MB
+MOST_SHEET_ROWS = 1_048_576  # of a sheet, by the standard (ECMA-376, as spreadsheet programs keep it)
