@@ -22,6 +22,7 @@ ROOMS = (
     "units",
     "species",
     "findings",
+    "why",
     "uncertainty",
     "curves",
     "cell",
