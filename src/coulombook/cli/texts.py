@@ -144,6 +144,18 @@ examples:
   coulombook again "2043-05-18 mesh"
   coulombook again ledgers --day "2043-05-18 mesh" --calibrations ~/gc""",
     ),
+    "why": (
+        "explain a kind of finding",
+        """\
+Show what a fault, warning or note means, why it matters to the numbers, what to
+do, and an example of a day's files with it and without it. Without a KIND, list
+them all.""",
+        """\
+examples:
+  coulombook why                     every kind, in a line
+  coulombook why balance-open        one of them
+  coulombook why "error[duplicate]"  one as it stands on the terminal""",
+    ),
     "completion": (
         "print a script that completes commands in a shell",
         """\

@@ -27,10 +27,11 @@ CAUTIONS = (
     "Carbon monoxide poisons, hydrogen burns, and gas under pressure can burst a cell: vent, detect and "
     "relieve them as your local codes and licensed professionals require. No figure here stands in for that."
 )
+HOW_TO_ASK = "coulombook why KIND explains one"
 HOW_TO_READ = "FE in %; 31.2(14) is 31.2 with a standard uncertainty (k = 1) of 1.4."
 
-_WORD = {Severity.STOP: "error", Severity.WARN: "warning", Severity.NOTE: "note"}
-_STYLE = {Severity.STOP: "bold red", Severity.WARN: "bold yellow", Severity.NOTE: "bold cyan"}
+WORD = {Severity.STOP: "error", Severity.WARN: "warning", Severity.NOTE: "note"}
+STYLE = {Severity.STOP: "bold red", Severity.WARN: "bold yellow", Severity.NOTE: "bold cyan"}
 _RANK = {Severity.STOP: 0, Severity.WARN: 1, Severity.NOTE: 2}
 _KIND_RANK = {kind: place for place, kind in enumerate(KINDS)}
 
@@ -89,7 +90,7 @@ def show_check(lines: Sequence[str], findings: Sequence[Finding], console: Conso
 
 
 def show_findings(findings: Iterable[Finding], console: Console, *, least: Severity = Severity.NOTE) -> None:
-    """Print findings: faults first, causes before consequences, at most ten of one kind.
+    """Print findings: faults first, causes before consequences, at most ten of one kind; then how to learn more.
 
     ``least`` leaves out what is milder than that severity.
     """
@@ -102,6 +103,9 @@ def show_findings(findings: Iterable[Finding], console: Console, *, least: Sever
         if place:
             console.print()
         _show_kind(same, console)
+    if kinds:
+        console.print()
+        console.print(Text(HOW_TO_ASK, style="dim"))
 
 
 def _show_kind(same: Sequence[Finding], console: Console) -> None:
@@ -117,14 +121,14 @@ def _show_kind(same: Sequence[Finding], console: Console) -> None:
             one, wheres, console, with_mend=last or len(advice) > 1 or one.severity is Severity.STOP
         )
     if len(places) > AT_MOST:
-        console.print(Text(f"and {len(places) - AT_MOST} more of {_WORD[same[0].severity]}[{same[0].kind}]"))
+        console.print(Text(f"and {len(places) - AT_MOST} more of {WORD[same[0].severity]}[{same[0].kind}]"))
 
 
 def _show_finding(one: Finding, wheres: Sequence[str], console: Console, *, with_mend: bool) -> None:
     where = "; ".join(map(visible, wheres[:AT_MOST]))
     if len(wheres) > AT_MOST:
         where += f"; and {len(wheres) - AT_MOST} more"
-    kind = Text(f"{_WORD[one.severity]}[{visible(one.kind, 60)}]", style=_STYLE[one.severity])
+    kind = Text(f"{WORD[one.severity]}[{visible(one.kind, 60)}]", style=STYLE[one.severity])
     console.print(kind + Text(f": {where}", style="default"))
     if one.text:
         hanging("  ", one.text, console)

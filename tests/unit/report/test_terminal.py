@@ -11,7 +11,7 @@ from tests.unit.report.sample import CATALYSTS, PRODUCTS, sample_book, sample_fi
 
 from coulombook.book import Book
 from coulombook.findings import Finding, Severity, finding
-from coulombook.report.terminal import console_for, show_book, show_check, show_findings
+from coulombook.report.terminal import HOW_TO_ASK, console_for, show_book, show_check, show_findings
 
 WRITTEN = Path("2043-05-18 mesh, foil and foam/results")
 HOSTILE = (
@@ -155,6 +155,7 @@ def test_a_fault_names_place_found_expected_and_mend() -> None:
         "  found:    unit 'sccn'",
         "  expected: a flow unit, such as sccm, mL/min or mol/s",
         "  mend:     correct the unit in the column header; did you mean 'sccm'?",
+        HOW_TO_ASK,
     ]
 
 
@@ -184,6 +185,7 @@ def test_the_same_finding_at_several_places_stands_once() -> None:
     assert [line.rstrip() for line in lines if line] == [
         "note[assumed-default]: " + "; ".join(f"run r{n}" for n in range(10)) + "; and 2 more",
         "  25 degC was taken",
+        HOW_TO_ASK,
     ]
 
 
@@ -197,6 +199,12 @@ def test_milder_findings_can_be_left_out() -> None:
     at_warn = shown_findings(findings, least=Severity.WARN)
     assert "warning[balance-open]" in at_warn
     assert "left-out" not in at_warn
+
+
+def test_findings_end_with_how_to_ask_for_more_and_none_have_no_such_line() -> None:
+    note = finding("left-out", "c", "x")
+    assert shown_findings([note]).endswith("\n\ncoulombook why KIND explains one\n")
+    assert shown_findings([]) == shown_findings([note], least=Severity.WARN) == ""
 
 
 def test_check_ends_with_its_verdict() -> None:
