@@ -21,7 +21,7 @@ class Kind(Enum):
 
     TEXT = "a name, or where something stands in the day's files"
     ENTERED = "entered: read from the day's files; change it and what follows from it changes"
-    COMPUTED = "computed: a value coulombook found that no formula here follows"
+    COMPUTED = "computed: found by the tally; stays as it is when other cells change"
     FORMULA = "formula: follows from cells of this workbook"
 
 
@@ -41,6 +41,7 @@ class Column:
     wide: bool = False  # long text, wrapped
     choices: tuple[str, ...] = ()  # what may be entered
     kinds: Sequence[Kind] | None = None  # of each record, where they differ
+    exact: bool = False  # every digit is shown
 
 
 @dataclass(slots=True, eq=False)

@@ -11,6 +11,7 @@ from coulombook.report.workbook.place import Account
 
 MOST_CATALYSTS = 20  # more charts than that nobody reads
 _FE, _J = "FE / %", "j / mA cm^-2"
+_DRAWN = {_FE: "u(FE) / %", _J: "u(j) / mA cm^-2"}  # with the uncertainties that decide their digits
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -37,7 +38,10 @@ def chart_data(account: Account, series: Sheet) -> tuple[Sheet, list[Chart]]:
     One row per catalyst and level, by potential; one column per product, for FE and for partial current densities.
     """
     table = account.tables["series"]
-    columns = {head: table.column(head) for head in ("catalyst", "level", "product", "E vs RHE / V", _FE, _J)}
+    columns = {
+        head: table.column(head)
+        for head in ("catalyst", "level", "product", "E vs RHE / V", *_DRAWN.values(), *_DRAWN)
+    }
     points: dict[tuple[str, str], dict[str, int]] = {}
     for row, key in enumerate(zip(columns["catalyst"], columns["level"], columns["product"], strict=True)):
         points.setdefault((str(key[0]), str(key[1])), {})[str(key[2])] = row
@@ -66,7 +70,7 @@ def chart_data(account: Account, series: Sheet) -> tuple[Sheet, list[Chart]]:
         [columns["E vs RHE / V"][row] for row in first],
         "of the series",
     )
-    for head in (_FE, _J):
+    for head in _DRAWN:
         for product in products:
             rows = [points[key].get(product) for key in keys]
             shown = [None if row is None or not _drawn(columns[head][row], head) else row for row in rows]
@@ -75,6 +79,7 @@ def chart_data(account: Account, series: Sheet) -> tuple[Sheet, list[Chart]]:
                 (None if row is None else f"={series[head]}{FIRST_ROW + row}" for row in shown),
                 [None if row is None else columns[head][row] for row in shown],
                 "of the series",
+                u=[None if row is None else columns[_DRAWN[head]][row] for row in shown],
             )
     return sheet, _charts(sheet, [catalyst for catalyst, _ in keys], products)
 

@@ -42,6 +42,7 @@ def constants_sheet(account: Account) -> Sheet:
             "in the unit beside it",
             [one.formula for one in rows],
             kinds=[one.kind for one in rows],
+            exact=True,
         )
     )
     sheet.text("unit", [one.unit for one in rows])
@@ -125,6 +126,7 @@ def _of_the_day(account: Account) -> list[_Constant]:
             str(settings.outlet_flow),
             "",
             day,
+            Kind.TEXT,
         ),
     ]
     capacitance = settings.specific_capacitance_farad_per_m2

@@ -145,9 +145,14 @@ def standards_sheet(account: Account, sheets: Sheets) -> Sheet:
     )
     x = np.array([one.standards.x[point] * _unit(one) for _, one, point in points])
     y = np.array([one.standards.y[point] for _, one, point in points])
+    gas = np.array([one.standards.kind == GAS for _, one, _ in points], dtype=bool)
     sheet.text("curve", [one.name for _, one, _ in points])
     sheet.text("calibration", [one.standards.calibration for _, one, _ in points])
-    place = sheet.entered("x", x, "ppm for a gas, amount ratio for a liquid")
+    columns = (
+        sheet.entered("amount ratio", np.where(gas, np.nan, x), "to the internal standard, of a liquid"),
+        sheet.entered("mole fraction / ppm", np.where(gas, x, np.nan), "of a gas"),
+    )
+    places = [columns[is_gas] for is_gas in gas.tolist()]
     measured = sheet.entered("response", y, "peak area, or integral ratio per proton")
     a0, a1, a2 = (curves[name] for name in COEFFICIENTS)
     coefficients = np.array([_coefficients(one) for _, one, _ in points], dtype=float).reshape(-1, 3)
@@ -157,7 +162,7 @@ def standards_sheet(account: Account, sheets: Sheets) -> Sheet:
         "response of the curve",
         (
             f"={a0}{row}+({a1}{row}+{a2}{row}*{place}{r})*{place}{r}"
-            for r, (row, _, _) in zip(sheet.lines, points, strict=True)
+            for r, (row, _, _), place in zip(sheet.lines, points, places, strict=True)
         ),
         expected,
         "a0 + a1 x + a2 x^2",

@@ -33,6 +33,8 @@ def digits_shown(value: float, uncertainty: float | None) -> str:
     if round(spread / 10.0**place) >= 100:
         place += 1  # 0.0996 shows as 0.10
     order = _order(value) if value else place
+    if not value and place not in _WRITTEN_OUT:
+        return "0"
     if order - place >= _MOST_DIGITS:
         return _significant(value, _DIGITS_WITHOUT + 1)
     order = max(order, _order(spread))

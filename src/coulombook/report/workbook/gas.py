@@ -10,10 +10,10 @@ from coulombook.balance.readings import OutletFlow
 from coulombook.book import Cell
 from coulombook.book.entries import MILLIAMPERE, PPM, UMOL
 from coulombook.curves.inverse import invert
-from coulombook.report.workbook.cells import FIRST_ROW, Sheet, Sheets
+from coulombook.report.workbook.cells import FIRST_ROW, Sheet, Sheets, listed
 from coulombook.report.workbook.curves import COEFFICIENTS, CurveCells, inverse
 from coulombook.report.workbook.place import Account, found_in, runs_of, spreads, values, yes_no
-from coulombook.uncertainty.linearised import IntArray
+from coulombook.uncertainty.linearised import IntArray, Number
 
 
 class PeakOrder:
@@ -54,7 +54,7 @@ def gas_sheet(account: Account, sheets: Sheets, curves: CurveCells, peaks: PeakO
     )
     sheet.text("run", [one.run for one in ordered])
     sheet.text("injection", [one.injection for one in ordered])
-    sheet.entered("time / s", [one.time_second for one in ordered], "on the log's clock")
+    sheet.text("time / s", [one.time_second for one in ordered], "on the log's clock")
     sheet.text("channel", [one.channel for one in ordered])
     sheet.text("analyte", [one.analyte for one in ordered])
     area = sheet.entered("peak area", [one.peak_area for one in ordered], "detector units")
@@ -67,15 +67,14 @@ def gas_sheet(account: Account, sheets: Sheets, curves: CurveCells, peaks: PeakO
             drift[order],
             "between the checks before and after, linear in time",
         )
-    letters = curves.enter(sheet, gas.peak_curve[order])
+    b0, b1, b2 = curves.enter(sheet, gas.peak_curve[order])
     a0, a1, a2 = (x[name][gas.peak_curve[order]] for name in COEFFICIENTS)
     found = values(invert(a0, a1, a2, (x["peak area"] / drift)[order]), PPM)
     sheet.formula(
         "mole fraction / ppm",
         (
             inverse(
-                *(f"{letter}{r}" for letter in letters),
-                f"{area}{r}/{divisor}{r}" if divisor else f"{area}{r}",
+                f"{b0}{r}", f"{b1}{r}", f"{b2}{r}", f"{area}{r}/{divisor}{r}" if divisor else f"{area}{r}"
             )
             for r in sheet.lines
         ),
@@ -129,7 +128,7 @@ def injections_sheet(account: Account, gas: Sheet, peaks: PeakOrder) -> Sheet:
     for head in ("run", "injection"):
         sheet.text(head, rows.column(head))
     sheet.text("product", rows.column("product"))
-    sheet.computed("time / s", rows.column("time / s"), "on the log's clock")
+    sheet.text("time / s", rows.column("time / s"), "on the log's clock")
     sheet.computed("electrons", [int(one) for one in plan.electrons[held]], "n, per molecule")
     sheet.computed("CO2 per molecule", [plan.reading_species[one].carbon for one in held], "c")
     sheet.formula(
@@ -176,7 +175,7 @@ def outlet_sheet(account: Account, sheets: Sheets, peaks: PeakOrder) -> Sheet:
     )
     sheet.text("run", [account.runs[int(run)] for run in injections.run])
     sheet.text("injection", injections.label)
-    sheet.entered("time / s", injections.time_second, "on the log's clock")
+    sheet.text("time / s", listed(injections.time_second), "on the log's clock")
     if plan.outlet_flow is OutletFlow.TRACER:
         _tracer(account, sheet, sheets["gas"], peaks)
     outlet = sheet.formula(
@@ -283,12 +282,14 @@ def finish_injections(account: Account, sheet: Sheet, sheets: Sheets, peaks: Pea
         (f"={outlet['outlet flow / umol/s']}{one}" for one in places),
         rows.column("outlet flow / umol/s"),
         "of the injection",
+        u=_of_injections(account, held, account.settled.readings.outlet_mol_per_s, UMOL),
     )
     current = sheet.formula(
         "current / mA",
         (f"={outlet['current / mA']}{one}" for one in places),
         rows.column("current / mA"),
         "that belongs to the injection",
+        u=_of_injections(account, held, account.settled.readings.current_ampere, MILLIAMPERE),
     )
     electrons, fraction = sheet.letters["electrons"], sheet.letters["mole fraction / ppm"]
     u = rows.column("u(FE) / %")
@@ -313,3 +314,9 @@ def finish_injections(account: Account, sheet: Sheet, sheets: Sheets, peaks: Pea
         rows.column("used"),
         "whether the mean of the run takes it in",
     )
+
+
+def _of_injections(account: Account, readings: list[int], x: Number, unit: float) -> list[Cell]:
+    """Uncertainties of a quantity of injections, for the readings in them."""
+    u = spreads(x, unit)
+    return [u[injection] for injection in account.settled.plan.gas.reading_injection[readings].tolist()]

@@ -136,7 +136,7 @@ def vials_sheet(account: Account, sheets: Sheets, order: SignalOrder) -> Sheet:
     sheet.text("run", [one.run for one in vials])
     sheet.text("compartment", [one.compartment for one in vials])
     sheet.text("role", ["blank" if one.blank else "sample" for one in vials])
-    sheet.entered("time / s", [one.time_second for one in vials], "empty: at the end of the run")
+    sheet.text("time / s", [one.time_second for one in vials], "empty: at the end of the run")
     sheet.text("standard", [one.standard for one in vials])
     sheet.entered("standard amount / umol", x["standard amount"] * UMOL, "in the tube")
     sheet.entered("aliquot / mL", x["aliquot"] * ML, "of electrolyte in the tube")

@@ -1,4 +1,4 @@
-"""How cells look. No meaning hangs on colour alone: entered cells are framed, computed ones slanted and dotted."""
+"""How cells look. No meaning hangs on colour alone: entered cells are framed, computed ones slanted."""
 
 from __future__ import annotations
 
@@ -13,7 +13,7 @@ if TYPE_CHECKING:
 
 _INK, _SOFT, _PAPER = "#1B2A33", "#5B6B75", "#FFFFFF"
 _HEAD, _HOW = "#24485C", "#E9EFF2"
-_THIN, _HAIR, _DOTTED = 1, 7, 4
+_THIN = 1  # of borders
 _BASE: Mapping[str, Any] = {"font_name": "Calibri", "font_size": 10, "font_color": _INK, "valign": "top"}
 
 LOOKS: Mapping[str, Mapping[str, Any]] = {
@@ -21,17 +21,17 @@ LOOKS: Mapping[str, Mapping[str, Any]] = {
     "about": {"font_color": _SOFT, "valign": "vcenter"},
     "section": {"font_size": 12, "bold": True, "font_color": _HEAD, "bottom": _THIN, "bottom_color": _HEAD},
     "head": {"bold": True, "font_color": _PAPER, "bg_color": _HEAD, "text_wrap": True, "valign": "vcenter",
-             "border": _THIN, "border_color": _PAPER},
+             "border": _THIN, "border_color": _PAPER, "align": "left", "indent": 1},
     "how": {"italic": True, "font_size": 8, "font_color": _SOFT, "bg_color": _HOW, "text_wrap": True,
-            "bottom": _THIN, "bottom_color": _HEAD},
+            "bottom": _THIN, "bottom_color": _HEAD, "align": "left", "indent": 1},
     "link": {"font_color": "#0B5CAD", "underline": 1},
     "plain": {"text_wrap": True},
     "code": {"font_name": "Consolas", "font_size": 8, "font_color": _SOFT},
 }  # fmt: skip
 _KINDS: Mapping[Kind, Mapping[str, Any]] = {
-    Kind.TEXT: {},
+    Kind.TEXT: {"align": "left", "indent": 1},
     Kind.ENTERED: {"bg_color": "#FFF6D6", "border": _THIN, "border_color": "#B99A3C"},
-    Kind.COMPUTED: {"italic": True, "font_color": "#5A3E78", "border": _DOTTED, "border_color": "#A99BBB"},
+    Kind.COMPUTED: {"italic": True, "font_color": "#5A3E78", "bg_color": "#F3F0F7"},
     Kind.FORMULA: {},
 }
 PARTED: Mapping[str, Any] = {"top": _THIN, "top_color": _SOFT}

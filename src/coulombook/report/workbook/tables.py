@@ -25,7 +25,7 @@ _TITLES = {
     "cautions": ("Cautions", 1),
     "findings": ("Findings", 2),
 }
-_LONG = frozenset({"text", "mend", "cause", "where", "bench test"})
+_LONG = frozenset({"text", "mend", "cause", "where", "told apart", "bench test"})
 _SHOWN_ALONE = "Computed with the tally; nothing here follows a change of an entered cell."
 _CAUTION = (
     "Highest concentrations in the outlet gas. Carbon monoxide poisons, hydrogen and hydrocarbons burn; nothing here "
@@ -71,10 +71,8 @@ def _uncertainty(head: str, heads: Sequence[str]) -> str | None:
     if head.startswith("u("):
         return head
     quantity, slash, unit = head.partition(" / ")
-    for name in (f"u({quantity}){slash}{unit}", f"u{slash}{unit}"):
-        if name in heads:
-            return name
-    return None
+    name = f"u{slash}{unit}" if quantity in ("value", "u") else f"u({quantity}){slash}{unit}"
+    return name if name in heads else None
 
 
 def closure_sheet(account: Account, sheets: Sheets) -> Sheet:

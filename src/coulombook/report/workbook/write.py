@@ -11,6 +11,7 @@ from collections.abc import Iterable, Sequence
 from datetime import datetime
 from functools import lru_cache
 from io import BytesIO
+from math import ceil
 
 from xlsxwriter import Workbook
 from xlsxwriter.worksheet import Worksheet
@@ -26,12 +27,17 @@ from coulombook.report.workbook.styles import PARTED, Styles
 # a cell holds 32,767 units of UTF-16, of which a character may need two
 _LONGEST = 16_000
 _LONGEST_WRAPPED = 2_000  # of text that makes its row higher
-_NARROWEST, _WIDEST, _WRAPPED = 10.5, 34.0, 60.0
+_NARROWEST, _WIDEST, _WRAPPED = 10.5, 44.0, 60.0
+_SAID = 110.0  # width of what the sheet "about" says
+_LINE, _SMALL_LINE, _HIGHEST = 13.5, 11.0, 400.0  # heights of lines, and of the highest row there can be
+_SHORT_HEAD = 12  # characters of a head that stands in one line
+_PER_CHARACTER, _PER_SMALL_CHARACTER = 1.0, 0.75  # widths, of the sheet's unit of width
+_AS_TYPED = frozenset({Kind.ENTERED, Kind.TEXT})
 _LOOKED_AT = 400  # records that decide how wide a column of text is
 # hatches of the figures, as a spreadsheet names its patterns
-_PATTERNS = {"////": "wide_upward_diagonal", "\\\\\\\\": "wide_downward_diagonal", "xxxx": "diagonal_brick",
-             "....": "percent_20", "----": "narrow_horizontal", "||||": "narrow_vertical", "++++": "small_grid",
-             "oooo": "solid_diamond"}  # fmt: skip
+_PATTERNS = {"////": "light_upward_diagonal", "\\\\\\\\": "light_downward_diagonal", "xxxx": "diagonal_brick",
+             "....": "percent_10", "----": "dashed_horizontal", "||||": "dashed_vertical", "++++": "divot",
+             "oooo": "dotted_diamond"}  # fmt: skip
 _MARKERS = {"o": "circle", "s": "square", "^": "triangle", "D": "diamond", "X": "x", "P": "plus"}
 _OTHER_MARKERS = ("circle", "square", "triangle", "diamond", "x", "star", "plus", "short_dash")
 
@@ -81,10 +87,17 @@ def _write(page: Worksheet, sheet: Sheet, styles: Styles) -> None:
     for place, kind in enumerate((Kind.ENTERED, Kind.FORMULA, Kind.COMPUTED)):
         page.write_string(2, place, kind.value.partition(":")[0], styles.cell(kind))
     page.write_url(2, 3, "internal:about!A1", styles.look("link"), "what this means")
-    page.set_row(HEAD_ROW - 1, 32)
-    page.set_row(HEAD_ROW, 46)
+    widths = [_width(column) for column in sheet.columns]
+    page.set_row(2, 18)
+    page.set_row(
+        HEAD_ROW - 1, _height([one.head for one in sheet.columns], widths, _PER_CHARACTER * 1.1, _LINE) + 6
+    )
+    page.set_row(
+        HEAD_ROW, _height([one.how for one in sheet.columns], widths, _PER_SMALL_CHARACTER, _SMALL_LINE) + 4
+    )
+    _heighten(page, sheet, widths)
     for place, column in enumerate(sheet.columns):
-        page.set_column(place, place, _width(column))
+        page.set_column(place, place, widths[place])
         page.write_string(HEAD_ROW - 1, place, shown(column.head), styles.look("head"))
         page.write_string(HEAD_ROW, place, column.how, styles.look("how"))
         _write_column(page, place, column, styles)
@@ -122,7 +135,7 @@ def _write_column(page: Worksheet, place: int, column: Column, styles: Styles) -
                     row, place, shown(value, _LONGEST_WRAPPED if column.wide else _LONGEST), style
                 )
             continue
-        if kind is Kind.ENTERED or isinstance(value, int):
+        if kind in _AS_TYPED or column.exact or isinstance(value, int):
             style = styles.cell(kind, GENERAL)
         else:
             spread = None if u is None else u[number]
@@ -139,11 +152,34 @@ def _write_column(page: Worksheet, place: int, column: Column, styles: Styles) -
 
 
 def _width(column: Column) -> float:
-    if column.wide:
-        return _WRAPPED
-    longest_word = max(map(len, column.head.replace("/", " ").split()), default=0)
+    longest_word = max(map(len, column.head.split()), default=0)
     texts = [len(one) for one in column.values[:_LOOKED_AT] if isinstance(one, str)]
-    return min(max(_NARROWEST, longest_word + 2.5, max(texts, default=0) * 0.95 + 2.0), _WIDEST)
+    return min(
+        max(_NARROWEST, longest_word * 1.15 + 3.0, max(texts, default=0) + 3.0),
+        _WRAPPED if column.wide else _WIDEST,
+    )
+
+
+def _height(texts: Iterable[str], widths: Iterable[float], per_character: float, line: float) -> float:
+    """Of a row, as its texts wrap at words in columns of these widths."""
+    lines = (
+        ceil(len(text) * per_character / (width - 2.0)) for text, width in zip(texts, widths, strict=True)
+    )
+    return min(max(lines, default=1) * line, _HIGHEST)
+
+
+def _heighten(page: Worksheet, sheet: Sheet, widths: Sequence[float]) -> None:
+    """Make room for text that wraps; spreadsheet programs do not agree on who does."""
+    wide = [
+        (column.values, width) for column, width in zip(sheet.columns, widths, strict=True) if column.wide
+    ]
+    if not wide:
+        return
+    for number in range(sheet.rows):
+        texts = [str(values[number] or "")[:_LONGEST_WRAPPED] for values, _ in wide]
+        height = _height(texts, [width for _, width in wide], _PER_CHARACTER, _LINE)
+        if height > _LINE:
+            page.set_row(FIRST_ROW - 1 + number, height)
 
 
 def _draw_parts(page: Worksheet, sheet: Sheet, parted: object) -> None:
@@ -251,7 +287,7 @@ def _drawn(workbook: Workbook, chart: Chart) -> object:
 
 def _filled(style: Style) -> dict[str, object]:
     border = {"color": "#FFFFFF", "width": 0.5}
-    pattern = _PATTERNS.get(style.hatch, "dark_upward_diagonal" if style.hatch else None)
+    pattern = _PATTERNS.get(style.hatch, "small_confetti" if style.hatch else None)
     if pattern is None:
         return {"fill": {"color": style.colour}, "border": border, "gap": 60}
     return {
@@ -278,9 +314,12 @@ def _write_about(workbook: Workbook, lines: Iterable[Said], styles: Styles) -> N
     page = workbook.add_worksheet("about")
     page.hide_gridlines(2)
     page.set_column(0, 0, 26)
-    page.set_column(1, 1, 110)
+    page.set_column(1, 1, _SAID)
     for row, said in enumerate(lines):
         first, second = (*said.cells, "", "")[:2]
+        height = _height([shown(second, _LONGEST_WRAPPED)], [_SAID], _PER_CHARACTER, _LINE)
+        if height > _LINE:
+            page.set_row(row, height)
         match said.line:
             case Line.TITLE:
                 page.set_row(row, 24)
