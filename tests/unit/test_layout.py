@@ -33,6 +33,7 @@ ROOMS = (
     "intake",
     "library",
     "tally",
+    "comparison",
     "figures",
     "report",
     "cli",
