@@ -33,6 +33,7 @@ _HEIGHT_SHARE, _HIGHEST_MM = 0.72, 80.0
 # groups that matplotlib numbers: in a page of several figures each would come again
 _NUMBERED = re.compile(r'<g id="[A-Za-z0-9. ]+_\d+">')
 _HEAD = re.compile(r"\A.*?(?=<svg)", re.DOTALL)
+_FEW_DECADES = 30.0
 # names of title and description, and what would change with the clock
 _METADATA_OF = {
     "svg": (("Title", "Description"), ("Date",)),
@@ -106,12 +107,14 @@ def plain_labels(axes: Axes) -> None:
             label.set_parse_math(False)
 
 
-def name_ticks(axes: Axes, names: Sequence[str], size: float = 6.5) -> None:
+def name_ticks(axes: Axes, names: Sequence[str], *, own: bool) -> None:
     """Names at 0, 1, 2... along x: upright where they do not fit side by side, some left out where not even so."""
     if not names:
         axes.set_xticks([])
         return
-    place_mm = width_mm_of(axes) / len(names)
+    # the legend beside a reader's axes takes its part
+    size = float(axes.xaxis.get_ticklabels()[0].get_size())
+    place_mm = width_mm_of(axes) * (1.0 if own else 0.5) / len(names)
     across = max(text_width_mm(one, size) for one in names) + 1.0 <= place_mm
     every = 1 if across else max(1, math.ceil(size * _POINT_MM * 0.95 / place_mm))
     places = range(0, len(names), every)
@@ -122,14 +125,18 @@ def name_ticks(axes: Axes, names: Sequence[str], size: float = 6.5) -> None:
 
 
 def plain_decades(axes: Axes, which: str) -> None:
-    """Powers of ten written out on a logarithmic axis."""
+    """Powers of ten written out on a logarithmic axis whose ends are set; twice and five times them where they are few."""
     from matplotlib.ticker import FuncFormatter, LogLocator, NullFormatter
 
     from coulombook.prose.numbers import brief
 
     axis = axes.yaxis if which == "y" else axes.xaxis
-    axis.set_major_locator(LogLocator(10.0, numticks=8))
-    axis.set_minor_locator(LogLocator(10.0, subs=range(2, 10), numticks=100))
+    low, high = axis.get_view_interval()
+    # a decade or two alone would leave the axis with a label or none
+    within = (1.0, 2.0, 5.0) if high < _FEW_DECADES * low else (1.0,)
+    axis.set_major_locator(LogLocator(10.0, subs=within, numticks=8))
+    # 2 and 5 tell where a decade lies; all eight would take a third of the time that a figure takes
+    axis.set_minor_locator(LogLocator(10.0, subs=(2.0, 5.0), numticks=100))
     axis.set_major_formatter(FuncFormatter(lambda value, _: brief(value, 2)))
     axis.set_minor_formatter(NullFormatter())
 
