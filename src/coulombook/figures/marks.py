@@ -20,7 +20,7 @@ ORANGE, VERMILION, PURPLE = "#E69F00", "#D55E00", "#CC79A7"
 _COLOURS = (BLUE, ORANGE, GREEN, PURPLE, SKY, VERMILION, YELLOW)
 # lines alone: a dotted tile is a quarter of a megabyte of circles in an SVG
 _LEAN = ("////", "\\\\\\\\", "xxxx", "----", "||||", "++++")
-_HATCHES = ("", *_LEAN, *(one[:2] for one in _LEAN), "//--", "\\\\||", "//||", "\\\\--")
+_HATCHES = (*_LEAN, *(one[:2] for one in _LEAN), "//--", "\\\\||", "//||", "\\\\--")
 
 
 @dataclass(frozen=True, slots=True)
@@ -51,11 +51,19 @@ _PRODUCTS = {
     "propylene": Style(BLUE, "\\\\||", (3, 1, 0)),
 }
 _HELD = {(one.colour, one.hatch) for one in _PRODUCTS.values()}
-_FREE = tuple(pair for pair in every(_COLOURS, _HATCHES) if pair not in _HELD)
+# the bare grey is hydrogen's alone; hatches outside, so that neighbours in the list differ in colour
+_FREE = tuple((colour, hatch) for hatch, colour in every(_HATCHES, _COLOURS) if (colour, hatch) not in _HELD)
 # polygons, stars and crosses by number of corners, shape and turn
 _MARKERS: tuple[Marker, ...] = tuple(
-    (corners, shape, turn) for corners in (3, 4, 5, 6, 7) for shape in (0, 1) for turn in (0, 30, 45, 60)
+    (corners, shape, turn) for turn in (0, 30, 45) for corners in (3, 4, 5, 6, 7) for shape in (0, 1)
 )
+_RARE = (
+    "acetylene", "propane", "propyne", "butane", "1-butene", "formaldehyde", "isopropanol", "propionate",
+    "ethylene glycol", "glyoxal", "glycolaldehyde", "hydroxyacetone", "methylglyoxal", "glycolate", "glyoxylate",
+    "lactate", "oxalate", "n-butanol", "butyraldehyde",
+)  # fmt: skip
+_PRODUCTS |= {name: Style(*_FREE[place], _MARKERS[place]) for place, name in enumerate(_RARE)}
+_LEFT = _FREE[len(_RARE) :]
 _CATALYSTS = tuple(
     Style(colour, hatch, marker)
     for colour, hatch, marker in zip(
@@ -78,8 +86,8 @@ def style_of_product(name: str) -> Style:
         return known
     # of the name alone, so that other products of the day do not change it
     drawn = int.from_bytes(sha256(name.encode("utf-8", "surrogatepass")).digest()[:8], "big")
-    colour, hatch = _FREE[drawn % len(_FREE)]
-    return Style(colour, hatch, _MARKERS[drawn // len(_FREE) % len(_MARKERS)])
+    colour, hatch = _LEFT[drawn % len(_LEFT)]
+    return Style(colour, hatch, _MARKERS[drawn // len(_LEFT) % len(_MARKERS)])
 
 
 def styles_of_catalysts(names: Sequence[str]) -> dict[str, Style]:

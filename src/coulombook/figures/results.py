@@ -27,6 +27,7 @@ if TYPE_CHECKING:
 
 POTENTIAL = "E vs RHE / V"
 _BAR = 0.78
+_LEAST_SPAN_VOLT = 0.1
 _MANY_FOLD = 30.0  # a range over more than this factor is drawn on a logarithmic axis
 _VERDICTS = {data.CLOSED: (BLACK, "o"), data.SHORT: (VERMILION, "v"), data.OVER: (BLUE, "^")}
 
@@ -146,7 +147,7 @@ def _efficiencies(ax: Axes, rows: Sequence[Row], own: bool) -> None:
     labels = [
         shown(level) if potentials[level] is None else _minus(fixed(potentials[level], 2)) for level in places
     ]
-    name_ticks(ax, labels)
+    name_ticks(ax, labels, own=own)
     ax.set_xlabel(POTENTIAL)
     ax.set_ylabel("FE / %")
     ax.set_ylim(bottom=min(0.0, ax.get_ylim()[0]) if any(below) else 0.0)
@@ -155,7 +156,6 @@ def _efficiencies(ax: Axes, rows: Sequence[Row], own: bool) -> None:
 
 def _currents(ax: Axes, rows: Sequence[Row], own: bool) -> None:
     handles, names = [], []
-    ax.set_yscale("log", nonpositive="clip")
     series: dict[str, list[Row]] = {}
     for row in rows:
         if row[MARK] is not None:
@@ -172,11 +172,12 @@ def _currents(ax: Axes, rows: Sequence[Row], own: bool) -> None:
         handles.append(points[0])
         names.append(name)
     if series:
+        ax.set_yscale("log", nonpositive="clip")
         # error bars that reach below zero would otherwise stretch the axis without end
         values = [value for members in series.values() for value in _column(members, "j / mA cm^-2")]
         ax.set_ylim(min(values) / 2.0, max(values) * 2.0)
         plain_decades(ax, "y")
-    ax.set_xlabel(POTENTIAL)
+    _potentials(ax)
     basis = next((str(row["basis"]) for row in rows), "geometric")
     ax.set_ylabel("partial j / mA cm⁻²" if basis == "geometric" else "partial j on real area / mA cm⁻²")
     legend(ax, handles, names, own=own)
@@ -202,7 +203,7 @@ def _selectivities(ax: Axes, rows: Sequence[Row], own: bool) -> None:
         plain_decades(ax, "y")
     elif ratios:
         ax.set_ylim(bottom=min(0.0, *ratios) - 0.03 * max(map(abs, ratios)))
-    ax.set_xlabel(POTENTIAL)
+    _potentials(ax)
     ax.set_ylabel("FE(C2+) / FE(C1)")
     legend(ax, handles, list(styles), own=own)
 
@@ -216,7 +217,7 @@ def _closures(ax: Axes, rows: Sequence[Row], own: bool) -> None:
         point = _point(ax, place, total, str(row[MARK]), colour, marker)
         seen.setdefault(str(row["closure"]), point)
     ax.axhline(100.0, color=BLACK, lw=0.6, ls=(0, (4, 3)), zorder=0)
-    name_ticks(ax, [shown(row["run"], 16) for row in rows])
+    name_ticks(ax, [shown(row["run"], 16) for row in rows], own=own)
     ax.set_xlabel("run")
     ax.set_ylabel("total FE / %")
     order = [one for one in _VERDICTS if one in seen] + [one for one in seen if one not in _VERDICTS]
@@ -244,6 +245,15 @@ _PAINTERS = {
     "closure": _closures,
     "budget": _shares,
 }
+
+
+def _potentials(ax: Axes) -> None:
+    """Label the axis of potential, and keep a single potential from filling it with its uncertainty."""
+    ax.set_xlabel(POTENTIAL)
+    low, high = ax.get_xlim()
+    if high - low < _LEAST_SPAN_VOLT:
+        middle = 0.5 * (low + high)
+        ax.set_xlim(middle - 0.5 * _LEAST_SPAN_VOLT, middle + 0.5 * _LEAST_SPAN_VOLT)
 
 
 def _point(

@@ -113,7 +113,7 @@ def name_ticks(axes: Axes, names: Sequence[str], *, own: bool) -> None:
         axes.set_xticks([])
         return
     # the legend beside a reader's axes takes its part
-    size = float(axes.xaxis.get_ticklabels()[0].get_size())
+    size = float(axes.xaxis.get_ticklabels()[0].get_fontsize())
     place_mm = width_mm_of(axes) * (1.0 if own else 0.5) / len(names)
     across = max(text_width_mm(one, size) for one in names) + 1.0 <= place_mm
     every = 1 if across else max(1, math.ceil(size * _POINT_MM * 0.95 / place_mm))
@@ -125,7 +125,7 @@ def name_ticks(axes: Axes, names: Sequence[str], *, own: bool) -> None:
 
 
 def plain_decades(axes: Axes, which: str) -> None:
-    """Powers of ten written out on a logarithmic axis whose ends are set; twice and five times them where they are few."""
+    """Powers of ten written out on a logarithmic axis whose ends are set; twice and five times them if few."""
     from matplotlib.ticker import FuncFormatter, LogLocator, NullFormatter
 
     from coulombook.prose.numbers import brief
