@@ -1,0 +1,77 @@
+"""Numbers and names as the page sets them: the project's one way to round, in the signs of a printed page."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Sequence
+
+from coulombook.prose.numbers import ABSENT, fixed, plain, with_uncertainty
+
+MINUS, DASH, THIN = "\N{MINUS SIGN}", "\N{EN DASH}", "\N{NO-BREAK SPACE}"
+_RAISED = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
+_EXPONENT = re.compile(r"e(-?\d+)$")
+_POWER = re.compile(r"\^(-?\d+)")
+_UNITS = {"umol": "µmol", "degC": "°C", "ohm": "Ω"}
+
+
+def typeset(number: str) -> str:
+    """A number of `prose.numbers` with a minus sign and a raised exponent.
+
+    >>> typeset("-0.7337(19)"), typeset("1.235(22)e-7"), typeset("-")
+    ('−0.7337(19)', '1.235(22)×10⁻⁷', '–')
+    """
+    if number == ABSENT:
+        return DASH
+    raised = _EXPONENT.sub(lambda found: "×10" + found[1].translate(_RAISED), number)
+    return raised.replace("-", MINUS)
+
+
+def measured(value: float | None, u: float | None) -> str:
+    """A value with its standard uncertainty in brackets."""
+    return typeset(with_uncertainty(value, u))
+
+
+def bare(value: float | None, digits: int = 4) -> str:
+    """A value to so many digits."""
+    return typeset(plain(value, digits))
+
+
+def to_decimals(value: float | None, decimals: int) -> str:
+    """A value to so many decimals."""
+    return typeset(fixed(value, decimals))
+
+
+def parted(head: str) -> tuple[str, str]:
+    """Quantity and unit of a head, set for print.
+
+    >>> parted("j / mA cm^-2"), parted("C2+/C1"), parted("amount / umol")
+    (('j', 'mA cm⁻²'), ('C2+/C1', ''), ('amount', 'µmol'))
+    """
+    quantity, _, unit = head.partition(" / ")
+    unit = _POWER.sub(lambda found: found[1].translate(_RAISED), unit)
+    for plain_name, sign in _UNITS.items():
+        unit = re.sub(rf"\b{plain_name}\b", sign, unit)
+    return quantity, unit
+
+
+def listed(words: Sequence[str]) -> str:
+    """Words in a row.
+
+    >>> listed(["a"]), listed(["a", "b"]), listed(["a", "b", "c"])
+    ('a', 'a and b', 'a, b and c')
+    """
+    return " and ".join(part for part in (", ".join(words[:-1]), *words[-1:]) if part)
+
+
+def counted(number: int, noun: str) -> str:
+    """A number of things.
+
+    >>> counted(1, "run"), counted(3, "run")
+    ('1 run', '3 runs')
+    """
+    return f"{number} {noun}" if number == 1 else f"{number} {noun}s"
+
+
+def number_of(cell: object) -> float | None:
+    """A cell as a number; None for a text or an absent one."""
+    return float(cell) if isinstance(cell, int | float) else None
