@@ -20,6 +20,8 @@ if TYPE_CHECKING:
     from coulombook.cell.potential import ReferenceElectrode as ReferenceElectrode
     from coulombook.cell.potential import find_reference as find_reference
     from coulombook.cell.potential import reference_names as reference_names
+    from coulombook.comparison.order import Comparison as Comparison
+    from coulombook.comparison.order import compare_days as compare_days
     from coulombook.curves.fit import Curve as Curve
     from coulombook.curves.fit import fit_curve as fit_curve
     from coulombook.curves.inverse import invert as invert
@@ -36,6 +38,7 @@ __version__ = "0.1.0"
 
 _MODULE_OF = {
     "Book": "book",
+    "Comparison": "comparison.order",
     "Curve": "curves.fit",
     "DayFaults": "findings",
     "Finding": "findings",
@@ -44,6 +47,7 @@ _MODULE_OF = {
     "Table": "book",
     "charge_coulomb": "cell.charge",
     "check": "tally",
+    "compare_days": "comparison.order",
     "find_reference": "cell.potential",
     "electrons_of": "species",
     "figures": "",  # a room of functions, public as a whole

@@ -15,6 +15,7 @@ examples:
   coulombook explain "2043-05-18 mesh"  see why its balance does not close
   coulombook budget "2043-05-18 mesh"   see where its uncertainty comes from
   coulombook figures "2043-05-18 mesh"  draw it for print
+  coulombook compare "2043-05-18 mesh"  see which catalyst is better, and how surely
   coulombook curves                     see the calibration curves in ./calibrations
   coulombook show "2043-05-18 mesh"     see its results once more
 
@@ -68,6 +69,20 @@ examples:
   coulombook budget "2043-05-18 mesh"                     total FE, mean over the runs
   coulombook budget "2043-05-18 mesh" --product C2H4      FE of one product
   coulombook budget "2043-05-18 mesh" --run m1-3 --product "C2+/C1" """,
+    ),
+    "compare": (
+        "compare catalysts, of one day or of several",
+        """\
+Compare the catalysts of one day or of several: at levels and at common
+potentials, on the geometric and on the real area, with intervals in which shared
+errors cancel, a ranking that says where the data cannot tell, and the rank
+correlation of selectivity with roughness.""",
+        """\
+examples:
+  coulombook compare "2043-05-18 mesh"
+  coulombook compare "2043-05-18 mesh" "2043-05-25 mesh" --one-error "outlet flow"
+  coulombook compare "2043-05-18 mesh" --product C2H4 --at -0.95,-1.05
+  coulombook compare "2043-05-18 mesh" --closed --basis real --out comparison""",
     ),
     "new": (
         "lay out an empty day folder",

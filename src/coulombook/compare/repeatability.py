@@ -136,7 +136,7 @@ def _straggler(groups: Groups, held: Mask, sets: list[IntArray], *, whole: bool)
     f = scatter(worst, expected) / max(1.0, scatter(others, expected))
     from scipy.special import fdtrc
 
-    p = float(fdtrc(freedom[worst].sum(), (groups.freedom * groups.counts)[others].sum(), f))
+    p = float(fdtrc(freedom[worst].sum(), freedom[others].sum(), f))
     return worst if p * len(candidates) < STRAGGLING else None
 
 
