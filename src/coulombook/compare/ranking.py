@@ -14,7 +14,7 @@ class Ranking:
     """Catalysts in order, best first.
 
     ``steps`` says of each neighbours in this order whether they are told apart; ``beyond`` are pairs told apart though
-    no step between them is. ``leaders`` are the best one and those it cannot be told from.
+    no step between them is. ``leaders`` are those that nobody is told to be better than.
     """
 
     catalysts: tuple[str, ...]
@@ -42,7 +42,11 @@ def rank(contest: Contest, level: float, *, lowest_first: bool = False) -> Ranki
         for reach, other in enumerate(names[place + 1 :], start=place + 1)
         if frozenset((one, other)) in apart and not any(steps[place:reach])
     )
-    leaders = tuple(one for one in names if one == names[0] or frozenset((names[0], one)) not in apart)
+    leaders = tuple(
+        one
+        for place, one in enumerate(names)
+        if not any(frozenset((ahead, one)) in apart for ahead in names[:place])
+    )
     return Ranking(names, steps, beyond, leaders)
 
 

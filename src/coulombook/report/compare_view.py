@@ -28,6 +28,7 @@ from coulombook.report.text import crop, visible
 LONGEST_NAME = 30
 LONGEST_LEVEL = 12
 LONGEST_QUANTITY = 24
+LONGEST_VERDICT = 2000
 LEAST_P = 1e-3  # smaller ones say nothing more to anybody
 _AREA = {"": "", GEOMETRIC: ", per geometric area", REAL: ", per real area"}
 
@@ -37,7 +38,7 @@ def show_comparison(comparison: Comparison, console: Console, *, written: Path |
     names = _letters(comparison.contenders)
     hanging("", "; ".join(visible(day, 100) for day in comparison.days), console)
     console.print()
-    hanging("", comparison.verdict, console)
+    hanging("", comparison.verdict, console, longest=LONGEST_VERDICT)
     console.print()
     _show_contenders(comparison.contenders, names, console)
     console.print()
@@ -195,7 +196,8 @@ def _show_roughness(comparison: Comparison, console: Console) -> None:
     if not shown:
         return
     console.print()
-    title = f"Spearman's rank correlation with the roughness factor over n electrodes, {plain(100 * comparison.level, 2)} %"
+    percent = f"{plain(100 * comparison.level, 2)} %"
+    title = f"Spearman's rank correlation with the roughness factor over n electrodes, {percent}"
     console.print(Text(title, style="bold"), soft_wrap=True)
     heads = [one.quantity.head for one in shown]
     columns = [

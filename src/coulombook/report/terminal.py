@@ -19,7 +19,7 @@ from coulombook.book import Book
 from coulombook.findings import KINDS, Finding, Severity
 from coulombook.report.pivot import catalyst_tables
 from coulombook.report.terminal_tables import show_catalyst, show_runs
-from coulombook.report.text import visible
+from coulombook.report.text import LONGEST, visible
 
 AT_MOST = 10  # findings of one kind; the rest are counted
 
@@ -141,9 +141,9 @@ def _show_finding(one: Finding, wheres: Sequence[str], console: Console, *, with
             hanging(f"  {label:10}", text, console)
 
 
-def hanging(label: str, text: str, console: Console) -> None:
+def hanging(label: str, text: str, console: Console, *, longest: int = LONGEST) -> None:
     """Print a text behind its label, further lines under its own beginning."""
-    lines = Text(visible(text)).wrap(console, max(console.width - len(label), 20))
+    lines = Text(visible(text, longest)).wrap(console, max(console.width - len(label), 20))
     for place, line in enumerate(lines):
         line.rstrip()
         console.print(Text(" " * len(label) if place else label) + line, soft_wrap=True)

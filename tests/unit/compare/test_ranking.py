@@ -31,6 +31,11 @@ def test_a_leader_is_settled_only_if_told_apart_from_every_other() -> None:
     assert found.leaders == ("a", "b")
 
 
+def test_who_is_told_to_follow_anybody_cannot_lead() -> None:
+    # the first is known too badly to be told from anybody; the second is told to be ahead of the third
+    assert rank(_contest("abc", {"bc"}), 0.95).leaders == ("a", "b")
+
+
 def test_steps_are_between_neighbours_and_pairs_further_apart_are_named() -> None:
     found = rank(_contest("abcd", {"ac", "bd", "ad"}), 0.95)
     assert found.steps == (False, False, False)
