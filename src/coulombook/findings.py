@@ -10,6 +10,9 @@ from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass
 from enum import StrEnum
 
+# A finding takes half a kilobyte; nobody reads ten thousand, and a hostile table would bring a million.
+MOST_OF_A_KIND = 10_000
+
 
 class Severity(StrEnum):
     """How much a finding matters to the reader."""
@@ -188,27 +191,55 @@ def finding(
 
 
 class Findings:
-    """Gathers the findings of a day in the order they were seen; equal ones are kept once."""
+    """Gathers the findings of a day in the order they were seen; equal ones are kept once.
+
+    Of one kind `MOST_OF_A_KIND` are kept; the others are counted, and told of in one finding at the end.
+    """
 
     def __init__(self, start: Iterable[Finding] = ()) -> None:
-        self._seen: dict[Finding, None] = dict.fromkeys(start)
+        self._seen: dict[Finding, None] = {}
+        self._kept: dict[str, int] = {}
+        self._more: dict[str, int] = {}
+        self.extend(start)
 
     def add(
         self, kind: str, where: object, text: str, mend: str = "", *, found: str = "", expected: str = ""
     ) -> None:
         """Note one finding; see `finding`."""
-        self._seen.setdefault(finding(kind, where, text, mend, found=found, expected=expected))
+        self.extend((finding(kind, where, text, mend, found=found, expected=expected),))
 
     def extend(self, more: Iterable[Finding]) -> None:
         """Take over findings gathered elsewhere."""
         for one in more:
-            self._seen.setdefault(one)
+            if one in self._seen:
+                continue
+            if self.is_full(one.kind):
+                self._more[one.kind] = self._more.get(one.kind, 0) + 1
+            else:
+                self._seen[one] = None
+                self._kept[one.kind] = self._kept.get(one.kind, 0) + 1
+
+    def is_full(self, kind: str) -> bool:
+        """Whether findings of a kind are only counted by now, so that nothing need be spent on their words."""
+        return self._kept.get(kind, 0) >= MOST_OF_A_KIND
+
+    def _counted(self) -> Iterator[Finding]:
+        for kind, count in self._more.items():
+            yield finding(
+                kind,
+                "further places",
+                "more findings of this kind were counted, and not kept",
+                "mend those that are shown first",
+                found=f"{count} more",
+                expected=f"at most {MOST_OF_A_KIND} findings of one kind",
+            )
 
     def __iter__(self) -> Iterator[Finding]:
-        return iter(self._seen)
+        yield from self._seen
+        yield from self._counted()
 
     def __len__(self) -> int:
-        return len(self._seen)
+        return len(self._seen) + len(self._more)
 
     @property
     def stops(self) -> tuple[Finding, ...]:
