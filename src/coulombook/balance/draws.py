@@ -9,12 +9,12 @@ it is the same error in whichever turn it is drawn. The errors that one turn has
 
 from __future__ import annotations
 
-import os
-from collections import Counter
+from collections import Counter, deque
 from collections.abc import Callable, Iterator, Sequence
-from concurrent.futures import ThreadPoolExecutor
+from concurrent.futures import Future, ThreadPoolExecutor
 from dataclasses import dataclass
-from threading import Lock
+from functools import cached_property
+from itertools import cycle
 
 import numpy as np
 
@@ -36,12 +36,14 @@ from coulombook.uncertainty.replay import Needs, Program, aligned
 # draws that are evaluated at a time: with the runs of a turn, what a processor holds in its own memory
 CHUNK = 256
 
-_THREADS = min(2, os.cpu_count() or 1)
+# draws that are drawn at a time
+BLOCK = 8 * CHUNK
+THREADS = 2
 _RUNS_OF_A_TURN = 8  # what runs share is then evaluated once for so many
 _TURN_BYTE = (
     36_000_000  # of the draws of a turn's outputs, which are kept to be sorted; one run may need more
 )
-_SHARED_BYTE = 48_000_000  # of the draws of shared errors, which are kept to be used again
+_SHARED_BYTE = 40_000_000  # of the draws of shared errors, which are kept to be used again
 
 # Quantities that cannot be negative. Where a normal distribution would put more than 3e-7 of its draws below zero (zero
 # within five standard deviations), a lognormal one of the same mean and standard deviation takes its place.
@@ -84,21 +86,26 @@ def draw_day(
     progress : callable, optional
         Called as progress(done, of), in runs.
     """
-    record = _Record(settled)
-    turns = _turns(settled, count)
-    held_by = Counter(column for turn in turns for column in record.columns(turn).tolist())
-    shared = _SharedErrors({column: turns for column, turns in held_by.items() if turns > 1}, count, seed)
+    record = Record(settled)
+    runs = _turns(settled, count)
+    shared = _SharedErrors(
+        Counter(column for turn in runs for column in record.columns(turn).tolist()), count, seed
+    )
+    turns = [
+        _Turn(record, turn, np.random.Generator(np.random.SFC64([seed, len(record.errors) + number])), shared)
+        for number, turn in enumerate(runs)
+    ]
+    draws = np.empty((max((turn.rows for turn in turns), default=0), count))
     level = settled.plan.settings.level_of_confidence
-
-    def draw(number: int) -> Drawn:
-        own = np.random.SFC64([seed, len(record.errors) + number])
-        return _draw_turn(record, turns[number], shared, np.random.Generator(own), count, level)
-
     done = 0
-    with ThreadPoolExecutor(_THREADS) as pool:
-        for drawn in pool.map(draw, range(len(turns))):
-            yield drawn
-            done += len(drawn.day_runs)
+    # normals are drawn ahead in a thread of their own: half of the work, in calls that let the other half go on
+    with ThreadPoolExecutor(THREADS - 1) as pool, np.errstate(all="ignore"):
+        blocks = _ahead(pool, turns, count)
+        for turn in turns:
+            for first in range(0, count, BLOCK):
+                turn.evaluate(next(blocks), draws[:, first : first + BLOCK])
+            yield turn.summary(draws, level)
+            done += len(turn.runs)
             if progress is not None:
                 progress(done, len(settled.plan.runs))
 
@@ -113,7 +120,7 @@ def _turns(settled: Settled, count: int) -> list[IntArray]:
     return [runs[first : first + size] for first in range(0, len(runs), size)]
 
 
-class _Record:
+class Record:
     """The measurement function of a day, written down."""
 
     def __init__(self, settled: Settled) -> None:
@@ -172,80 +179,121 @@ def _recorded(number: Number, errors: UnitErrors, positive: bool = False) -> Num
 class _SharedErrors:
     """Draws of errors that several turns need: kept from the first of these turns to the last, as room allows."""
 
-    def __init__(self, turns: dict[int, int], count: int, seed: int) -> None:
-        self._left = turns
-        self._count = -(-count // CHUNK) * CHUNK
-        self._room = max(_SHARED_BYTE // (self._count * 8), 0)
+    def __init__(self, turns: Counter[int], count: int, seed: int) -> None:
+        self._left = {column: number for column, number in turns.items() if number > 1}
+        self._count = -(-count // BLOCK) * BLOCK
+        self._room = _SHARED_BYTE // (self._count * 8)
         self._seed = seed
         self._kept: dict[int, FloatArray] = {}
-        self._lock = Lock()
 
     def __contains__(self, column: int) -> bool:
         return column in self._left
 
-    def stream(self, column: int) -> np.random.Generator:
-        """The random numbers of one error, from their start."""
-        return np.random.Generator(np.random.SFC64([self._seed, column]))
-
-    def fetch(self, columns: Sequence[int]) -> dict[int, FloatArray]:
-        """Draws of those of some errors that there is room for."""
-        with self._lock:
-            for column in columns:
-                if column not in self._kept and len(self._kept) < self._room:
-                    self._kept[column] = self.stream(column).standard_normal(self._count)
-            return {column: self._kept[column] for column in columns if column in self._kept}
-
-    def release(self, columns: Sequence[int]) -> None:
-        """A turn is done with them."""
-        with self._lock:
-            for column in columns:
-                self._left[column] -= 1
-                if not self._left[column]:
-                    self._kept.pop(column, None)
+    def take(self, column: int) -> Iterator[FloatArray]:
+        """Draws of one error from their start, a block at a time; a turn takes all of them or none."""
+        stream = np.random.Generator(np.random.SFC64([self._seed, column]))
+        if column not in self._kept and len(self._kept) < self._room:
+            self._kept[column] = stream.standard_normal(self._count)
+        kept = self._kept.get(column)
+        for first in range(0, self._count, BLOCK):
+            yield stream.standard_normal(BLOCK) if kept is None else kept[first : first + BLOCK]
+        self._left[column] -= 1
+        if not self._left[column]:
+            self._kept.pop(column, None)
 
 
-def _draw_turn(
-    record: _Record,
-    turn: IntArray,
-    shared: _SharedErrors,
-    own: np.random.Generator,
-    count: int,
-    level: float,
-) -> Drawn:
-    outputs = record.outputs(turn)
-    moving = _moving(outputs)
-    needs = Needs(moving)
-    columns = needs.rows.get(id(record.errors), np.zeros(0, dtype=np.intp)).tolist()
-    of_others = [column for column in columns if column in shared]
-    n_own = len(columns) - len(of_others)
-    normals = aligned(len(columns), CHUNK)
-    row_of = {column: n_own + row for row, column in enumerate(of_others)}
-    free = iter(range(n_own))
-    place = np.array(
-        [row_of[column] if column in row_of else next(free) for column in columns], dtype=np.intp
-    )
-    program = Program(moving, needs, record.errors, place, normals)
+class _Turn:
+    """Some runs that are drawn together."""
 
-    kept = shared.fetch(of_others)
-    held = [(normals[row_of[column]], draws) for column, draws in kept.items()]
-    anew = [(normals[row_of[column]], shared.stream(column)) for column in of_others if column not in kept]
-    drawn = [np.empty((len(rows), count)) for _, rows in outputs]
-    filled = [
-        draws for draws, (number, _) in zip(drawn, outputs, strict=True) if isinstance(number, Recorded)
-    ]
-    with np.errstate(all="ignore"):
-        for first in range(0, count, CHUNK):
-            own.standard_normal(out=normals[:n_own])
-            for row, draws in held:
-                row[:] = draws[first : first + CHUNK]
-            for row, stream in anew:
-                stream.standard_normal(out=row)
+    def __init__(
+        self, record: Record, runs: IntArray, own: np.random.Generator, shared: _SharedErrors
+    ) -> None:
+        self.runs = runs
+        self._record = record
+        self._own = own
+        self._shared = shared
+        self._outputs = record.outputs(runs)
+        self.rows = sum(len(rows) for _, rows in self._outputs)
+
+    @cached_property
+    def _needs(self) -> Needs:
+        return Needs(_moving(self._outputs))
+
+    @cached_property
+    def _columns(self) -> list[int]:
+        rows: list[int] = self._needs.rows.get(id(self._record.errors), np.zeros(0, dtype=np.intp)).tolist()
+        return rows
+
+    @cached_property
+    def _of_others(self) -> list[Iterator[FloatArray]]:
+        return [self._shared.take(column) for column in self._columns if column in self._shared]
+
+    def draw(self, block: FloatArray) -> FloatArray:
+        """Normals of the next block of draws, (chunks, errors, draws of a chunk), in memory that is given."""
+        columns = len(self._columns)
+        own = columns - len(self._of_others)
+        normals = block[: BLOCK * columns].reshape(-1, columns, CHUNK)
+        for chunk in normals:
+            self._own.standard_normal(out=chunk[:own])
+        for row, stream in enumerate(self._of_others, start=own):
+            normals[:, row] = next(stream).reshape(-1, CHUNK)
+        return normals
+
+    @cached_property
+    def _program(self) -> tuple[FloatArray, Program]:
+        columns = np.array(self._columns, dtype=np.intp)
+        of_others = np.array([column in self._shared for column in self._columns], dtype=bool)
+        place = (
+            np.where(of_others, np.count_nonzero(~of_others) + np.cumsum(of_others), np.cumsum(~of_others))
+            - 1
+        )
+        normals = aligned(len(columns), CHUNK)
+        return normals, Program(_moving(self._outputs), self._needs, self._record.errors, place, normals)
+
+    def evaluate(self, block: FloatArray, draws: FloatArray) -> None:
+        """Fill the first rows of ``draws`` with the outputs, one below the other; draws beyond its end are left out."""
+        normals, program = self._program
+        filled = [
+            part
+            for part, (number, _) in zip(self._parts(draws), self._outputs, strict=True)
+            if isinstance(number, Recorded)
+        ]
+        for first, chunk in zip(range(0, draws.shape[1], CHUNK), block, strict=False):
+            normals[...] = chunk
             program.run()
-            for draws, found in zip(filled, program.results, strict=True):
-                part = draws[:, first : first + CHUNK]
-                part[...] = found[:, : part.shape[1]]
-        shared.release(of_others)
-        for draws, (number, rows) in zip(drawn, outputs, strict=True):
+            for part, result in zip(filled, program.results, strict=True):
+                held = part[:, first : first + CHUNK]
+                held[...] = result[:, : held.shape[1]]
+
+    def _parts(self, draws: FloatArray) -> list[FloatArray]:
+        """The rows of each output."""
+        ends = np.cumsum([len(rows) for _, rows in self._outputs]).tolist()
+        return [draws[end - len(rows) : end] for end, (_, rows) in zip(ends, self._outputs, strict=True)]
+
+    def summary(self, draws: FloatArray, level: float) -> Drawn:
+        """What the draws say; they are sorted in place."""
+        found = []
+        for part, (number, rows) in zip(self._parts(draws), self._outputs, strict=True):
             if not isinstance(number, Recorded):
-                draws[...] = nominal(number)[rows, None]
-        return Drawn(turn, record.products(turn), *(coverage(draws, level) for draws in drawn))
+                part[...] = nominal(number)[rows, None]
+            found.append(coverage(part, level))
+        # what a turn was made with is not wanted any more
+        for name in ("_needs", "_columns", "_of_others", "_program"):
+            self.__dict__.pop(name, None)
+        return Drawn(self.runs, self._record.products(self.runs), *found)
+
+
+def _ahead(pool: ThreadPoolExecutor, turns: Sequence[_Turn], count: int) -> Iterator[FloatArray]:
+    """Blocks of normals for one turn after the other, drawn before they are asked for."""
+    blocks = len(range(0, count, BLOCK))
+    most = max((len(turn._columns) for turn in turns), default=0)
+    # one that is in use, one that waits, one that is being filled
+    rooms = cycle([np.empty(BLOCK * most) for _ in range(3)])
+    waiting: deque[Future[FloatArray]] = deque()
+    for turn in turns:
+        for _ in range(blocks):
+            waiting.append(pool.submit(turn.draw, next(rooms)))
+            if len(waiting) == 2:
+                yield waiting.popleft().result()
+    while waiting:
+        yield waiting.popleft().result()

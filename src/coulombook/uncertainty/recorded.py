@@ -135,14 +135,19 @@ class Selected(Recorded):
 
 
 class Applied(Recorded):
-    """A function (values (..., n), elements (n,)) -> values of another number's elements."""
+    """A function of another number's values.
 
-    __slots__ = ("function", "source")
+    ``function`` takes values in any layout, or, where elements differ, values (..., n) and which elements (n,) they are
+    of: ``differs``.
+    """
 
-    def __init__(self, source: Recorded, function: Callable[[FloatArray, IntArray], FloatArray]) -> None:
+    __slots__ = ("differs", "function", "source")
+
+    def __init__(self, source: Recorded, function: Callable[..., FloatArray], differs: bool) -> None:
         self.count = len(source)
         self.source = source
         self.function = function
+        self.differs = differs
 
 
 def pick(x: Recorded, index: IntArray) -> Recorded:
@@ -169,15 +174,26 @@ def map_linearly(matrix: csr_array, x: Recorded) -> Recorded | FloatArray:
         return np.zeros(matrix.shape[0])
     if isinstance(x, Picked):
         matrix, x = _with_columns_of(matrix, x), x.source
-    elif isinstance(x, Mapped):
-        both = matrix @ x.matrix
-        # a product that fills up would cost more than its two parts
-        if both.nnz <= matrix.nnz + x.matrix.nnz:
-            matrix, x = both, x.source
+    elif _moves_only(matrix) and isinstance(x, Mapped):
+        matrix, x = matrix @ x.matrix, x.source
+    elif _moves_only(matrix) and isinstance(x, Elementwise) and x.function in (np.add, np.subtract):
+        # on both parts it costs no more, and it may become one with theirs
+        parts = [
+            map_linearly(matrix, one)
+            if isinstance(one, Recorded)
+            else matrix @ np.broadcast_to(one, (len(x),))
+            for one in x.arguments
+        ]
+        return _sum(x.function, *parts)
     if (np.diff(matrix.indptr) == 1).all():
         weight = None if (matrix.data == 1.0).all() else matrix.data
         return _picked(x, matrix.indices.astype(np.intp), weight)
     return Mapped(x, matrix)
+
+
+def _moves_only(matrix: csr_array) -> bool:
+    """Whether no row adds anything up."""
+    return bool((np.diff(matrix.indptr) <= 1).all())
 
 
 def _with_columns_of(matrix: csr_array, x: Picked) -> csr_array:
@@ -215,14 +231,14 @@ def _alike(a: Operand, b: Operand) -> bool:
 
 def apply(function: Callable[[FloatArray, IntArray], FloatArray], x: Recorded) -> Recorded:
     """A function (values (..., n), elements (n,)) -> values of the elements."""
-    return Applied(x, function)
+    return Applied(x, function, True)
 
 
 def apply_to_each(function: Callable[[FloatArray], FloatArray], x: Recorded) -> Recorded:
     """A function of values, the same for every element."""
     if isinstance(x, Picked) and _is_gathered(x):
         return _picked(apply_to_each(function, x.source), x.index, None)
-    return Applied(x, lambda values, elements: function(values))
+    return Applied(x, function, False)
 
 
 def _of_one(function: np.ufunc, x: Recorded, *scalars: float) -> Recorded:

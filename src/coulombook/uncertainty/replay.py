@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -24,6 +24,9 @@ from coulombook.uncertainty.recorded import (
     Selected,
     UnitErrors,
 )
+
+if TYPE_CHECKING:
+    from scipy.sparse import csr_array
 
 # what a processor reads at once; a row that starts elsewhere costs two reads in place of one
 _LINE_BYTE = 64
@@ -247,7 +250,7 @@ class Program:
                 x = x[index[0] : index[0] + len(index)]
                 return [(np.copyto, (out, x)) if factor is None else (np.multiply, (x, factor, out))]
             # out of a buffer's range never happens; "clip" alone writes straight into ``out``
-            steps: list[Step] = [(np.take, (x, index, 0, out, "clip"))]
+            steps: list[Step] = [(x.take, (index, 0, out, "clip"))]
             return steps if factor is None else [*steps, (np.multiply, (out, factor, out))]
 
         # element by element, a factor may be applied where its number stands
@@ -300,6 +303,11 @@ class Program:
         parts, slots, first = [], [], 0
         for number in self._maps[id(source)]:
             matrix = number.matrix[self._needs.rows[id(number)]]
+            if not matrix.nnz:
+                self._slots[id(number)] = _Slot(
+                    matrix.shape[0], _FOREVER, np.zeros((matrix.shape[0], self._chunk))
+                )
+                continue
             slot, where = self._of_source(source, matrix.indices.astype(np.intp))
             if (np.diff(matrix.indptr) == 1).all():
                 self._slots[id(number)] = self._take(slot, where, matrix.data)
@@ -314,7 +322,7 @@ class Program:
         whole = vstack(parts, format="csr")
 
         def make(out: FloatArray, x: FloatArray) -> list[Step]:
-            return [(_multiply, (whole, x, out))]
+            return _multiplication(whole, x, out)
 
         base = self._plan(first, [slot], make)
         for one in slots:
@@ -374,12 +382,25 @@ class Program:
 
     def _apply(self, number: Applied, rows: IntArray) -> _Slot:
         def make(out: FloatArray, x: FloatArray) -> list[Step]:
-            return [(_call, (number.function, rows, x, out))]
+            if not number.differs:
+                return [(_call, (number.function, x, out))]
+            return [(_call_on, (number.function, rows, x, out))]
 
         return self._plan(len(rows), [self._chosen(number.source, rows)], make)
 
 
-def _multiply(matrix: Any, x: FloatArray, out: FloatArray) -> None:
+def _multiplication(matrix: csr_array, x: FloatArray, out: FloatArray) -> list[Step]:
+    """Steps that put matrix times x into ``out``."""
+    try:
+        # what scipy itself calls; not a public name, so that it may be missing one day
+        from scipy.sparse._sparsetools import csr_matvecs
+    except ImportError:
+        return [(_multiply, (matrix, x, out))]
+    what = (*matrix.shape, x.shape[1], matrix.indptr, matrix.indices, matrix.data, x.ravel(), out.ravel())
+    return [(out.fill, (0.0,)), (csr_matvecs, what)]
+
+
+def _multiply(matrix: csr_array, x: FloatArray, out: FloatArray) -> None:
     out[...] = matrix @ x
 
 
@@ -387,7 +408,11 @@ def _put_rows(out: FloatArray, rows: IntArray, values: FloatArray) -> None:
     out[rows] = values
 
 
-def _call(
+def _call(function: Callable[[FloatArray], FloatArray], x: FloatArray, out: FloatArray) -> None:
+    out[...] = function(x)
+
+
+def _call_on(
     function: Callable[[FloatArray, IntArray], FloatArray], rows: IntArray, x: FloatArray, out: FloatArray
 ) -> None:
     out[...] = function(x.T, rows).T
