@@ -219,9 +219,13 @@ class Findings:
                 self._seen[one] = None
                 self._kept[one.kind] = self._kept.get(one.kind, 0) + 1
 
+    def kept(self, kind: str) -> int:
+        """How many findings of a kind are kept."""
+        return self._kept.get(kind, 0)
+
     def is_full(self, kind: str) -> bool:
         """Whether findings of a kind are only counted by now, so that nothing need be spent on their words."""
-        return self._kept.get(kind, 0) >= MOST_OF_A_KIND
+        return self.kept(kind) >= MOST_OF_A_KIND
 
     def _counted(self) -> Iterator[Finding]:
         for kind, count in self._more.items():

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Callable, Collection, Mapping, Sequence
 from datetime import datetime
 from typing import TypeVar
@@ -20,7 +21,7 @@ from coulombook.balance.readings import (
     Vial,
 )
 from coulombook.findings import Findings, RowOrigin
-from coulombook.intake.files import did_you_mean
+from coulombook.intake.files import advice, did_you_mean
 from coulombook.intake.settings import DayFile
 from coulombook.intake.tables import Default, TypedTable
 
@@ -89,17 +90,18 @@ def known_names(
     """Fault every name of a column that is not among ``known``, once a name."""
     words = table.words(quantity)
     there = set(known)
+    counts = Counter(words)
     reported: set[str] = set()
     for place, word in enumerate(words):
         if word and word not in there and word not in reported:
             reported.add(word)
-            rows = words.count(word)
+            rows = counts[word]
             more = f" ({rows} rows)" if rows > 1 else ""
             findings.add(
                 "unknown-name",
                 table.where(place, quantity),
                 f"no {what} of that name is in {defined_in}",
-                f"correct the name, or add it to {defined_in}{did_you_mean(word, known)}",
+                f"correct the name, or add it to {defined_in}{advice(findings, 'unknown-name', word, known)}",
                 found=f"'{word}'{more}",
                 expected=", ".join(f"'{one}'" for one in known[:5]) + (", ..." if len(known) > 5 else "")
                 or f"a {what} of {defined_in}",

@@ -34,8 +34,9 @@ from coulombook.intake.files import (
     unreadable,
 )
 from coulombook.intake.grid import Grid, grid_of_rows, grid_of_text
-from coulombook.intake.limits import LARGEST_TABLE_BYTE
+from coulombook.intake.limits import LARGEST_TABLE_BYTE, MOST_ADVICE
 from coulombook.intake.settings import DayFile, TraceOptions, read_day_settings
+from coulombook.intake.table_habits import with_look
 from coulombook.intake.tables import TypedTable, typed_table
 from coulombook.intake.text import UnreadableText
 from coulombook.intake.toml_text import read_settings
@@ -267,10 +268,14 @@ def _sheet_grids(home: Folder, defaults: Mapping[str, object], findings: Finding
         if columns is None:
             continue
         given = frozenset(defaults) if name == "runs" else frozenset[str]()
-        grid = grid_of_rows(rows, WORKBOOK, title, partial(columns.score, given=given))
+        try:
+            grid = grid_of_rows(rows, WORKBOOK, title, partial(columns.score, given=given), sheets.epoch)
+        except UnreadableText as error:
+            unreadable(findings, f"{WORKBOOK}, sheet '{title}'", error.found, error.expected)
+            continue
         # a sheet with heads alone, as the empty workbook has it, is no table
         if grid is not None and (grid.rows or name == "runs"):
-            grids[name] = grid
+            grids[name] = with_look(grid, sheets.looks[title], findings)
     return grids
 
 
@@ -510,7 +515,8 @@ def _look_for(
         report_outside(findings, where, text)
     elif not is_file(path):
         near = ""
-        if is_folder(path.parent) and home.holds(path.parent):
+        few = findings.kept("missing-file") < MOST_ADVICE
+        if few and is_folder(path.parent) and home.holds(path.parent):
             near = did_you_mean(path.name, sorted(one.name for one in path.parent.iterdir()))
         findings.add("missing-file", where, what,
                      f"add the file, or correct its name{near}", found=f"no file '{text}'",

@@ -7,6 +7,8 @@ from dataclasses import dataclass, field
 from pathlib import Path
 
 from coulombook.findings import Findings
+from coulombook.intake.limits import MOST_ADVICE
+from coulombook.intake.lookalikes import lookalike, plain
 from coulombook.units import nearest
 
 
@@ -110,6 +112,14 @@ def unreadable(findings: Findings, where: object, found: str, expected: str, men
         found=found,
         expected=expected,
     )
+
+
+def advice(findings: Findings, kind: str, text: str, known: Sequence[str]) -> str:
+    """The last words of a mend line: what deceives in a name, or the nearest known one; for the first of a kind."""
+    if findings.kept(kind) >= MOST_ADVICE:
+        return ""
+    deceit = lookalike(text) if plain(text) in known else None
+    return f"; {deceit}" if deceit else did_you_mean(text, known)
 
 
 def did_you_mean(text: str, known: Sequence[str]) -> str:

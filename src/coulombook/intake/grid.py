@@ -8,6 +8,7 @@ from datetime import date, datetime, time, timedelta
 
 from coulombook.findings import Origin
 from coulombook.intake import text
+from coulombook.intake.limits import MOST_COLUMNS, MOST_TABLE_ROWS
 
 Cell = str | float | int | bool | datetime | date | time | timedelta | None
 Score = Callable[[Sequence[Cell]], float]
@@ -23,6 +24,7 @@ class Grid:
     heads: tuple[str, ...]
     numbers: tuple[int, ...]  # (n_rows,) row numbers
     rows: tuple[Sequence[Cell], ...]  # (n_rows,) cells; a row may be shorter or longer than the heads
+    epoch: datetime | None = None  # day 0 of the serial dates of a workbook
 
     @property
     def head_origin(self) -> Origin:
@@ -65,6 +67,10 @@ def grid_of_text(data: bytes, file: str, score: Score) -> Grid:
     Raises `text.UnreadableText` when the bytes are no text.
     """
     lines = text.lines_of(text.decode(data))
+    if len(lines) > MOST_TABLE_ROWS:
+        raise text.UnreadableText(
+            f"{len(lines)} lines", f"at most {MOST_TABLE_ROWS} lines in a table of a day"
+        )
     found = text.find_head_line(lines, score)
     if found is None:
         first = next((place for place, line in enumerate(lines) if line.strip()), None)
@@ -72,13 +78,24 @@ def grid_of_text(data: bytes, file: str, score: Score) -> Grid:
             raise text.UnreadableText("an empty file", "a line of heads and the rows below it")
         found = first, text.guess_separator(lines[first:])
     (_, heads), *rows = text.rows_below(lines, *found)
+    if len(heads) > MOST_COLUMNS:
+        raise text.UnreadableText(
+            f"{len(heads)} heads in row {found[0] + 1}", f"at most {MOST_COLUMNS} columns"
+        )
     return _grid(file, None, found[0] + 1, heads, rows)
 
 
 def grid_of_rows(
-    rows: Sequence[tuple[int, Sequence[Cell]]], file: str, sheet: str, score: Score
+    rows: Sequence[tuple[int, Sequence[Cell]]],
+    file: str,
+    sheet: str,
+    score: Score,
+    epoch: datetime | None = None,
 ) -> Grid | None:
-    """The table in the numbered rows of a workbook sheet, its heads found as in a text; None for a blank sheet."""
+    """The table in the numbered rows of a workbook sheet, its heads found as in a text; None for a blank sheet.
+
+    Raises `text.UnreadableText` when it has more columns than any table.
+    """
     best: tuple[float, int] | None = None
     for place, (_, cells) in enumerate(rows):
         value = score(cells)
@@ -90,7 +107,10 @@ def grid_of_rows(
     if not filled:
         return None
     head = best[1] if best is not None else filled[0]
-    return _grid(file, sheet, rows[head][0], [cell_text(cell) for cell in rows[head][1]], rows[head + 1 :])
+    number, heads = rows[head]
+    if len(heads) > MOST_COLUMNS:
+        raise text.UnreadableText(f"{len(heads)} heads in row {number}", f"at most {MOST_COLUMNS} columns")
+    return _grid(file, sheet, number, [cell_text(cell) for cell in heads], rows[head + 1 :], epoch)
 
 
 def _grid(
@@ -99,6 +119,7 @@ def _grid(
     head_row: int,
     heads: Sequence[str],
     rows: Sequence[tuple[int, Sequence[Cell]]],
+    epoch: datetime | None = None,
 ) -> Grid:
     # cells of text are stripped already, so that any() sees blank rows; it would miss a lone 0 in a workbook
     kept = [
@@ -116,4 +137,5 @@ def _grid(
         tuple(" ".join(head.split()) for head in heads[:width]),
         tuple(number for number, _ in kept),
         tuple(cells for _, cells in kept),
+        epoch,
     )

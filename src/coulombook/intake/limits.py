@@ -18,6 +18,10 @@ LARGEST_SETTINGS_BYTE = (
     1_000_000  # day.toml with an uncertainty and a species for everything has some ten thousand
 )
 
+# --- faults ---
+
+MOST_ADVICE = 100  # faults of a kind that get the nearest known name, which takes milliseconds to look for
+
 # --- logs ---
 
 LARGEST_LOG_BYTE = 4_000_000_000  # 1e8 rows: a month of 40 readings a second
@@ -31,7 +35,17 @@ FARTHEST_START_SECOND = 86_400.0  # a log stamped more than a day from its run's
 # --- workbooks ---
 
 LARGEST_UNPACKED_BYTE = 300_000_000  # pictures and all; ten times the text of a day of 50,000 peaks
-LARGEST_MARKUP_BYTE = 120_000_000  # what is read as XML takes some ten seconds by then
+LARGEST_MARKUP_BYTE = 120_000_000  # of cells and their texts; read as XML they take some ten seconds by then
+LARGEST_SIDE_PART_BYTE = (
+    16_000_000  # styles, names, themes: the styles of a workbook that has all it may have
+)
+MOST_TAGS = (
+    8_000_000  # four to a cell: two million cells, some ten seconds and a gigabyte while they are read
+)
+MOST_ROW_TAGS = (
+    131_072  # eight to a cell of the widest row there is (16,384 cells), for a row is read as a whole
+)
 MOST_PARTS = 10_000  # a part a sheet, picture and chart
-MOST_CELLS = 3_000_000  # of all tables, the blank ones of a row with them: some ten seconds and 300 MB
-MOST_SHEET_ROWS = 1_048_576  # of a sheet, by the standard (ECMA-376, as spreadsheet programs keep it)
+MOST_SHEETS = 500  # each is opened once, read or not
+MOST_CELLS = 3_000_000  # of all tables, the blank ones of a row with them: a lone cell far out widens its row
+MOST_SHEET_ROWS = 1_048_576  # of a sheet, as spreadsheet programs keep it

@@ -6,7 +6,8 @@ from collections.abc import Callable, Iterator, Sequence
 
 from coulombook.balance.readings import Check, Flow, FlowKind, Peak, Run, Scan, Signal, Spectrum, Vial
 from coulombook.findings import Findings
-from coulombook.intake.files import did_you_mean
+from coulombook.intake.files import advice, did_you_mean
+from coulombook.intake.limits import MOST_ADVICE
 from coulombook.intake.tables import TypedTable
 from coulombook.species import Species, SpeciesTable, internal_standard_name
 
@@ -46,14 +47,15 @@ class Names:
             return found.name
         if text not in self._reported:
             self._reported.add(text)
-            rows = table.words("analyte").count(text)
+            few = len(self._reported) <= MOST_ADVICE
+            rows = table.words("analyte").count(text) if few else 0
             more = f" ({rows} rows)" if rows > 1 else ""
             self._findings.add(
                 "unknown-species",
                 table.where(place, "analyte"),
                 "the analyte is not in the table of species",
                 f"correct the name, or add a section [species.{text}] to day.toml"
-                f"{did_you_mean(text, self._species.names())}",
+                f"{advice(self._findings, 'unknown-species', text, self._species.names())}",
                 found=f"'{text}'{more}",
                 expected="a species by name, formula or alias",
             )

@@ -6,12 +6,15 @@ import math
 import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
-from datetime import date, datetime
+from datetime import date, datetime, timedelta
 
 from coulombook.findings import Findings, Origin, RowOrigin
+from coulombook.intake.clock import FIRST_SERIAL_DAY, LAST_SERIAL_DAY
 from coulombook.intake.files import did_you_mean
 from coulombook.intake.grid import Cell, FaultyCell, Grid, cell_text, is_blank
+from coulombook.intake.lookalikes import lookalike, plain
 from coulombook.intake.schema import Column, Content, Schema
+from coulombook.intake.table_habits import tidied
 from coulombook.units import (
     LARGEST_NUMBER,
     SMALLEST_NUMBER,
@@ -119,6 +122,7 @@ def typed_table(
     about read as absent.
     """
     defaults = defaults or {}
+    grid = tidied(grid, schema, findings)
     places = _place_columns(grid, schema, findings)
     heads = {quantity: shortened(grid.heads[place]) for quantity, place in places.items()}
     table = TypedTable(schema, grid.file, grid.sheet, grid.head_row, grid.numbers, heads)
@@ -193,12 +197,17 @@ def _carry(
         while key in table.carried:
             key += "'"
         table.carried[key] = cells
-        near = _nearest_head(head, names, schema)
+        deceit = lookalike(head) if parse_head(plain(head)).quantity in schema.by_name else None
+        near = None if deceit else _nearest_head(head, names, schema)
         findings.add(
             "unread-column",
             _head_place(grid, key),
             "the column is not known; it is carried along unread",
-            f"if '{near}' is meant, write the head so" if near else "",
+            f"type the head anew: {deceit}"
+            if deceit
+            else f"if '{near}' is meant, write the head so"
+            if near
+            else "",
         )
 
 
@@ -219,11 +228,16 @@ def _report_missing_column(grid: Grid, schema: Schema, column: Column, findings:
     close = next(
         (head for head in unknown if _nearest_head(head, [column.head, column.quantity], schema)), None
     )
+    deceiving = next(
+        (head for head in unknown if schema.by_name.get(parse_head(plain(head)).quantity) is column), None
+    )
     findings.add(
         "missing-column",
         grid.head_origin,
         f"the table has no column '{column.head}'",
-        f"did you mean it by '{close}'? then write the head as '{column.head}'"
+        f"type the head '{deceiving}' anew: {lookalike(deceiving)}"
+        if deceiving
+        else f"did you mean it by '{close}'? then write the head as '{column.head}'"
         if close
         else f"add the column '{column.head}'",
         found=", ".join(f"'{head}'" for head in grid.heads)[:300] or "no heads",
@@ -294,6 +308,8 @@ def _read_column(
     values: list[object]
     if column.content is Content.NUMBER:
         values = _numbers(column, cells, unused, decimal_comma, table, findings)
+        if grid.sheet is not None:
+            _note_texts(column, cells, values, table, findings)
         if how is None:
             table.unread.add(quantity)
             values = [None] * len(cells)
@@ -303,7 +319,7 @@ def _read_column(
                 values = [one * how.factor + how.offset if isinstance(one, float) else None for one in values]
             _check_range(column, cells, values, unused, table, findings)
     elif column.content is Content.INSTANT:
-        values = _instants(column, cells, unused, table, findings)
+        values = _instants(column, cells, grid.epoch, unused, table, findings)
     else:
         values = [text or None for text in map(cell_text, cells)]
     kinds = [how.flow_kind if how else None] * len(cells)
@@ -339,8 +355,10 @@ def _conversion_of_head(grid: Grid, column: Column, head: str, findings: Finding
     except UnitError as error:
         found = f"unit {quoted(unit)}" if unit is not None else "no unit in the head"
         mend = f"correct the unit in the head, as in '{column.head}'"
+        deceit = lookalike(unit or "")
         if error.suggestion:
             mend += f"; did you mean '{error.suggestion}'?"
+        mend += f"; {deceit}" if deceit else ""
         text = (
             "the unit measures something else"
             if error.kind == "wrong-dimension"
@@ -416,6 +434,25 @@ def _numbers(
                 )
         values.append(value)
     return values
+
+
+def _note_texts(
+    column: Column, cells: Sequence[Cell], values: Sequence[object], table: TypedTable, findings: Findings
+) -> None:
+    """Tell of numbers that a workbook holds as text: its own formulas would not have counted them."""
+    texts = [
+        place
+        for place, value in enumerate(values)
+        if isinstance(value, float) and isinstance(cells[place], str)
+    ]
+    if texts:
+        findings.add(
+            "numbers-interpreted",
+            table.where(texts[0], column.quantity),
+            f"{len(texts)} cell{'s hold numbers' if len(texts) > 1 else ' holds a number'} as text, such as "
+            f"{quoted(cell_text(cells[texts[0]]))}",
+            "format the cells as numbers and enter them anew",
+        )
 
 
 def _report_size(
@@ -504,11 +541,19 @@ def _check_range(
 
 
 def _instants(
-    column: Column, cells: Sequence[Cell], unused: frozenset[int], table: TypedTable, findings: Findings
+    column: Column,
+    cells: Sequence[Cell],
+    epoch: datetime | None,
+    unused: frozenset[int],
+    table: TypedTable,
+    findings: Findings,
 ) -> list[object]:
     values: list[object] = []
+    serials: list[int] = []
     for place, cell in enumerate(cells):
         value = instant_of(cell)
+        if value is None and epoch is not None and (value := _instant_of_serial(cell, epoch)) is not None:
+            serials.append(place)
         if value is None and not is_blank(cell):
             table.broken.add(place)
             if place not in unused:
@@ -522,7 +567,23 @@ def _instants(
                     "write year, month, day, then the time",
                 )
         values.append(value)
+    if serials:
+        first = serials[0]
+        findings.add(
+            "date-from-number",
+            table.where(first, column.quantity),
+            f"{len(serials)} cell{'s hold serial dates' if len(serials) > 1 else ' holds a serial date'} in place of "
+            f"a date-time; {cell_text(cells[first])} was read as {values[first]}",
+            "format the cells as date and time",
+        )
     return values
+
+
+def _instant_of_serial(cell: Cell, epoch: datetime) -> datetime | None:
+    """The date-time of a serial date of a workbook, to the millisecond; a whole number lacks its time of day."""
+    if not isinstance(cell, float) or cell.is_integer() or not FIRST_SERIAL_DAY <= cell <= LAST_SERIAL_DAY:
+        return None
+    return epoch + timedelta(milliseconds=round(cell * 86_400_000))
 
 
 def instant_of(cell: Cell) -> datetime | None:

@@ -3,32 +3,70 @@
 from __future__ import annotations
 
 import io
+import re
 import warnings
 import zipfile
-import zlib
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
+from datetime import datetime
 from typing import Any
 
 from coulombook.findings import Findings, Origin
 from coulombook.intake.files import unreadable
 from coulombook.intake.grid import Cell, FaultyCell
+from coulombook.intake.limits import MOST_CELLS, MOST_SHEET_ROWS
+from coulombook.intake.package import DAMAGE, BadPackage, blocks, refuse_foreign, refuse_harmful
 
 Rows = list[tuple[int, Sequence[Cell]]]
 
-LARGEST_UNPACKED_BYTE = 300_000_000  # ten times the text of a day of 50,000 peaks
-_MOST_PARTS = 10_000
 _ERROR_CELLS = frozenset(
     ("#DIV/0!", "#REF!", "#N/A", "#NAME?", "#NULL!", "#NUM!", "#VALUE!", "#SPILL!", "#CALC!", "#GETTING_DATA")
 )
+_MERGED = re.compile(rb'<(?:[\w.-]+:)?mergeCell\s[^<>]*?ref="([A-Z]{1,3})(\d{1,7}):([A-Z]{1,3})(\d{1,7})"')
+_HIDDEN_ROW = re.compile(rb'<(?:[\w.-]+:)?row\s[^<>]*?\shidden="(?:1|true)"')
+_HIDDEN_COLUMN = re.compile(rb'<(?:[\w.-]+:)?col\s[^<>]*?\shidden="(?:1|true)"')
+
+
+@dataclass(frozen=True, slots=True)
+class Merged:
+    """Cells that were made one: rows as the spreadsheet counts, columns from 0."""
+
+    top: int
+    left: int
+    bottom: int
+    name: str
+
+
+@dataclass(frozen=True, slots=True)
+class Look:
+    """What a sheet shows that its cells do not tell."""
+
+    merged: tuple[Merged, ...] = ()
+    hidden: tuple[str, ...] = ()  # in words: the sheet, rows, columns
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Sheets:
-    """The sheets read, by name, and the names of the filled sheets that were left unread."""
+    """The sheets read, by name, and the names of the filled sheets that were left unread.
+
+    ``epoch`` is day 0 of the workbook's serial dates.
+    """
 
     rows: dict[str, Rows]
     unread: tuple[str, ...]
+    looks: dict[str, Look] = field(default_factory=dict)
+    epoch: datetime | None = None
+
+
+@dataclass(slots=True, eq=False)
+class _Read:
+    """The wanted sheets, whether the others hold anything, and what one look at the package tells."""
+
+    rows: dict[str, Rows]
+    unread: list[str]
+    paths: dict[str, str]
+    states: dict[str, str]
+    epoch: datetime | None = None
 
 
 def read_sheets(data: bytes, file: str, wanted: Callable[[str], bool], findings: Findings) -> Sheets | None:
@@ -37,23 +75,34 @@ def read_sheets(data: bytes, file: str, wanted: Callable[[str], bool], findings:
     Cells hold what the workbook last computed. A cell with an error, or with a formula nobody has computed, is a
     fault that names it, and reads as a `FaultyCell`.
     """
-    if not _sound(data, file, findings):
+    try:
+        refuse_foreign(data)
+        with zipfile.ZipFile(io.BytesIO(data)) as package:
+            refuse_harmful(package)
+    except BadPackage as error:
+        unreadable(findings, file, error.found, error.expected, error.mend)
+        return None
+    except DAMAGE as error:
+        unreadable(findings, file, _first_line(error), "a workbook (.xlsx) that opens",
+                   "save the workbook again; it may be cut short")  # fmt: skip
         return None
     try:
         with warnings.catch_warnings():
             warnings.simplefilter(
                 "ignore"
             )  # openpyxl warns of decorations it does not keep; nothing is saved
-            sheets = _load(data, data_only=True)
-            formulas = _load(data, data_only=False) if _has_formulas(data) else {}
+            read = _load(data, wanted, data_only=True)
+            formulas = _load(data, wanted, data_only=False).rows if _has_formulas(data) else {}
+            looks = _looks(data, read)
+    except BadPackage as error:
+        unreadable(findings, file, error.found, error.expected, error.mend)
+        return None
     except Exception as error:  # a damaged package raises whatever its damaged part happens to hit
         unreadable(
             findings, file, _first_line(error), "a workbook (.xlsx) that opens", "save the workbook again"
         )
         return None
-    unread = tuple(name for name, rows in sheets.items() if rows and not wanted(name))
-    sheets = {name: rows for name, rows in sheets.items() if wanted(name)}
-    for name, rows in sheets.items():
+    for name, rows in read.rows.items():
         # a row of formulas that nobody has computed holds no value, and would be missed
         held, written = dict(rows), dict(formulas.get(name, []))
         rows[:] = [
@@ -63,7 +112,7 @@ def read_sheets(data: bytes, file: str, wanted: Callable[[str], bool], findings:
             )
             for number in sorted({*held, *written})
         ]
-    return Sheets(sheets, unread)
+    return Sheets(read.rows, tuple(read.unread), looks, read.epoch)
 
 
 def _checked(
@@ -107,33 +156,12 @@ def _cell_place(where: Origin, column: int) -> str:
     return f"{where}, cell {letters}{where.row}"
 
 
-def _sound(data: bytes, file: str, findings: Findings) -> bool:
-    """Whether the package is whole and unpacks to a size worth opening."""
-    wanted = "a workbook (.xlsx) that opens"
-    try:
-        with zipfile.ZipFile(io.BytesIO(data)) as package:
-            parts = package.infolist()
-            unpacked = sum(part.file_size for part in parts)
-            if unpacked > LARGEST_UNPACKED_BYTE or len(parts) > _MOST_PARTS:
-                unreadable(
-                    findings,
-                    file,
-                    f"{unpacked / 1e6:.0f} MB in {len(parts)} parts when unpacked",
-                    f"a workbook of at most {LARGEST_UNPACKED_BYTE / 1e6:.0f} MB unpacked",
-                    "move what is no table of the day to another workbook",
-                )
-                return False
-            for part in parts:
-                # a document type is where entity bombs live; no spreadsheet program writes one
-                if part.filename.endswith((".xml", ".rels")):
-                    with package.open(part) as stream:
-                        if b"<!DOCTYPE" in stream.read(1024):
-                            unreadable(findings, file, f"a document type in {part.filename}", wanted)
-                            return False
-    except (zipfile.BadZipFile, OSError, ValueError, EOFError, RuntimeError, zlib.error) as error:
-        unreadable(findings, file, _first_line(error), wanted, "save the workbook again; it may be cut short")
-        return False
-    return True
+def _column_of(letters: str) -> int:
+    """Place of a column, from 0, by its letters."""
+    number = 0
+    for letter in letters:
+        number = number * 26 + ord(letter) - ord("A") + 1
+    return number - 1
 
 
 def _has_formulas(data: bytes) -> bool:
@@ -146,25 +174,67 @@ def _has_formulas(data: bytes) -> bool:
     return False
 
 
-def _load(data: bytes, *, data_only: bool) -> dict[str, Rows]:
+def _load(data: bytes, wanted: Callable[[str], bool], *, data_only: bool) -> _Read:
+    """The rows of the wanted sheets. Raises `BadPackage` for more cells than any day has."""
     import openpyxl
 
     book: Any = openpyxl.load_workbook(
         io.BytesIO(data), read_only=True, data_only=data_only, keep_links=False
     )
     try:
-        sheets: dict[str, Rows] = {}
+        read = _Read({}, [], {}, {}, book.epoch)
+        cells = 0
         for sheet in book.worksheets:
             # the size a sheet claims may be wrong, and would pad every row to it
             sheet.reset_dimensions()
-            sheets[str(sheet.title)] = [
-                (number, kept)
-                for number, cells in enumerate(sheet.iter_rows(values_only=True), 1)
-                if (kept := _trimmed(cells))
-            ]
-        return sheets
+            title = str(sheet.title)
+            is_wanted = wanted(title)
+            rows: Rows = []
+            for number, row in enumerate(sheet.iter_rows(values_only=True), 1):
+                cells += len(row) + 1
+                if number > MOST_SHEET_ROWS or cells > MOST_CELLS:
+                    raise BadPackage(
+                        f"more than {MOST_SHEET_ROWS} rows in sheet '{title:.60}'" if number > MOST_SHEET_ROWS
+                        else f"more than {MOST_CELLS} cells, the blank ones before a filled one with them",
+                        f"tables of at most {MOST_CELLS} cells",
+                        "delete what stands far below or beside the tables, or write them as CSV",
+                    )  # fmt: skip
+                if kept := _trimmed(row):
+                    rows.append((number, kept))
+                    if not is_wanted:
+                        break
+            if is_wanted:
+                read.rows[title] = rows
+                read.paths[title] = str(sheet._worksheet_path)
+                read.states[title] = str(sheet.sheet_state)
+            elif rows:
+                read.unread.append(title)
+        return read
     finally:
         book.close()
+
+
+def _looks(data: bytes, read: _Read) -> dict[str, Look]:
+    """Merged and hidden cells of the sheets read, which a reader of cells does not tell of."""
+    looks = {}
+    with zipfile.ZipFile(io.BytesIO(data)) as package:
+        for title, path in read.paths.items():
+            content = b"".join(blocks(package, path))
+            merged = tuple(
+                Merged(int(top), _column_of(left.decode()), int(bottom), f"{left.decode()}{int(top)}:"
+                       f"{right.decode()}{int(bottom)}")
+                for left, top, right, bottom in _MERGED.findall(content)
+                if int(bottom) > int(top)
+            )  # fmt: skip
+            hidden = []
+            if read.states[title] != "visible":
+                hidden.append("the sheet")
+            for pattern, one in ((_HIDDEN_ROW, "row"), (_HIDDEN_COLUMN, "column")):
+                count = len(pattern.findall(content))
+                if count:
+                    hidden.append(f"{count} {one}{'s' if count > 1 else ''}")
+            looks[title] = Look(merged, tuple(hidden))
+    return looks
 
 
 def _trimmed(cells: Sequence[Cell]) -> Sequence[Cell]:

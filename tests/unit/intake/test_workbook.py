@@ -13,7 +13,7 @@ import pytest
 from tests.unit.intake.conftest import MINIATURE, Opened
 
 from coulombook.findings import Findings
-from coulombook.intake import workbook
+from coulombook.intake import package
 from coulombook.intake.workbook import Sheets, read_sheets
 
 Open = Callable[..., Opened]
@@ -150,9 +150,9 @@ def test_a_truncated_workbook_is_unreadable(keep: float) -> None:
 
 def test_a_workbook_that_unpacks_to_too_much_is_not_opened(monkeypatch: pytest.MonkeyPatch) -> None:
     stream = io.BytesIO()
-    with zipfile.ZipFile(stream, "w", zipfile.ZIP_DEFLATED) as package:
-        package.writestr("xl/worksheets/sheet1.xml", b"0" * 2_000_000)
-    monkeypatch.setattr(workbook, "LARGEST_UNPACKED_BYTE", 1_000_000)
+    with zipfile.ZipFile(stream, "w", zipfile.ZIP_DEFLATED) as archive:
+        archive.writestr("xl/worksheets/sheet1.xml", b"0" * 2_000_000)
+    monkeypatch.setattr(package, "LARGEST_UNPACKED_BYTE", 1_000_000)
     sheets, findings = _read(stream.getvalue())
     assert sheets is None
     (fault,) = findings
