@@ -145,14 +145,8 @@ KINDS: dict[str, tuple[Severity, str]] = {
     "log-gap": (Severity.WARN, "a log has no readings for a part of its run's window"),
     "negative-amount": (Severity.WARN, "a reading below blank or intercept gives an amount < 0"),
     "open-runs-compared": (Severity.WARN, "runs whose balance does not close count in a comparison"),
-    "no-replicates": (
-        Severity.WARN,
-        "a comparison has no replicates, and knows nothing of electrodes' differences",
-    ),
-    "scatter-apart": (
-        Severity.WARN,
-        "replicates scatter more than those of the others they are compared with",
-    ),
+    "no-replicates": (Severity.WARN, "no catalyst of a comparison has replicates"),
+    "scatter-apart": (Severity.WARN, "replicates scatter more than those of the others"),
     # --- notes: what was assumed or left aside ---
     "unread-column": (Severity.NOTE, "a column nobody knows was carried along unread"),
     "unread-table": (Severity.NOTE, "a file or sheet is no table of a day; left unread"),
