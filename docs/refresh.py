@@ -10,12 +10,14 @@ of a document, in a folder of its own that holds the example days and their cali
   directly is what it prints;
 - a block with ``file=PATH`` behind its language: written to that file.
 
-Every other block is left alone. The columns of the tables are described from the program's own words.
+Every other block is left alone. The columns of the tables are described from the program's own words, and the
+kinds of finding from their pages.
 """
 
 from __future__ import annotations
 
 import contextlib
+import difflib
 import html
 import io
 import os
@@ -25,14 +27,18 @@ import shutil
 import subprocess
 import sys
 import tempfile
+import textwrap
 from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
 
 from coulombook.book.columns import about_tables
+from coulombook.findings import KINDS, Severity
+from coulombook.why import Page, page_of
 
 ROOT = Path(__file__).resolve().parents[1]
 RESULTS = ROOT / "docs" / "results.md"
+FINDINGS = ROOT / "docs" / "findings.md"
 PICTURE = ROOT / "docs" / "images" / "tally.svg"
 PICTURED = "coulombook tally example_experiments/2043-05-18-mesh-foil-foam"
 WIDTH = 100
@@ -206,6 +212,37 @@ def with_columns(document: str) -> str:
     return document
 
 
+def with_kinds(document: str) -> str:
+    """The document of the findings with the page of every kind, from its first heading of a severity on."""
+    titles = {Severity.STOP: "Faults", Severity.WARN: "Warnings", Severity.NOTE: "Notes"}
+    opening, found, _ = document.partition(f"## {titles[Severity.STOP]}\n")
+    if not found:
+        raise ValueError("the document of the findings has no heading '## Faults'")
+    for severity, title in titles.items():
+        opening += f"## {title}\n\n"
+        opening += "".join(_kind(page_of(kind)) for kind, (rank, _) in KINDS.items() if rank is severity)
+    return opening.rstrip("\n") + "\n"
+
+
+def _kind(page: Page) -> str:
+    texts = (page.means, f"**Why it matters.** {page.matters}", f"**What to do.** {page.mend}")
+    paragraphs = [textwrap.fill(text, 110, break_on_hyphens=False) for text in texts]
+    examples = []
+    for name in dict.fromkeys([*page.bad, *page.mended]):
+        bad, mended = (
+            (side.get(name) or "(not there)").splitlines() if name in side else []
+            for side in (page.bad, page.mended)
+        )
+        lines = [line.rstrip() for line in difflib.ndiff(bad, mended) if not line.startswith("?")]
+        examples.append(f"`{name}`\n\n```diff\n" + "\n".join(lines) + "\n```")
+    more = [f"Told of by `coulombook {page.command}`."] if page.command != "tally DAY" else []
+    if page.beside:
+        more.append(
+            "The same mistake also brings " + ", ".join(f"[{one}](#{one})" for one in page.beside) + "."
+        )
+    return "\n\n".join([f"### {page.kind}", *paragraphs, *examples, *more]) + "\n\n"
+
+
 def picture(folder: Path) -> str:
     """The tables of the example day as an SVG drawing."""
     from rich.console import Console
@@ -250,6 +287,7 @@ def _by_words(text: re.Match[str]) -> str:
 def main() -> None:
     """Refresh every document and the picture."""
     RESULTS.write_text(with_columns(RESULTS.read_text(encoding="utf-8")), encoding="utf-8")
+    FINDINGS.write_text(with_kinds(FINDINGS.read_text(encoding="utf-8")), encoding="utf-8")
     for path in documents():
         document = path.read_text(encoding="utf-8")
         if not runnable(document):

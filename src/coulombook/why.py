@@ -5,8 +5,9 @@ A page holds
 - ``means``, ``matters``, ``mend``: what it means, which outputs it moves and to which side, and what to do; plain
   words in which a name from the files stands between back-ticks, and links are those of the folder ``docs``;
 - ``bad`` and ``mended``: files of a day as the bench may write them, and as they should be. A table is shown whole,
-  of a settings file the sections it is about; the rest of the day is good;
-- ``options``, if it needs any: what the command is given besides the day;
+  of a settings file the sections it is about, and an empty text says that the file is not there; the rest of the day
+  is good. ``day.xlsx, sheet 'gas'`` is a sheet, in which ``^`` is a cell merged with the one above;
+- ``command``, if it is not that of every day: what tells of it, such as ``tally DAY --reconcile``;
 - ``beside``, if any: kinds that the same mistake brings as well.
 
 Severity and title are those of `coulombook.findings.KINDS` and stand nowhere else. A test tallies every example and
@@ -41,7 +42,7 @@ class Page:
     mend: str
     bad: Mapping[str, str]
     mended: Mapping[str, str]
-    options: tuple[str, ...] = ()
+    command: str = "tally DAY"
     beside: tuple[str, ...] = ()
 
 
@@ -77,7 +78,7 @@ def page_of(word: str) -> Page:
         _one_line(entry["mend"]),
         entry["bad"],
         entry["mended"],
-        tuple(entry.get("options", "").split()),
+        entry.get("command", "tally DAY"),
         tuple(entry.get("beside", ())),
     )
 

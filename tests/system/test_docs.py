@@ -338,6 +338,11 @@ def test_results_explain_every_status_and_verdict() -> None:
     assert told >= {QUANTIFIED, ABOVE, BELOW, CLOSED, SHORT, OVER}
 
 
+def test_findings_explain_the_kinds_in_the_words_of_their_pages() -> None:
+    document = text_of("docs/findings.md")
+    assert refresh.with_kinds(document) == document
+
+
 @pytest.mark.parametrize("severity", ["stop", "warn", "note"])
 def test_findings_explain_every_kind_under_its_severity(severity: str) -> None:
     document = text_of("docs/findings.md")

@@ -17,13 +17,21 @@ from coulombook.findings import KINDS, Finding, Severity
 from coulombook.why import page_of
 
 
-def findings_of(folder: Path, shown: Mapping[str, str], options: tuple[str, ...] = ()) -> tuple[Finding, ...]:
-    """What a tally of the good day with the files of an example tells."""
-    parser = Parser(prog="tally")
+def findings_of(folder: Path, shown: Mapping[str, str], command: str = "tally DAY") -> tuple[Finding, ...]:
+    """What a command tells of the good day with the files of an example."""
+    parser = Parser(prog=command)
+    parser.add_argument("command", choices=["tally", "compare"])
+    parser.add_argument("day", choices=["DAY"])
     parser.add_argument("--draws", type=int, default=0)
     parser.add_argument("--reconcile", action="store_true")
+    options = parser.parse_args(command.split())
+    day = write_day(folder, shown)
+    if options.command == "compare":
+        from coulombook.comparison.order import compare_days
+
+        return compare_days([day]).findings
     try:
-        return coulombook.tally(write_day(folder, shown), **vars(parser.parse_args(options))).findings
+        return coulombook.tally(day, draws=options.draws, reconcile=options.reconcile).findings
     except coulombook.DayFaults as faults:
         return faults.findings
 
@@ -49,12 +57,12 @@ def test_bad_example_of_a_kind_brings_it_and_the_mended_one_brings_nothing(
     kind: str, workplace: Path
 ) -> None:
     page = page_of(kind)
-    bad = findings_of(workplace / "bad" / "day", page.bad, page.options)
+    bad = findings_of(workplace / "bad" / "day", page.bad, page.command)
     if page.severity is Severity.STOP:
         # what is milder had not all been seen when the tally stopped
         bad = tuple(one for one in bad if one.severity is Severity.STOP)
     assert {one.kind for one in bad} == {kind, *page.beside}
-    assert findings_of(workplace / "mended" / "day", page.mended, page.options) == ()
+    assert findings_of(workplace / "mended" / "day", page.mended, page.command) == ()
 
 
 def test_sections_of_settings_take_the_places_of_those_of_the_same_heading() -> None:
@@ -100,7 +108,7 @@ def test_lines_that_differ_are_marked(command: Command) -> None:
     assert lines.count("    t / s,E / V,I / mA") == 2
 
 
-def test_options_that_a_kind_needs_are_shown(command: Command) -> None:
+def test_a_command_that_is_not_that_of_every_day_is_shown(command: Command) -> None:
     assert "coulombook tally DAY --reconcile" in command("why", "not-reconciled").out
 
 

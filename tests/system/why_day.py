@@ -6,12 +6,15 @@ product and one liquid product make the tables short enough to be read on a page
 
 from __future__ import annotations
 
+import io
 import re
-from collections.abc import Callable, Mapping
-from functools import cache
+from collections.abc import Callable, Mapping, Sequence
+from functools import cache, partial
 from pathlib import Path
+from typing import Any
 
 import numpy as np
+from tests.faults.day import workbook_of
 from tests.unit.cell.rc_circuit import Record, sweep
 
 from coulombook.cell.impedance import circuit_impedance
@@ -88,6 +91,7 @@ GOOD: Mapping[str, str] = {
     "calibrations/gc-2043-04/standards.csv": (
         "channel,analyte,mole fraction / ppm,peak area\n"
         "FID,CO,100,10.1\nFID,CO,1000,99.7\nFID,CO,2000,200.2\nFID,CO,3000,300.1\n"
+        "FID,CO,4000,399.8\n"
     ),
     "calibrations/nmr-2043-05/calibration.toml": 'kind = "liquid"\n\n[curve]\nform = "line"\n',
     "calibrations/nmr-2043-05/standards.csv": (
@@ -97,19 +101,32 @@ GOOD: Mapping[str, str] = {
 }
 
 _HEADER = re.compile(r"^(?=\[)", re.MULTILINE)
+_SHEET = re.compile(r"day\.xlsx, sheet '(?P<table>[a-z]+)'(?P<hidden> \(hidden\))?")
+MERGED = "^"  # in a sheet of an example: merged with the cell above
 
 
-def files_of(shown: Mapping[str, str]) -> dict[str, str]:
+def files_of(shown: Mapping[str, str]) -> dict[str, str | bytes]:
     """The files of the good day with those of an example in their places.
 
-    A table is shown whole. Of a settings file the sections shown take the places of those of the same heading; all
-    entries of ``[[uncertainty]]`` count as one section.
+    A table is shown whole, and an empty text says that the file is not there. Of a settings file the sections shown
+    take the places of those of the same heading; all entries of ``[[uncertainty]]`` count as one section.
     """
-    files = dict(GOOD)
+    files: dict[str, str | bytes] = dict(GOOD)
+    sheets = {}
     for name, text in shown.items():
-        files[name] = _merged(GOOD[name], text) if name.endswith(".toml") and name in GOOD else text
+        if sheet := _SHEET.fullmatch(name):
+            sheets[sheet["table"]] = text, bool(sheet["hidden"])
+            files.pop(f"{sheet['table']}.csv", None)
+        elif name.endswith(".toml") and name in GOOD:
+            files[name] = _merged(GOOD[name], text)
+        elif text:
+            files[name] = text
+        else:
+            del files[name]
+    if sheets:
+        files["day.xlsx"] = _workbook(sheets)
     for name, make in RECORDS.items():
-        if any(name in text for text in files.values()):
+        if any(name in text for text in files.values() if isinstance(text, str)):
             files.setdefault(name, make())
     return files
 
@@ -119,8 +136,35 @@ def write_day(folder: Path, shown: Mapping[str, str]) -> Path:
     for name, content in files_of(shown).items():
         path = folder / name
         path.parent.mkdir(parents=True, exist_ok=True)
-        path.write_text(content, encoding="utf-8")
+        path.write_bytes(content if isinstance(content, bytes) else content.encode())
     return folder
+
+
+def _workbook(sheets: Mapping[str, tuple[str, bool]]) -> bytes:
+    """A workbook of sheets, each written as a comma-separated table, hidden or not."""
+    import openpyxl
+
+    book = openpyxl.load_workbook(io.BytesIO(workbook_of({name: text for name, (text, _) in sheets.items()})))
+    for name, (_, hidden) in sheets.items():
+        sheet = book[name]
+        sheet.sheet_state = "hidden" if hidden else "visible"
+        for column in sheet.iter_cols():
+            _merge(sheet, column)
+    if all(hidden for _, hidden in sheets.values()):
+        book.create_sheet("remarks")  # a workbook must show something
+    target = io.BytesIO()
+    book.save(target)
+    return target.getvalue()
+
+
+def _merge(sheet: Any, column: Sequence[Any]) -> None:
+    """Merge the cells of a column that say so with the one above them."""
+    start = 0
+    for place, cell in enumerate([*column, None]):
+        if cell is None or cell.value != MERGED:
+            if place - start > 1:
+                sheet.merge_cells(f"{column[start].coordinate}:{column[place - 1].coordinate}")
+            start = place
 
 
 def _merged(good: str, shown: str) -> str:
@@ -137,6 +181,19 @@ def _heading(part: str) -> str:
 
 
 # --- records too long for a page: an example names them in a table ---
+
+
+_POTENTIALS = (1.2, 1.3, 1.4, 1.5, 1.6)
+# mA: log j bends as under a limit of transport; it is straight, 250 mV a decade behind 10 ohm; CO2 used is straight
+_CURRENTS = {
+    "at": (0.3, 1.096, 2.865, 5.684, 9.283),
+    "stirred": (0.3, 0.725, 1.669, 3.531, 6.653),
+    "split": (0.3, 0.844, 2.451, 5.72, 10.601),
+}
+
+
+def _steady(volt: float, milliampere: float) -> str:
+    return "t / s,E / V,I / mA\n" + "".join(f"{t},{-volt:g},{-milliampere:g}\n" for t in (0, 1800, 3600))
 
 
 def _voltammogram(record: Record) -> str:
@@ -192,6 +249,9 @@ def _records() -> dict[str, Callable[[], str]]:
         made[f"scans/coarse-{rate}.csv"] = lambda rate=rate: _voltammogram(
             sweep(1e-3, 0.0, rate * 1e-3, per_sweep=4)
         )
+    for kind, currents in _CURRENTS.items():
+        for volt, milliampere in zip(_POTENTIALS, currents, strict=True):
+            made[f"traces/{kind}-{volt}V.csv"] = partial(_steady, volt, milliampere)
     made["spectra/m1.csv"] = lambda: _spectrum(8.0)
     made["spectra/m1-drifting.csv"] = lambda: _spectrum(8.0, drift=0.2)
     made["spectra/m1-reacting.csv"] = lambda: _spectrum(8.0, element=1e-2)

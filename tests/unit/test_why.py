@@ -45,7 +45,7 @@ def test_every_kind_that_the_program_tells_of_is_in_the_list_and_every_one_in_th
 def test_a_page_holds_what_it_should_and_nothing_else(kind: str) -> None:
     entry = tomllib.loads(PLACE.joinpath(f"{kind}.toml").read_text(encoding="utf-8"))
     assert set(entry) >= KEYS
-    assert set(entry) - KEYS <= {"options", "beside"}
+    assert set(entry) - KEYS <= {"command", "beside"}
     assert set(entry.get("beside", ())) <= set(KINDS) - {kind}
     for text in (entry["means"], entry["matters"], entry["mend"]):
         assert text.rstrip().endswith((".", '."', ".)"))
@@ -61,7 +61,7 @@ def test_an_example_differs_where_it_is_mended_and_is_narrow_enough_for_a_termin
     assert page.bad != page.mended
     for shown in (page.bad, page.mended):
         for name, text in shown.items():
-            assert re.fullmatch(r"[a-z0-9./-]+\.(csv|tsv|toml)", name)
+            assert re.fullmatch(r"[a-z0-9./-]+\.(csv|tsv|toml)|day\.xlsx, sheet '[a-z]+'( \(hidden\))?", name)
             assert all(len(line.expandtabs(4)) <= WIDEST for line in text.splitlines()), name
             assert text.isascii()
 

@@ -33,7 +33,7 @@ def show_page(page: Page, console: Console) -> None:
     ):
         console.print()
         _paragraph(head, without_links(text), console)
-    told = f", as coulombook tally DAY {' '.join(page.options)} reads it" if page.options else ""
+    told = "" if page.command == "tally DAY" else f", told of by coulombook {page.command}"
     _example(f"Bad{told}", page.bad, page.mended, console)
     _example("Mended", page.mended, page.bad, console)
     if page.beside:
@@ -80,6 +80,8 @@ def _example(title: str, files: Mapping[str, str], others: Mapping[str, str], co
     for name, text in files.items():
         console.print(Text(f"  {name}", style="bold"), soft_wrap=True)
         known = others.get(name, "").splitlines()
+        if not text:
+            console.print(Text("    (not there)"))
         for line in text.splitlines():
             mark = " " if line in known or not line else _MARK
             # rows are not wrapped: they are to be read, and copied, as they stand in the file
