@@ -116,7 +116,7 @@ def _closure(book: Book) -> Iterator[_Part]:
 
 
 def _budget(book: Book) -> Iterator[_Part]:
-    if TOTAL in outputs_of(book.tables["budget"]):
+    if "budget" in book.tables and TOTAL in outputs_of(book.tables["budget"]):
         table = data.budget(book)
         text = "Share of each source in the variance of the total Faradaic efficiency, mean over the runs."
         yield (), "Uncertainty of the total by source", text, table, _of_table(table)

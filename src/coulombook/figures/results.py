@@ -119,14 +119,16 @@ def _efficiencies(ax: Axes, rows: Sequence[Row], own: bool) -> None:
         if row["what"] == data.PRODUCT:
             stacked.setdefault(str(row["product"]), []).append(row)
     for name, members in stacked.items():
-        style, bars = style_of_product(name), None
-        for row in members:
-            place, value = places[row["level"]], number(row["FE / %"]) or 0.0
-            held = above if value >= 0.0 else below
-            bars = ax.bar(place, value, _BAR, bottom=held[place], color=style.colour, hatch=style.hatch,
-                          edgecolor=BLACK, linewidth=0.4)  # fmt: skip
-            bars.patches[0].set_gid(str(row[MARK]))
-            held[place] += value
+        style = style_of_product(name)
+        at, heights = [places[row["level"]] for row in members], _column(members, "FE / %")
+        stacks = [above if height >= 0.0 else below for height in heights]
+        bars = ax.bar(
+            at, heights, _BAR, bottom=[stack[place] for stack, place in zip(stacks, at, strict=True)],
+            color=style.colour, hatch=style.hatch, edgecolor=BLACK, linewidth=0.4,
+        )  # fmt: skip
+        for patch, stack, place, height, row in zip(bars.patches, stacks, at, heights, members, strict=True):
+            patch.set_gid(str(row[MARK]))
+            stack[place] += height
         handles.append(bars)
         names.append(name)
     total = None
@@ -209,19 +211,23 @@ def _selectivities(ax: Axes, rows: Sequence[Row], own: bool) -> None:
 
 
 def _closures(ax: Axes, rows: Sequence[Row], own: bool) -> None:
-    seen: dict[str, Any] = {}
-    for place, row in enumerate(rows):
-        total, high = number(row["total FE / %"]) or 0.0, number(row["high / %"]) or 0.0
-        colour, marker = _VERDICTS.get(str(row["closure"]), (GREY, "s"))
-        _errors(ax, [place], [total], [max(high - total, 0.0)], colour=colour)
-        point = _point(ax, place, total, str(row[MARK]), colour, marker)
-        seen.setdefault(str(row["closure"]), point)
+    handles: dict[str, Any] = {}
+    verdicts = {str(row["closure"]) for row in rows}
+    for verdict in sorted(
+        verdicts, key=lambda one: (one not in _VERDICTS, [*_VERDICTS, one].index(one), one)
+    ):
+        colour, marker = _VERDICTS.get(verdict, (GREY, "s"))
+        held = [(place, row) for place, row in enumerate(rows) if row["closure"] == verdict]
+        total, high = (_column([row for _, row in held], head) for head in ("total FE / %", "high / %"))
+        at = [place for place, _ in held]
+        _errors(ax, at, total, [max(b - a, 0.0) for a, b in zip(total, high, strict=True)], colour=colour)
+        for (place, row), value in zip(held, total, strict=True):
+            handles[verdict] = _point(ax, place, value, str(row[MARK]), colour, marker)
     ax.axhline(100.0, color=BLACK, lw=0.6, ls=(0, (4, 3)), zorder=0)
     name_ticks(ax, [shown(row["run"], 16) for row in rows], own=own)
     ax.set_xlabel("run")
     ax.set_ylabel("total FE / %")
-    order = [one for one in _VERDICTS if one in seen] + [one for one in seen if one not in _VERDICTS]
-    legend(ax, [seen[one] for one in order], order, own=own)
+    legend(ax, list(handles.values()), list(handles), own=own)
 
 
 def _shares(ax: Axes, rows: Sequence[Row], own: bool) -> None:
