@@ -33,7 +33,7 @@ HEADS = ("date", "version", "room", "mutants", "tried", "killed", "score / %", "
 # the tests that answer for a room, quick ones first: the first that fails ends the trial
 TESTS = {
     "uncertainty": "tests/unit/uncertainty tests/published/test_propagation.py tests/published/test_reconciliation.py "
-    "tests/system/test_miniature_day.py tests/system/test_miniature_judgements.py",
+    "tests/system/test_miniature_day.py tests/system/test_miniature_judgements.py tests/system/test_draws_agree.py",
     "curves": "tests/unit/curves tests/published/test_calibration_textbook.py tests/published/test_errors_in_both.py "
     "tests/published/test_inverse_of_a_line.py tests/published/test_limits_of_a_line.py "
     "tests/published/test_linearity.py tests/published/test_nist_strd.py tests/published/test_nmr.py "
@@ -137,7 +137,15 @@ def _keep_sample(session: Path, sample: int, seed: int) -> int:
         # the names of jobs are drawn anew each time; their places are not
         ordered = "module_path, start_pos_row, start_pos_col, operator_name, occurrence"
         jobs = [job for (job,) in connection.execute(f"SELECT job_id FROM mutation_specs ORDER BY {ordered}")]
-        dropped = set(jobs) - set(random.Random(seed).sample(jobs, min(sample, len(jobs))))
+        # a bar between types is gone when the code runs (annotations are not evaluated), and changes nothing
+        idle = {
+            job
+            for (job,) in connection.execute(
+                "SELECT job_id FROM mutation_specs WHERE operator_name LIKE '%BitOr_%'"
+            )
+        }
+        jobs = [job for job in jobs if job not in idle]
+        dropped = idle | set(jobs) - set(random.Random(seed).sample(jobs, min(sample, len(jobs))))
         for table in ("mutation_specs", "work_items"):
             connection.executemany(f"DELETE FROM {table} WHERE job_id = ?", [(job,) for job in dropped])
     return len(jobs)
