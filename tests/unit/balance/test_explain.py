@@ -6,9 +6,12 @@ import math
 
 import numpy as np
 import pytest
+from scipy.sparse import csr_array, diags_array, hstack
+from scipy.stats import multivariate_normal
 
 from coulombook.balance.causes import Cause
-from coulombook.balance.explain import Explanation, _of_the_quantity, rank
+from coulombook.balance.explain import _SCATTERS, PRIOR_SD, Explanation, _of_the_quantity, rank
+from coulombook.uncertainty.shared import SharedCovariance
 
 GAS = np.array([0.7, 0.6, 0.8, 0.5, 0.0, 0.0])
 LIQUID = np.array([0.2, 0.3, 0.1, 0.4, 0.9, 0.9])
@@ -82,3 +85,90 @@ def test_an_error_that_no_quantity_could_have_has_no_size() -> None:
     found = _of_the_quantity(explanation("curve", 1.2, "acetate"))
     assert math.isnan(found.estimate)
     assert math.isnan(found.u)
+
+
+def long_day(runs: int) -> tuple[csr_array, list[Cause], np.ndarray]:
+    """Derivatives of the totals by their errors, causes and residuals of a day: checks that ten runs share, a flow."""
+    generator = np.random.default_rng(runs)
+    gas = generator.uniform(0.4, 0.8, runs)
+    checks = np.repeat(np.eye(-(-runs // 10)), 10, axis=0)[:runs] * 0.01 * gas[:, None]
+    jacobian = hstack(
+        [csr_array(checks), csr_array(0.01 * gas[:, None]), diags_array(np.full(runs, 0.01))]
+    ).tocsr()
+    one_run = []
+    for run in range(runs):
+        pattern = np.zeros(runs)
+        pattern[run] = -gas[run]
+        one_run.append(cause("gas-lost", pattern, f"r{run}", only_positive=True))
+    growing = np.column_stack([np.ones(runs), np.linspace(-0.5, 0.5, runs)])
+    causes = [
+        cause("outlet-flow", gas),
+        cause("internal-standard", 1.0 - gas),
+        *one_run,
+        Cause("unmeasured-product", "growing with potential", -growing, True, "look for it"),
+    ]
+    residual = 0.05 * gas + 0.01 * generator.standard_normal(runs)
+    residual[runs // 2] -= 0.1
+    return jacobian, causes, residual
+
+
+@pytest.mark.parametrize("runs", [1, 7, 64, 65, 150])
+def test_few_shared_errors_give_what_the_full_covariance_gives(runs: int) -> None:
+    jacobian, causes, residual = long_day(runs)
+    full = rank(residual, (jacobian @ jacobian.T).toarray(), causes)
+    found = rank(residual, SharedCovariance.of_errors(jacobian, np.zeros(runs)), causes)
+    assert [(one.cause, one.where, one.apart) for one in found.ranked] == [
+        (one.cause, one.where, one.apart) for one in full.ranked
+    ]
+    assert (found.closes, found.scatter) == (full.closes, full.scatter)
+    for one, other in zip(found.ranked, full.ranked, strict=True):
+        assert (one.estimate, one.u, one.evidence) == pytest.approx(
+            (other.estimate, other.u, other.evidence), rel=1e-9, abs=1e-12
+        )
+
+
+def test_evidence_is_the_ratio_of_the_normal_densities_with_and_without_the_cause() -> None:
+    """Marginal likelihoods by scipy, each at its best scatter: an error of a cause adds its prior to the covariance."""
+    jacobian, causes, residual = long_day(30)
+    v = (jacobian @ jacobian.T).toarray()
+
+    def density(prior: np.ndarray) -> float:
+        return max(
+            multivariate_normal.logpdf(residual, np.zeros(30), v + prior + scatter**2 * np.eye(30))
+            for scatter in _SCATTERS
+        )
+
+    free = [one for one in causes if not one.only_positive]
+    found = {one.cause: one.evidence for one in rank(residual, v, free).ranked}
+    for one in free:
+        expected = 2.0 * (density(PRIOR_SD**2 * one.pattern @ one.pattern.T) - density(np.zeros((30, 30))))
+        assert found[one.kind] == pytest.approx(expected, rel=1e-9, abs=1e-9)
+
+
+def test_estimate_is_that_of_generalised_least_squares() -> None:
+    jacobian, causes, residual = long_day(30)
+    v = (jacobian @ jacobian.T).toarray()
+    flow = causes[0]
+    found = next(one for one in rank(residual, v, [flow]).ranked if one.cause == "outlet-flow")
+    fits = []
+    for scatter in _SCATTERS:
+        weights = np.linalg.inv(v + scatter**2 * np.eye(30))
+        d = flow.pattern[:, 0]
+        theta, u = d @ weights @ residual / (d @ weights @ d), (d @ weights @ d) ** -0.5
+        left = residual - theta * d
+        fits.append((left @ weights @ left - np.linalg.slogdet(weights)[1], theta, u))
+    _, theta, u = min(fits)
+    assert (found.estimate, found.u) == pytest.approx((theta, u), rel=1e-9)
+
+
+def test_causes_of_one_run_alone_are_never_told_apart_from_each_other() -> None:
+    pattern = np.eye(6)[2]
+    causes = [
+        cause("gas-lost", -GAS[2] * pattern, "r2", only_positive=True),
+        cause("crossover", -pattern, "r2", only_positive=True),
+        cause("gas-lost", -GAS[3] * np.eye(6)[3], "r3", only_positive=True),
+    ]
+    first, second = rank(-0.2 * pattern, V, causes).ranked[:2]
+    assert {first.cause, second.cause} == {"gas-lost", "crossover"}
+    assert first.apart[0].startswith(second.cause)
+    assert second.apart[0].startswith(first.cause)
