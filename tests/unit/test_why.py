@@ -43,7 +43,9 @@ def test_every_kind_that_the_program_tells_of_is_in_the_list_and_every_one_in_th
 
 @pytest.mark.parametrize("kind", KINDS)
 def test_a_page_holds_what_it_should_and_nothing_else(kind: str) -> None:
-    entry = tomllib.loads(PLACE.joinpath(f"{kind}.toml").read_text(encoding="utf-8"))
+    text = PLACE.joinpath(f"{kind}.toml").read_text(encoding="utf-8")
+    assert all(len(line) <= 120 for line in text.splitlines())
+    entry = tomllib.loads(text)
     assert set(entry) >= KEYS
     assert set(entry) - KEYS <= {"command", "beside"}
     assert set(entry.get("beside", ())) <= set(KINDS) - {kind}
