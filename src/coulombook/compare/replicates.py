@@ -20,6 +20,7 @@ from coulombook.uncertainty.linearised import (
     FloatArray,
     IntArray,
     Linearised,
+    Number,
     gather,
     linear_map,
     nominal,
@@ -29,6 +30,9 @@ from coulombook.uncertainty.scatter import pool
 
 if TYPE_CHECKING:
     from scipy.sparse import csr_array
+
+
+_LIKE = 2.0  # replicates further apart than this factor are not alike in anything
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -103,7 +107,7 @@ def pool_series(
         np.array([owners.index(point.catalyst) for point in points], dtype=np.intp),
         nominal(pooled.mean),
         pooled.deviation**2,
-        pooled.explained,
+        _explained(values, nominal(pooled.mean), group),
         pooled.count - 1,
         _counting(points, electrode),
     )
@@ -125,6 +129,20 @@ def pool_series(
         repeats,
         scatter,
     )
+
+
+def _explained(values: Number, mean: FloatArray, group: IntArray) -> FloatArray:
+    """Variance of a run that its uncertainty explains, (n_points,), with the errors of runs of that mean.
+
+    An error that all runs share in proportion to their values moves unequal runs unequally, and would seem to explain a
+    part of what sets them apart; runs that gave the mean it moves alike.
+    """
+    value = nominal(values)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        factor = mean[group] / value
+    # near zero an error is no share of the value
+    factor = np.where((factor > 1.0 / _LIKE) & (factor < _LIKE), factor, 1.0)
+    return pool(values * factor, group, len(mean)).explained
 
 
 def _counting(points: Sequence[Point], electrode: Sequence[Hashable]) -> FloatArray:

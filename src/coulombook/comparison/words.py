@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from itertools import groupby
 
 from coulombook.comparison.judge import LEVEL, POTENTIAL, Judged, Verdicts
 from coulombook.comparison.quantities import GEOMETRIC
@@ -43,10 +42,12 @@ def _of_quantity(one: Verdicts) -> str:
         any(judged.ranking.steps) or judged.ranking.beyond for judged in points
     ):
         return f"The data cannot tell the catalysts apart by {name} at any {_points(points)}."
+    places: dict[tuple[str, ...], list[str]] = {}
+    for judged in points:
+        places.setdefault(judged.ranking.leaders, []).append(_name(judged))
     parts = []
-    for leading, group in groupby(points, key=lambda judged: judged.ranking.leaders):
-        same = list(group)
-        where = _listed([_name(judged) for judged in same])
+    for leading, names in places.items():
+        where = _listed(names)
         if len(leading) == 1:
             parts.append(f"{leading[0]} has the {word} at {where}")
         else:
@@ -64,7 +65,7 @@ def _how_much(leader: str, points: Sequence[Judged]) -> str:
                 found.append(pair.ratio if pair.one == leader else 1.0 / pair.ratio)
     if len(found) < len(points):
         return ""
-    low, high = f"{min(found):.2g}", f"{max(found):.2g}"
+    low, high = f"{min(found):.3g}", f"{max(found):.3g}"
     return f", {low if low == high else f'{low} to {high}'} times that of the next"
 
 

@@ -78,7 +78,8 @@ def test_nothing_is_said_where_nothing_varies() -> None:
 
 
 def test_the_interval_is_fishers_with_the_variance_of_bonett_and_wright() -> None:
-    # rho 0.5, n 28: z = atanh 0.5 = 0.549306, u = sqrt(1.125/25) = 0.212132, z -+ 1.959964 u = 0.133535 and 0.965077; (e^2z - 1)/(e^2z + 1)
+    # rho 0.5, n 28: z = atanh 0.5 = 0.549306, u = sqrt(1.125/25) = 0.212132, z -+ 1.959964 u = 0.133535 and 0.965077,
+    # and of these the hyperbolic tangent
     assert interval(0.5, 28, 0.95) == pytest.approx((0.132747, 0.746533), abs=1e-6)
     assert all(np.isnan(interval(0.5, 4, 0.95)))
 
