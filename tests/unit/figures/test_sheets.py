@@ -49,8 +49,10 @@ def texts(sheet: Figure) -> list[Text]:
     return [one for one in found if one.get_text() and one.get_visible() and id(one) not in beyond]
 
 
-@pytest.mark.parametrize("width_mm", [85.0, 178.0])
-@pytest.mark.parametrize("name", ODD)
+@pytest.mark.parametrize(
+    ("name", "width_mm"),
+    [*((name, 85.0) for name in ODD), *((name, 178.0) for name in ("usual", "long names", "hostile"))],
+)
 def test_no_label_is_cut_or_covered_and_no_legend_lies_on_data(name: str, width_mm: float) -> None:
     drawings = drawings_of(ODD[name])
     assert len(drawings) > 2
