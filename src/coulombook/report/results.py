@@ -145,7 +145,10 @@ def _documents(book: Book) -> dict[str, bytes]:
     """What people open, by file name; a book that has lost what it was computed from has none."""
     if book.settled is None:
         return {}
-    return {}
+    from coulombook.report.workbook import NAME as WORKBOOK
+    from coulombook.report.workbook import workbook_bytes
+
+    return {WORKBOOK: workbook_bytes(book)}
 
 
 def findings_table(book: Book) -> Table:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 from coulombook.book import Cell
@@ -19,13 +19,17 @@ class Series:
     """One product in one chart: cells of its name, of the potentials and of its values, as formulas name them."""
 
     product: str
+    name: str
     potentials: str
     heights: str
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Chart:
-    """One chart of one catalyst; ``stacked`` columns, or lines on a logarithmic axis."""
+    """One chart of one catalyst, whose name stands in the cell ``title``.
+
+    FE as ``stacked`` columns, or partial current densities as lines on a logarithmic axis.
+    """
 
     title: str
     stacked: bool
@@ -81,39 +85,36 @@ def chart_data(account: Account, series: Sheet) -> tuple[Sheet, list[Chart]]:
                 "of the series",
                 u=[None if row is None else columns[_DRAWN[head]][row] for row in shown],
             )
-    return sheet, _charts(sheet, [catalyst for catalyst, _ in keys], products)
+    # a name given as a cell and not as text: text of the files must not be taken for a formula
+    names = {
+        product: f"={series.quoted}!${series.letters['product']}${FIRST_ROW + columns['product'].index(product)}"
+        for product in products
+    }
+    return sheet, _charts(sheet, [catalyst for catalyst, _ in keys], names)
 
 
 def _drawn(value: Cell, head: str) -> bool:
     return head == _FE or (isinstance(value, float) and value > 0.0)
 
 
-def _charts(sheet: Sheet, catalysts: Sequence[str], products: Sequence[str]) -> list[Chart]:
+def _charts(sheet: Sheet, catalysts: Sequence[str], names: Mapping[str, str]) -> list[Chart]:
     charts = []
     for catalyst in list(dict.fromkeys(catalysts))[:MOST_CATALYSTS]:
         held = [row for row, name in enumerate(catalysts) if name == catalyst]
         first, stop = held[0], held[-1] + 1
-        for head, stacked, what in (
-            (_FE, True, "Faradaic efficiency"),
-            (_J, False, "partial current density, geometric area"),
-        ):
-            charts.append(
-                Chart(
-                    f"{catalyst}: {what}",
-                    stacked,
-                    tuple(
-                        Series(
-                            product,
-                            _absolute(sheet, "E vs RHE / V", first, stop),
-                            _absolute(sheet, f"{product}: {head}", first, stop),
-                        )
-                        for product in products
-                        if any(
-                            value is not None for value in _values(sheet, f"{product}: {head}")[first:stop]
-                        )
-                    ),
+        for head in _DRAWN:
+            series = tuple(
+                Series(
+                    product,
+                    name,
+                    _absolute(sheet, "E vs RHE / V", first, stop),
+                    _absolute(sheet, f"{product}: {head}", first, stop),
                 )
+                for product, name in names.items()
+                if any(value is not None for value in _values(sheet, f"{product}: {head}")[first:stop])
             )
+            if series:  # where nothing is above zero a logarithmic axis has nothing to show
+                charts.append(Chart(_absolute(sheet, "catalyst", first, first + 1), head == _FE, series))
     return charts
 
 
@@ -123,4 +124,5 @@ def _values(sheet: Sheet, head: str) -> Sequence[Cell]:
 
 def _absolute(sheet: Sheet, head: str, first: int, stop: int) -> str:
     letter = sheet.letters[head]
-    return f"={sheet.quoted}!${letter}${FIRST_ROW + first}:${letter}${FIRST_ROW + stop - 1}"
+    cell = f"={sheet.quoted}!${letter}${FIRST_ROW + first}"
+    return cell if stop - first == 1 else f"{cell}:${letter}${FIRST_ROW + stop - 1}"

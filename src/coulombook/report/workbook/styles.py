@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
 from coulombook.report.workbook.cells import Kind
+from coulombook.report.workbook.digits import GENERAL
 
 if TYPE_CHECKING:
     from xlsxwriter import Workbook
@@ -29,7 +30,7 @@ LOOKS: Mapping[str, Mapping[str, Any]] = {
     "code": {"font_name": "Consolas", "font_size": 8, "font_color": _SOFT},
 }  # fmt: skip
 _KINDS: Mapping[Kind, Mapping[str, Any]] = {
-    Kind.TEXT: {"align": "left", "indent": 1},
+    Kind.TEXT: {"align": "left", "indent": 1},  # numbers as well: they are labels
     Kind.ENTERED: {"bg_color": "#FFF6D6", "border": _THIN, "border_color": "#B99A3C"},
     Kind.COMPUTED: {"italic": True, "font_color": "#5A3E78", "bg_color": "#F3F0F7"},
     Kind.FORMULA: {},
@@ -42,24 +43,24 @@ class Styles:
 
     def __init__(self, workbook: Workbook) -> None:
         self._workbook = workbook
-        self._made: dict[tuple[object, str, bool], Format] = {}
+        self._made: dict[tuple[object, object], Format] = {}
 
     def look(self, name: str) -> Format:
         """One of `LOOKS`."""
-        return self._of((name, "", False), LOOKS[name])
+        return self._of(("look", name), LOOKS[name])
 
-    def cell(self, kind: Kind, number_format: str = "", wrapped: bool = False) -> Format:
-        """A cell of a kind with a number format."""
-        key = kind, number_format, wrapped
-        made = self._made.get(key)
-        if made is None:
-            extra: dict[str, Any] = {"num_format": number_format} if number_format else {}
-            if wrapped:
-                extra["text_wrap"] = True
-            made = self._of(key, {**_KINDS[kind], **extra})
-        return made
+    def cell(self, kind: Kind, number_format: str = "") -> Format:
+        """A number of a kind, with its number format."""
+        made = self._made.get((kind, number_format))
+        return made or self._of(
+            (kind, number_format), {**_KINDS[kind], "num_format": number_format or GENERAL}
+        )
 
-    def _of(self, key: tuple[object, str, bool], look: Mapping[str, Any]) -> Format:
+    def words(self, kind: Kind, wrapped: bool = False) -> Format:
+        """Text of a kind."""
+        return self._of((kind, wrapped), {**_KINDS[kind], "align": "left", "indent": 1, "text_wrap": wrapped})
+
+    def _of(self, key: tuple[object, object], look: Mapping[str, Any]) -> Format:
         made = self._made.get(key)
         if made is None:
             made = self._made[key] = self._workbook.add_format({**_BASE, **look})

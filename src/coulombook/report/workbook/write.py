@@ -30,7 +30,7 @@ _LONGEST_WRAPPED = 2_000  # of text that makes its row higher
 _NARROWEST, _WIDEST, _WRAPPED = 10.5, 44.0, 60.0
 _SAID = 110.0  # width of what the sheet "about" says
 _LINE, _SMALL_LINE, _HIGHEST = 13.5, 11.0, 400.0  # heights of lines, and of the highest row there can be
-_SHORT_HEAD = 12  # characters of a head that stands in one line
+_SHORT_HEAD = 14  # characters of a head that stands in one line
 _PER_CHARACTER, _PER_SMALL_CHARACTER = 1.0, 0.75  # widths, of the sheet's unit of width
 _AS_TYPED = frozenset({Kind.ENTERED, Kind.TEXT})
 _LOOKED_AT = 400  # records that decide how wide a column of text is
@@ -85,7 +85,7 @@ def _write(page: Worksheet, sheet: Sheet, styles: Styles) -> None:
     page.write_string(0, 0, sheet.title, styles.look("title"))
     page.write_string(1, 0, sheet.about, styles.look("about"))
     for place, kind in enumerate((Kind.ENTERED, Kind.FORMULA, Kind.COMPUTED)):
-        page.write_string(2, place, kind.value.partition(":")[0], styles.cell(kind))
+        page.write_string(2, place, kind.value.partition(":")[0], styles.words(kind))
     page.write_url(2, 3, "internal:about!A1", styles.look("link"), "what this means")
     widths = [_width(column) for column in sheet.columns]
     page.set_row(2, 18)
@@ -127,7 +127,7 @@ def _write_column(page: Worksheet, place: int, column: Column, styles: Styles) -
         if kind is Kind.FORMULA and formula is None:
             kind = Kind.COMPUTED
         if isinstance(value, str):
-            style = styles.cell(kind, "", column.wide)
+            style = styles.words(kind, column.wide)
             if formula is not None:
                 page.write_formula(row, place, formula, style, value)
             else:
@@ -217,7 +217,7 @@ def name_of(sheet: str, head: str) -> str:
     >>> name_of("ledger", "u(FE) / %"), name_of("summary", "C2+/C1"), name_of("chart data", "E vs RHE / V")
     ('ledger_u_FE', 'summary_C2plus_C1', 'chart_data_E_vs_RHE')
     """
-    quantity = head.partition(" / ")[0] if not head.endswith("%") or " / " in head else head
+    quantity = head.partition(" / ")[0]
     text = f"{sheet}_{quantity}".replace("C2+", "C2plus")
     return re.sub(r"[^A-Za-z0-9]+", "_", text)[:200].strip("_")
 
@@ -251,7 +251,7 @@ def _drawn(workbook: Workbook, chart: Chart) -> object:
         style = style_of_product(one.product)
         drawn.add_series(
             {
-                "name": shown(one.product, 60),
+                "name": one.name,
                 "categories": one.potentials,
                 "values": one.heights,
                 **(_filled(style) if chart.stacked else _lined(style, number)),
@@ -279,7 +279,8 @@ def _drawn(workbook: Workbook, chart: Chart) -> object:
                 "major_gridlines": {"visible": True, "line": {"color": "#D5DCE0"}},
             }
         )
-    drawn.set_title({"name": shown(chart.title, 80), "name_font": {"size": 12}, "overlay": False})
+    # names are given as cells: as text they would be taken for formulas if they look like one
+    drawn.set_title({"name": chart.title, "name_font": {"size": 12}, "overlay": False})
     drawn.set_legend({"position": "right", "font": {"size": 9}})
     drawn.set_size({"width": 680, "height": 450})
     return drawn
@@ -329,7 +330,7 @@ def _write_about(workbook: Workbook, lines: Iterable[Said], styles: Styles) -> N
                 page.write_blank(row, 1, None, styles.look("section"))
             case Line.STYLE:
                 assert said.kind is not None
-                page.write_string(row, 0, first, styles.cell(said.kind))
+                page.write_string(row, 0, first, styles.words(said.kind))
                 page.write_string(row, 1, second, styles.look("plain"))
             case Line.SHEET:
                 page.write_url(row, 0, f"internal:'{first}'!A1", styles.look("link"), first)
