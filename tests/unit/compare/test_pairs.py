@@ -96,7 +96,7 @@ def test_a_family_is_judged_together_over_all_its_points() -> None:
 
 
 @dataclass(frozen=True)
-class _World:
+class World:
     """How days are drawn: true means by catalyst and level, replicates, and errors relative to the value."""
 
     means: tuple[float, ...]
@@ -152,7 +152,7 @@ class _World:
 def test_six_equal_catalysts_are_rarely_told_apart_and_their_intervals_cover(
     levels: int, replicates: int, undeclared: float
 ) -> None:
-    world = _World((0.5,) * 6, levels, replicates, 0.01, 0.03, (undeclared,) * 6)
+    world = World((0.5,) * 6, levels, replicates, 0.01, 0.03, (undeclared,) * 6)
     covered = ratios = pairs = false = 0
     days = 150
     for contests in world.days(days, seed=7):
@@ -171,7 +171,7 @@ def test_six_equal_catalysts_are_rarely_told_apart_and_their_intervals_cover(
 
 
 def test_one_catalyst_that_scatters_ten_times_more_does_not_make_the_others_look_different() -> None:
-    world = _World((0.5,) * 6, 3, 3, 0.01, 0.03, (0.01,) * 5 + (0.1,))
+    world = World((0.5,) * 6, 3, 3, 0.01, 0.03, (0.01,) * 5 + (0.1,))
     covered = pairs = false = 0
     for contests in world.days(150, seed=3):
         for pair in (pair for found in contests for pair in found.pairs):
@@ -187,7 +187,7 @@ def test_one_catalyst_that_scatters_ten_times_more_does_not_make_the_others_look
 def test_intervals_of_different_catalysts_hold_the_true_difference_and_ratio(
     undeclared: float, shared: float
 ) -> None:
-    world = _World((0.6, 0.5, 0.3, 0.1), 3, 3, 0.01, shared, (undeclared,) * 4)
+    world = World((0.6, 0.5, 0.3, 0.1), 3, 3, 0.01, shared, (undeclared,) * 4)
     covered = ratios = pairs = 0
     for contests in world.days(200, seed=5):
         for level, found in enumerate(contests):
