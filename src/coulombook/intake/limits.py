@@ -42,6 +42,8 @@ LARGEST_SIDE_PART_BYTE = (
 MOST_TAGS = (
     8_000_000  # four to a cell: two million cells, some ten seconds and a gigabyte while they are read
 )
+MOST_SIDE_TAGS = 500_000  # a workbook with every one of its 65,490 cell formats in use has half of it
+LONGEST_PROLOGUE_BYTE = 1_000_000  # comments above the XML of a part; spreadsheet programs write none
 MOST_ROW_TAGS = (
     131_072  # eight to a cell of the widest row there is (16,384 cells), for a row is read as a whole
 )
