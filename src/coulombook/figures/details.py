@@ -24,7 +24,7 @@ MEASURED, FITTED = "measured", "fitted"
 STANDARD, OUTLYING, CURVE, LIMIT = "standard", "outlying standard", "curve", "limit"
 
 _MILLI = 1e3
-_POINTS = 100  # of a fitted line that is no straight one
+_POINTS = 200  # of a fitted line that is no straight one
 
 
 def settled_of(book: Book) -> Settled:
