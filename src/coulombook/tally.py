@@ -47,6 +47,8 @@ from coulombook.book.judgements import (
     interval_rows,
     reconciliation_rows,
 )
+from coulombook.book.kinetics import kinetics_rows
+from coulombook.book.stability import stability_rows
 from coulombook.cell.capacitance import ScanError
 from coulombook.cell.impedance import ImpedanceError, fit_circuit
 from coulombook.cell.kramers_kronig import kramers_kronig
@@ -141,6 +143,8 @@ def _judge(
         "explanations": explanation_rows(explain(settled)),
         "carbon": carbon_rows(settled, account),
         "efficiencies": efficiency_rows(settled, product_efficiencies(settled)),
+        "kinetics": kinetics_rows(settled, findings),
+        "stability": stability_rows(settled, findings),
         "cautions": caution_rows(settled),
     }
     if draws:

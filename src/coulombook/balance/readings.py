@@ -97,6 +97,7 @@ class DaySettings:
     smooth_reference: str | None = None
     level_of_confidence: float = 0.95
     unaccounted: float | None = None  # prior standard deviation of a share that nothing measures, a fraction
+    onset_current_density_ampere_per_m2: float = 1.0
     declared: tuple[Declared, ...] = ()
 
 

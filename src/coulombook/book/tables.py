@@ -81,6 +81,16 @@ CAUTIONS = (
     "substance", "highest / ppm", "run", "injection", "lower flammable limit / %", "of flammable limit / %",
     "exposure limit / ppm", "times exposure limit", "ceiling / ppm", "dangerous / ppm",
 )  # fmt: skip
+KINETICS = (
+    "catalyst", "product", "basis", "runs", "levels", "straight levels", "range", "from E vs RHE / V",
+    "to E vs RHE / V", "Tafel slope / mV", "u(Tafel slope) / mV", "Tafel slope low / mV", "Tafel slope high / mV",
+    "p of bend", "verdict", "onset j / mA cm^-2", "E onset vs RHE / V", "u(E onset) / V", "onset",
+)  # fmt: skip
+STABILITY = (
+    "run", "product", "quantity", "injections", "span / h", "charge / C", "start", "mean", "u(mean)", "drift / h^-1",
+    "u(drift) / h^-1", "drift low / h^-1", "drift high / h^-1", "p", "time to 80 % / h", "earliest / h", "latest / h",
+    "verdict",
+)  # fmt: skip
 FINDINGS = ("severity", "kind", "where", "text", "mend")
 
 TABLES: Mapping[str, tuple[str, ...]] = {
@@ -99,6 +109,8 @@ TABLES: Mapping[str, tuple[str, ...]] = {
     "carbon": CARBON,
     "efficiencies": EFFICIENCIES,
     "cautions": CAUTIONS,
+    "kinetics": KINETICS,
+    "stability": STABILITY,
     "findings": FINDINGS,
 }
 
