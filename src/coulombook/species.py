@@ -204,6 +204,13 @@ def _data() -> dict[str, Any]:
     return tomllib.loads(files("coulombook").joinpath("data", "species.toml").read_text(encoding="utf-8"))
 
 
+def group_rank(group: str) -> tuple[int, str]:
+    """Order of carbon groups: H2 before C1, C2 before C10, what has no group last."""
+    if group == "H2":
+        return 0, ""
+    return (int(group[1:]), "") if group[:1] == "C" and group[1:].isdecimal() else (10**6, group)
+
+
 @cache
 def load_species() -> SpeciesTable:
     """The shipped table of species.

@@ -106,13 +106,6 @@ def _told(catalyst: str, level: str, rows: list[dict[str, Cell]]) -> Level:
     )
 
 
-def group_rank(group: str) -> tuple[int, str]:
-    """Order of carbon groups: H2 before C1, C2 before C10, what has no group last."""
-    if group == "H2":
-        return 0, ""
-    return (int(group[1:]), "") if group[:1] == "C" and group[1:].isdecimal() else (10**6, group)
-
-
 def _number(cell: Cell) -> float | None:
     return None if cell is None or isinstance(cell, str) else float(cell)
 

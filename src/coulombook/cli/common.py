@@ -69,7 +69,7 @@ def tell_findings(findings: Iterable[Finding], *, warnings_too: bool = False) ->
 
 def refuse(problem: str) -> int:
     """Say why the call cannot be served; the status to end with."""
-    from coulombook.report.text import visible
+    from coulombook.prose.text import visible
 
     say(f"coulombook: {visible(problem, 1000)}")
     return WRONG_CALL

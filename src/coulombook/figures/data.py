@@ -11,10 +11,11 @@ from collections.abc import Iterable, Mapping
 from statistics import NormalDist
 from typing import Literal
 
-from coulombook.book.levels import Level, group_rank, levels_of
+from coulombook.book.levels import Level, levels_of
 from coulombook.book.shares import TOTAL, largest, outputs_of, runs_of, source_shares
 from coulombook.book.tables import Book, Cell, Table
 from coulombook.figures.marks import mark_id
+from coulombook.species import group_rank
 
 Basis = Literal["geometric", "real"]
 

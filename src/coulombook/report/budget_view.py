@@ -9,9 +9,9 @@ from rich.console import Console
 from rich.text import Text
 
 from coulombook.book.shares import SourceShare, largest
-from coulombook.report.numbers import fixed, plain
+from coulombook.prose.numbers import fixed, plain
+from coulombook.prose.text import crop, visible
 from coulombook.report.terminal import hanging
-from coulombook.report.text import crop, visible
 
 LONGEST_SOURCE = 32
 LONGEST_BAR = 30

@@ -8,11 +8,11 @@ from rich.text import Text
 
 from coulombook.curves.control import ACTION, ACTION_LIMIT, IN_CONTROL, WARNING, WARNING_LIMIT
 from coulombook.library.checks import ChartedChecks
+from coulombook.prose.numbers import ABSENT, brief, fixed, plain
+from coulombook.prose.text import visible
 from coulombook.report.curve_plot import BOXES, PLAIN, Axis, Canvas
 from coulombook.report.grid import Column, grid
-from coulombook.report.numbers import ABSENT, brief, fixed, plain
 from coulombook.report.terminal import hanging
-from coulombook.report.text import visible
 
 ROWS = 13  # an odd number has a middle row
 _SIGN = {IN_CONTROL: ("o", "bold"), WARNING: ("!", "bold yellow"), ACTION: ("X", "bold red")}

@@ -1,7 +1,7 @@
 """A comparison on the terminal: the verdict first, then who has what at which potential, then by how much.
 
 Catalysts are called by letters in the tables, so that six of them fit 80 columns. Text from the bench's files goes
-through `report.text`.
+through `prose.text`.
 """
 
 from __future__ import annotations
@@ -20,10 +20,10 @@ from coulombook.comparison.order import Comparison
 from coulombook.comparison.quantities import GEOMETRIC, REAL
 from coulombook.comparison.runs import Contender
 from coulombook.comparison.tables import TOO_FEW, conclusion, ranking_text
+from coulombook.prose.numbers import ABSENT, between, fixed, plain, with_uncertainty
+from coulombook.prose.text import crop, visible
 from coulombook.report.grid import GAP, Column, grid
-from coulombook.report.numbers import ABSENT, between, fixed, plain, with_uncertainty
 from coulombook.report.terminal import CAUTIONS, hanging, show_findings
-from coulombook.report.text import crop, visible
 
 LONGEST_NAME = 30
 LONGEST_LEVEL = 12

@@ -20,12 +20,12 @@ from coulombook.library.answer import Answer
 from coulombook.library.history import Comparison
 from coulombook.library.picture import axis_heads, picture, reading_scatter
 from coulombook.library.shelf import Entry, Library, Validity, Verdict, validity
+from coulombook.prose.numbers import ABSENT, between, brief, fixed, plain, with_uncertainty
+from coulombook.prose.text import crop, visible
 from coulombook.report.checks_view import show_checks
 from coulombook.report.curve_plot import legend, terminal_plot
 from coulombook.report.grid import GAP, Column, grid
-from coulombook.report.numbers import ABSENT, between, brief, fixed, plain, with_uncertainty
 from coulombook.report.terminal import hanging
-from coulombook.report.text import crop, visible
 
 HOW_TO_READ = "1.880(12) is 1.880 with a standard uncertainty (k = 1) of 0.012."
 LONGEST_NAME = 26

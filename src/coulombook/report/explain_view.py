@@ -12,11 +12,11 @@ from rich.console import Console
 from rich.text import Text
 
 from coulombook.book import Book, Cell
+from coulombook.prose.numbers import brief, fixed, plain, with_uncertainty
+from coulombook.prose.text import crop, visible
 from coulombook.report.grid import Column, grid
-from coulombook.report.numbers import brief, fixed, plain, with_uncertainty
 from coulombook.report.terminal import hanging
 from coulombook.report.terminal_tables import LONGEST_RUN
-from coulombook.report.text import crop, visible
 
 # 2 ln of a Bayes factor (Kass & Raftery, J. Am. Stat. Assoc. 90 (1995) 773); their "positive", 2 to 6, is weak here
 STRONG, VERY_STRONG = 6.0, 10.0

@@ -1,7 +1,7 @@
 """Faradaic efficiency against potential, one table per catalyst: levels across, products down.
 
 Levels go across because a day has more products than levels, so that the table of a usual day fits a
-terminal of 80 columns. Every cell is text by `report.numbers`; nothing is computed here, only selected:
+terminal of 80 columns. Every cell is text by `prose.numbers`; nothing is computed here, only selected:
 where the runs of a level differ in a figure that the series does not pool (total, current density), the
 smallest and largest stand.
 """
@@ -12,7 +12,8 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 
 from coulombook.book import Book, Cell
-from coulombook.report.numbers import ABSENT, between, fixed, plain, with_uncertainty
+from coulombook.prose.numbers import ABSENT, between, fixed, plain, with_uncertainty
+from coulombook.species import group_rank
 
 OUTSIDE_MARK = "*"
 NOT_DETECTED = "nd"
@@ -59,7 +60,7 @@ def catalyst_tables(book: Book) -> tuple[CatalystTable, ...]:
     series, summary, ledger = (list(book.tables[name].records()) for name in ("series", "summary", "ledger"))
     group = {row["product"]: str(row["group"] or "") for row in ledger}
     # one order for every catalyst, so that the tables can be compared line by line
-    order = {name: place for place, name in enumerate(sorted(group, key=lambda one: _rank(group[one])))}
+    order = {name: place for place, name in enumerate(sorted(group, key=lambda one: group_rank(group[one])))}
     pooled = _gathered(series, "catalyst")
     status = _gathered(ledger, "catalyst", "level", "product")
     tables = []
@@ -147,13 +148,6 @@ def _gathered(rows: Iterable[Row], *heads: str) -> dict[tuple[Cell, ...], list[R
 def _least_negative_first(row: Row) -> float:
     potential = _number(row["E vs RHE / V"])
     return float("inf") if potential is None else -potential
-
-
-def _rank(group: str) -> tuple[int, str]:
-    """H2 before C1, C2 before C10, what has no group last."""
-    if group == "H2":
-        return 0, ""
-    return (int(group[1:]), "") if group[:1] == "C" and group[1:].isdecimal() else (10**6, group)
 
 
 def _number(cell: Cell) -> float | None:

@@ -1,7 +1,7 @@
 """A day on the terminal: what a tired person needs of it, at 80 columns or more.
 
 First Faradaic efficiency against potential for each catalyst, then how each run closes, then what the
-reader should know, and last where the files are. Text from the bench's files goes through `report.text` and
+reader should know, and last where the files are. Text from the bench's files goes through `prose.text` and
 is never taken for markup; colour repeats what words say already.
 """
 
@@ -17,9 +17,9 @@ from rich.text import Text
 
 from coulombook.book import Book
 from coulombook.findings import KINDS, Finding, Severity
+from coulombook.prose.text import LONGEST, visible
 from coulombook.report.pivot import catalyst_tables
 from coulombook.report.terminal_tables import show_catalyst, show_runs
-from coulombook.report.text import LONGEST, visible
 
 AT_MOST = 10  # findings of one kind; the rest are counted
 

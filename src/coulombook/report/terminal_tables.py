@@ -9,10 +9,10 @@ from itertools import pairwise
 from rich.console import Console
 from rich.text import Text
 
+from coulombook.prose.numbers import ABSENT, fixed, plain, with_uncertainty
+from coulombook.prose.text import crop, visible
 from coulombook.report.grid import GAP, Column, grid
-from coulombook.report.numbers import ABSENT, fixed, plain, with_uncertainty
 from coulombook.report.pivot import CatalystTable, Level, Row
-from coulombook.report.text import crop, visible
 
 LONGEST_NAME = 24
 LONGEST_LEVEL = 12

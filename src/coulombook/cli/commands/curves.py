@@ -23,9 +23,9 @@ def run(options: argparse.Namespace) -> int:
     from coulombook.library.answer import answer, answer_checks
     from coulombook.library.names import UnknownCurve
     from coulombook.library.shelf import open_library
+    from coulombook.prose.text import visible
     from coulombook.report.curves_view import show_answer
     from coulombook.report.terminal import console_for
-    from coulombook.report.text import visible
     from coulombook.species import load_species
 
     places = [Path(one) for one in options.calibrations] or [Path("calibrations")]

@@ -14,7 +14,7 @@ def run(options: argparse.Namespace) -> int:
     from pathlib import Path
 
     from coulombook.intake.new_day import write_new_day
-    from coulombook.report.text import visible
+    from coulombook.prose.text import visible
 
     folder = Path(options.folder)
     try:

@@ -5,7 +5,7 @@ import unicodedata
 from hypothesis import given
 from hypothesis import strategies as st
 
-from coulombook.report.text import LONGEST, crop, visible
+from coulombook.prose.text import LONGEST, crop, visible
 
 
 def test_escape_sequences_are_shown_and_not_obeyed() -> None:

@@ -9,7 +9,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from coulombook.report.numbers import ABSENT, between, brief, fixed, plain, with_uncertainty
+from coulombook.prose.numbers import ABSENT, between, brief, fixed, plain, with_uncertainty
 
 
 @pytest.mark.parametrize(
