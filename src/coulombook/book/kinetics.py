@@ -219,7 +219,7 @@ def _report(settled: Settled, series: _Series, found: Tafel, findings: Findings)
             findings.add(
                 "falls-away",
                 catalyst,
-                "; ".join([*told, "the CO2 used as a whole shows no such limit"]),
+                "; ".join([*told, "of the CO2 used as a whole that cannot be told"]),
                 "read kinetics from the straight range of kinetics.csv only; a product that is reduced further, and "
                 "sites taken by another, bend it as well as transport",
             )

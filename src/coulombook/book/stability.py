@@ -20,6 +20,7 @@ from coulombook.uncertainty.linearised import (
     gather,
     linear_map,
     nominal,
+    select,
     sparse_map,
 )
 
@@ -52,7 +53,7 @@ def stability_rows(settled: Settled, findings: Findings) -> list[Row]:
     hour = plan.gas.injections.time_second[courses.injection] / SECONDS_PER_HOUR
     own = np.array([source.shared == READING for source in settled.inputs.sources], dtype=bool)
     area = gather(settled.inputs.numbers["electrode area"], courses.run[courses.group])
-    current = gather(settled.readings.current_ampere, courses.injection)
+    current = gather(_currents(settled), courses.injection)
     found = [
         drift(hour, number, courses.group, groups, own, _kinds(courses), confidence)
         for number in (courses.efficiency, courses.efficiency * current / area)
@@ -76,6 +77,18 @@ def stability_rows(settled: Settled, findings: Findings) -> list[Row]:
         for place, run in enumerate(courses.run.tolist())
         for number, (quantity, _) in enumerate(QUANTITIES)
     ]
+
+
+def _currents(settled: Settled) -> Number:
+    """Current at the electrode that each injection tells of, (K,).
+
+    What a headspace remembers at an injection is not yet the current of that moment.
+    """
+    plan, x = settled.plan, settled.inputs.numbers
+    run = plan.gas.injections.run
+    now = np.concatenate([one.injection_now_ampere for one in plan.figures])
+    direct = now * (1.0 + gather(x["current gain"], run)) + gather(x["current offset"], run)
+    return select(plan.headspace[run], direct, settled.readings.current_ampere)
 
 
 def _courses(settled: Settled) -> _Courses | None:

@@ -40,7 +40,7 @@ def tafel_current(potential: FloatArray, slope: float = SLOPE) -> FloatArray:
 
 
 def limited_current(potential: FloatArray, limit: float) -> FloatArray:
-    """1/j = 1/j(kinetic) + 1/j(limit): the form of Koutecky and Levich."""
+    """1/j = 1/j(kinetic) + 1/j(limit), as Koutecky and Levich (Bard & Faulkner, Electrochemical Methods, 9.3.4)."""
     return np.asarray(1.0 / (1.0 / tafel_current(potential) + 1.0 / limit), dtype=np.float64)
 
 
