@@ -61,7 +61,7 @@ class Bench:
         return process([Path(sys.executable).with_name("coulombook"), *command], self.bytecode)
 
     def tally(self, day: Path) -> Callable[[], Cost]:
-        told = ("--out", f"{day}-results", "--calibrations", CALIBRATIONS, "--quiet")
+        told = ("--out", f"{day}-results", "--calibrations", CALIBRATIONS, "--quiet", "--tables-only")
         return self.coulombook("tally", day, *told)
 
     def by_hand(self, day: Path, dialect: Dialect) -> Callable[[], Cost]:
@@ -193,6 +193,21 @@ def run_uncertainty(bench: Bench) -> list[Row]:
     ]
 
 
+def run_workbook(bench: Bench) -> list[Row]:
+    """The audit workbook of the example day."""
+    cost = bench.worker("workbook")
+    return [
+        Row(
+            f"workbook of {cost['cells']:,} cells, same bytes on rerun",
+            "a bare loop of the same cells",
+            1.5,
+            cost["ours"] / cost["bare"],
+            _ms(cost["ours"]),
+            _ms(cost["bare"]),
+        )
+    ]
+
+
 def run_growth(bench: Bench) -> list[Row]:
     """Time and memory from ten to two thousand runs."""
     sides = {str(runs): bench.tally(bench.day(runs, 100)) for runs in GROWTH_RUNS}
@@ -240,6 +255,7 @@ BENCHMARKS: dict[str, Callable[[Bench], list[Row]]] = {
     "large": run_large,
     "traces": run_traces,
     "uncertainty": run_uncertainty,
+    "workbook": run_workbook,
     "growth": run_growth,
 }
 
