@@ -8,6 +8,7 @@ from coulombook.curves.interval import InverseEstimate, inverse_with_uncertainty
 from coulombook.curves.inverse import invert, invertible, response
 from coulombook.curves.judgement import Judgement, judge
 from coulombook.curves.limits import SCHEMES, Limits
+from coulombook.curves.many import ManyCurves, fit_many
 from coulombook.curves.nmr import SignalAgreement, saturation_factor, signal_agreement
 from coulombook.curves.prediction import curve_response, curve_variance, range_distance, reading_variance
 from coulombook.curves.weights import WEIGHTS, point_weights
@@ -21,12 +22,14 @@ __all__ = [
     "InverseEstimate",
     "Judgement",
     "Limits",
+    "ManyCurves",
     "SignalAgreement",
     "control_chart",
     "curve_response",
     "curve_variance",
     "effective_carbon_number",
     "fit_curve",
+    "fit_many",
     "fit_polynomial",
     "interpolation_weights",
     "inverse_with_uncertainty",

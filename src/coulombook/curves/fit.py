@@ -1,8 +1,8 @@
 """Least-squares calibration curves.
 
-The design matrix is scaled (and centred where the form has an intercept), factorised by Householder QR and
-refined with residuals summed exactly, so that badly scaled standards (mole fractions of 1e-6 against peak
-areas of 1e6) keep their digits. Normal equations are never formed.
+The fit is made in polynomials that are orthonormal over the points (`coulombook.curves.basis`) and refined with
+residuals summed exactly, so that badly scaled standards (mole fractions of 1e-6 against peak areas of 1e6) keep
+their digits. Normal equations are never formed.
 
 Errors of the standards themselves enter the covariance of every curve for which they are stated; with weights
 "both" they enter the fit as well (`coulombook.curves.both`).
@@ -20,6 +20,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from coulombook.curves.basis import has_all_powers, orthonormal, quality, to_plain
 from coulombook.curves.both import DistanceFit, fit_distance
 from coulombook.curves.certificates import standard_errors
 from coulombook.curves.unexplained import components, unexplained_variance
@@ -137,26 +138,11 @@ class _ExactRows:
         return np.array([math.fsum(row) for row in terms.tolist()])
 
 
-def _to_plain(powers: tuple[int, ...], centre: float, scale: float) -> FloatArray:
-    """Matrix that turns coefficients in ((x - centre)/scale)^k into coefficients in x^k."""
-    size = len(powers)
-    matrix = np.zeros((size, size))
-    for column, power in enumerate(powers):
-        if centre == 0.0:
-            matrix[column, column] = scale**-power
-            continue
-        for row in range(column + 1):
-            matrix[row, column] = math.comb(power, row) * (-centre) ** (power - row) * scale**-power
-    return matrix
-
-
 def scaled_design(x: FloatArray, powers: tuple[int, ...]) -> tuple[float, float, FloatArray]:
     """Centre and scale that put x within -1 to 1, and the matrix from coefficients there to those of x^k."""
-    # a shift of x mixes all lower powers, so only a form that has them all may be centred
-    centred = powers == tuple(range(len(powers))) and len(powers) > 1
-    centre = 0.5 * float(x.min() + x.max()) if centred else 0.0
-    scale = float(np.abs(x - centre).max())
-    return centre, scale, _to_plain(powers, centre, scale)
+    centre = 0.5 * (x.min() + x.max()) if has_all_powers(powers) else np.zeros(())
+    scale = np.abs(x - centre).max()
+    return float(centre), float(scale), to_plain(powers, centre, scale)
 
 
 def fit_polynomial(
@@ -200,40 +186,33 @@ def fit_polynomial(
 
     weight = weight / weight.mean()
     root = np.sqrt(weight)
-    centre, scale, plain = scaled_design(x, powers)
-    scaled = root[:, None] * ((x - centre) / scale)[:, None] ** np.array(powers)
-    q, r = np.linalg.qr(scaled)
+    q, back = orthonormal(x, root, powers)
 
     design = root[:, None] * x[:, None] ** np.array(powers)
     target = root * y
     rows, columns = _ExactRows(design), _ExactRows(np.ascontiguousarray(design.T))
-    back = np.linalg.inv(r)  # of a few rows, well conditioned by the scaling
     along = q.T @ target
-    coefficients, residual = plain @ (back @ along), target - q @ along
+    coefficients, residual = back @ along, target - q @ along
     # the augmented system  residual + design b = target,  design^T residual = 0
     for _ in range(_REFINEMENTS):
         miss = rows.dot(-coefficients, target, -residual)
         slant = columns.dot(-residual)
-        along = q.T @ miss - back.T @ (plain.T @ slant)
-        step = plain @ (back @ along)
+        along = q.T @ miss - back.T @ slant
+        step = back @ along
         coefficients = coefficients + step
         residual = residual + miss - q @ along
         # a step multiplies the error by the same small factor each time, so what is left is this one squared
         if (np.abs(step) <= _HALF_THE_DIGITS * np.abs(coefficients)).all():
             break
 
-    freedom = points - size
-    square = math.fsum(np.square(residual).tolist())
-    sd = math.sqrt(square / freedom) if freedom else 0.0
-    middle = float(weight @ y) / points if powers[0] == 0 else 0.0
-    total = float(weight @ np.square(y - middle))
+    sd, r_squared = quality(residual, y, weight, powers)
     return PolynomialFit(
         powers=powers,
         coefficients=coefficients,
-        factor=sd * (plain @ back),
-        degrees_of_freedom=freedom,
-        residual_sd=sd,
-        r_squared=1.0 - square / total if total > 0.0 else math.nan,
+        factor=sd * back,
+        degrees_of_freedom=points - size,
+        residual_sd=float(sd),
+        r_squared=float(r_squared),
     )
 
 

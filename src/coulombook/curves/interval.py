@@ -130,7 +130,9 @@ def _end(
 ) -> FloatArray:
     """Where ``excess`` turns positive on the way from x in the direction of ``step``, not beyond ``turn``."""
     near, span = x, step
-    ahead = np.where(np.isfinite(turn) & ((turn - x) * step > 0.0), turn, np.copysign(np.inf, step))
+    ahead = np.where(
+        np.isfinite(turn) & (np.sign(turn - x) * np.sign(step) > 0.0), turn, np.copysign(np.inf, step)
+    )
     farthest = np.abs(ahead - x)
     with np.errstate(invalid="ignore"):
         under = excess(near)
