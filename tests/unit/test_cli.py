@@ -249,7 +249,7 @@ def test_new_refuses_a_folder_that_is_in_use(
     ("arguments", "message"),
     [
         (["taly", "x"], "unknown command 'taly'; did you mean 'tally'?"),
-        (["frobnicate"], "unknown command 'frobnicate'; known: tally, check, explain, budget, new, curves"),
+        (["frobnicate"], "unknown command 'frobnicate'; known: tally, check, explain, budget, compare, new,"),
         (["tally", "x", "--srtict"], "unknown option '--srtict'; did you mean '--strict'?"),
         (["tally", "x", "--otu=y"], "unknown option '--otu=y'; did you mean '--out'?"),
         (["--verion"], "unknown option '--verion'; did you mean '--version'?"),
