@@ -13,6 +13,7 @@ from coulombook.curves.fit import Curve, fit_curve
 from coulombook.curves.judgement import Judgement, judge
 from coulombook.curves.limits import Limits, limits
 from coulombook.findings import Findings
+from coulombook.prose.numbers import with_uncertainty
 
 GAS, LIQUID = "gas", "liquid"
 
@@ -125,8 +126,8 @@ class CurvesUsed:
         self._findings.add(
             "borrowed-curve",
             where,
-            f"{standards.analyte}@{standards.channel} is {like} times {factor:.4g} by effective carbon numbers, with a "
-            f"relative standard uncertainty of {u_factor / factor * 100:.2g} %",
+            f"{standards.analyte}@{standards.channel} is {like} times {with_uncertainty(factor, u_factor)} by "
+            "effective carbon numbers",
             f"add standards of {standards.analyte}",
         )
         return UsedCurve(standards, curve, like=index)

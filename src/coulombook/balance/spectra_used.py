@@ -12,6 +12,7 @@ from coulombook.balance.surface_plan import SurfacePlan
 from coulombook.cell.impedance import CircuitFit
 from coulombook.cell.kramers_kronig import SOUND, KramersKronig
 from coulombook.findings import Findings
+from coulombook.prose.numbers import with_uncertainty
 
 # words of a purpose that keep a spectrum from the other use
 _RESISTANCE, _CAPACITANCE = "resistance", "capacitance"
@@ -83,8 +84,8 @@ def use_spectra(day: Day, figures: Sequence[SpectrumFigures | None], findings: F
         findings.add(
             "resistance-from-spectrum",
             f"run {run.name}",
-            f"no resistance is given; {found.ohm:.5g} ohm with a standard uncertainty of {found.u_ohm:.2g} ohm was "
-            f"taken from {', '.join(found.files)}",
+            f"no resistance is given; {with_uncertainty(found.ohm, found.u_ohm)} ohm was taken from "
+            f"{', '.join(found.files)}",
             "give a resistance to use your own",
         )
         return replace(

@@ -17,6 +17,7 @@ from coulombook.balance.readings import Day, FloatArray
 from coulombook.balance.scan_verdicts import JudgedScans, scan_sets, set_name
 from coulombook.cell.capacitance import POWER_LAW, CapacitanceFit, fit_capacitance
 from coulombook.findings import Findings
+from coulombook.prose.numbers import with_uncertainty
 from coulombook.uncertainty.linearised import IntArray, sparse_map
 
 if TYPE_CHECKING:
@@ -182,8 +183,9 @@ def _report_law(fit: CapacitanceFit, where: str, findings: Findings) -> None:
         findings.add(
             "no-straight-line",
             where,
-            f"the charging current follows a power law of the scan rate, exponent {fit.exponent:.3f} with u = "
-            f"{fit.u_exponent:.1g}, better than a line (difference of the information criterion {fit.evidence:.1f}); "
+            "the charging current follows a power law of the scan rate, exponent "
+            f"{with_uncertainty(fit.exponent, fit.u_exponent)}, better than a line (difference of the information "
+            f"criterion {fit.evidence:.1f}); "
             f"the slope of the line is {fit.capacitance_farad * 1e3:.4g} mF, the power law's current over scan rate "
             f"{fit.power_capacitance_farad * 1e3:.4g} mF at the middle of the rates, and their difference is in the "
             "uncertainty",
@@ -214,10 +216,9 @@ def _report_changes(
             findings.add(
                 "area-changed",
                 f"electrode {electrode}",
-                f"its capacitance is {ratio:.3g} times that of its "
+                f"its capacitance is {with_uncertainty(ratio, u * ratio)} times that of its "
                 + (f"scans '{then}'" if then else "other scans")
                 + f" in its scans '{purpose}'"
-                + ("" if math.isnan(u) else f", with a standard uncertainty of {u * ratio:.1g}")
                 + f"; its runs are put on the area of the {f'scans {then!r}' if then else 'former'}",
                 "take the electrode as another one, or report both areas",
             )

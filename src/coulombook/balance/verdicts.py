@@ -14,6 +14,7 @@ from coulombook.curves.control import ACTION, control_chart
 from coulombook.curves.inverse import invertible
 from coulombook.curves.nmr import signal_agreement
 from coulombook.findings import Findings
+from coulombook.prose.numbers import with_uncertainty
 from coulombook.uncertainty.linearised import nominal, standard_uncertainty
 
 QUANTIFIED, ABOVE, BELOW = "quantified", "above calibration", "below calibration"
@@ -247,8 +248,7 @@ def report_doubts(settled: Settled, status: list[str], closure: list[str], findi
             findings.add(
                 "balance-open",
                 f"run {run.name}",
-                f"total FE is {total[number] * 100:.1f} % with a standard uncertainty of {u[number] * 100:#.2g} %: "
-                f"{closure[number]}",
+                f"total FE is {with_uncertainty(100.0 * total[number], 100.0 * u[number])} %: {closure[number]}",
                 "check outlet flow, window, curves and internal standard; declare the uncertainties that are missing",
             )
 
