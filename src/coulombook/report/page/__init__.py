@@ -2,4 +2,6 @@
 
 from coulombook.report.page.document import page_html
 
-__all__ = ["page_html"]
+NAME = "report.html"
+
+__all__ = ["NAME", "page_html"]

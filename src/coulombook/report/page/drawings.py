@@ -6,14 +6,14 @@ from collections import Counter
 from collections.abc import Iterator, Mapping
 
 from coulombook.book import Book, Cell, Table
-from coulombook.figures import KINDS, Drawing, drawings_of, inline_svg
+from coulombook.figures import COLUMN_MM, KINDS, PAGE_MM, Drawing, drawings_of, inline_svg
 from coulombook.figures.data import MARK
 from coulombook.report.page.html import Html, element, join
 from coulombook.report.page.svg import Styles, adopt
 from coulombook.report.page.tables import spread_heads
 from coulombook.report.page.words import bare, measured, number_of, parted
 
-WIDTH_MM = 85.0
+_WIDE = frozenset({"closure", "budget"})  # kinds that have a line of the page to themselves
 TRACE = "trace"  # logs are drawn by the page itself, so that they can be looked into
 _UNSAID = frozenset({MARK, "level", "unit of u"})
 _PLAIN = frozenset({"product", "log"})  # what a row is, where its other words say so already
@@ -32,13 +32,17 @@ class Drawings:
         """All figures of one kind."""
         return [self._drawn(one) for one in self._kinds.pop(kind, [])]
 
+    def by(self, kind: str, head: str) -> dict[str, Html]:
+        """All figures of one kind, by what their tables say under a head."""
+        return {str(one.data.column(head)[0]): self._drawn(one) for one in self._kinds.pop(kind, [])}
+
     def rest(self) -> list[Html]:
         """Every figure of a kind that was not taken."""
         return [figure for kind in list(self._kinds) for figure in self.take(kind)]
 
     def _drawn(self, one: Drawing) -> Html:
         self._number += 1
-        axes = one.draw(None, WIDTH_MM)
+        axes = one.draw(None, PAGE_MM if one.kind in _WIDE else COLUMN_MM)
         svg = inline_svg(axes.figure.get_figure(root=True), salt=f"page {self._number}")
         return element(
             "figure",

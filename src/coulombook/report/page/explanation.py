@@ -8,8 +8,11 @@ from coulombook.book import Book
 from coulombook.report.explain_view import EXCLUDED, NO_CAUSE, Record, in_words
 from coulombook.report.page.html import Html, element, join
 from coulombook.report.page.tables import Column, book_table, number_datum, show_table, text_datum
-from coulombook.report.page.words import number_of
+from coulombook.report.page.words import number_of, sentence
 
+_WORTH_A_WORD = (
+    2.0  # 2 ln of a Bayes factor; less is "not worth more than a bare mention" (Kass & Raftery 1995)
+)
 SHOWN = 6  # causes that stand open, below the best
 _TOLD_APART = "yes"
 
@@ -19,7 +22,11 @@ def show_explanation(book: Book) -> Html | None:
     ranked = list(book.tables["explanations"].records()) if "explanations" in book.tables else []
     if not ranked or ranked[0]["cause"] == NO_CAUSE:
         return None
-    blamed = [row for row in ranked if row["cause"] != NO_CAUSE and (number_of(row["evidence"]) or 0.0) > 0.0]
+    blamed = [
+        row
+        for row in ranked
+        if row["cause"] != NO_CAUSE and (number_of(row["evidence"]) or 0.0) >= _WORTH_A_WORD
+    ]
     best, others = blamed[:1], blamed[1:]
     return join(
         [_best(row) for row in best],
@@ -62,12 +69,12 @@ def _table(rows: Sequence[Record]) -> Html:
     ]
     return show_table(
         "Causes that the day speaks for, best first. Evidence is 2 ln of the Bayes factor against no cause: above 6 "
-        "strong, above 10 very strong, below 2 hardly worth a word.",
+        "strong, above 10 very strong; those below 2 are left out.",
         columns,
         name="causes of the open balance",
     )
 
 
 def _sentence(text: str) -> str:
-    text = text[:1].upper() + text[1:]
+    text = sentence(text[:1].upper() + text[1:])
     return text if text.endswith(".") else f"{text}."

@@ -54,4 +54,9 @@ for (const drawing of document.querySelectorAll(".drawing")) {
     go((steps[event.key] + marks.length) % marks.length);
   });
 }
-addEventListener("scroll", hide, { passive: true });
+// a mark that is reached by a key may scroll into view, and its words with it
+addEventListener("scroll", () => {
+  const mark = document.activeElement?.closest(".mark");
+  if (mark && !tip.hidden) show(mark);
+  else hide();
+}, { passive: true });

@@ -37,6 +37,7 @@ def _show_kind(same: Sequence[Finding]) -> Html:
             "li",
             element("span", _places(alike), class_="where"),
             join(" ", text) if text else None,
+            _other_places(alike),
             _advice(mend) if len(advice) > 1 else None,
         )
         for (text, mend), alike in texts.items()
@@ -65,15 +66,15 @@ def _show_kind(same: Sequence[Finding]) -> Html:
 
 def _places(alike: Sequence[Finding]) -> Html:
     shown = [one.where for one in alike]
-    head, rest = shown[:FOLDED_BEYOND], shown[FOLDED_BEYOND:]
+    more = len(shown) - FOLDED_BEYOND
+    return join("; ".join(shown[:FOLDED_BEYOND]), f"; and {more} more:" if more > 0 else ":")
+
+
+def _other_places(alike: Sequence[Finding]) -> Html | None:
+    rest = [one.where for one in alike[FOLDED_BEYOND:]]
     if not rest:
-        return join("; ".join(head), ":")
-    return join(
-        "; ".join(head),
-        "; ",
-        element("details", element("summary", f"and {len(rest)} more"), "; ".join(rest), class_="inline"),
-        ":",
-    )
+        return None
+    return element("details", element("summary", f"the other {counted(len(rest), 'place')}"), "; ".join(rest))
 
 
 def _advice(mend: str) -> Html | None:

@@ -16,7 +16,7 @@ from coulombook.report.page.provenance import show_provenance
 from coulombook.report.page.runs import show_runs
 from coulombook.report.page.tables import Column, Datum, book_table, show_table, text_datum
 from coulombook.report.page.verdict import show_verdicts
-from coulombook.report.page.words import typeset
+from coulombook.report.page.words import sentence, typeset
 from coulombook.report.pivot import CatalystTable, catalyst_tables
 
 MOST_ROWS = 3000  # of one table; a longer one is left to its file
@@ -53,7 +53,12 @@ def _parts(book: Book, drawings: Drawings) -> Iterator[tuple[str, str, str, Html
         "Efficiencies",
         _efficiencies(book, drawings),
     )
-    yield "currents", "Partial current densities", "Currents", grid_of(drawings.take("partial-currents"))
+    yield (
+        "currents",
+        "Partial current densities",
+        "Currents",
+        grid_of(drawings.take("partial-currents"), "pairs"),
+    )
     yield "selectivity", "More carbon or less: C2+/C1", "C2+/C1", grid_of(drawings.take("selectivity"))
     yield "closure", "How each run closes", "Closure", _closure(book, drawings)
     yield "findings", "What to do", "What to do", show_findings(book.findings)
@@ -75,13 +80,18 @@ def _parts(book: Book, drawings: Drawings) -> Iterator[tuple[str, str, str, Html
 
 def _verdict(book: Book) -> Html:
     told = verdict(book) if {"closure", "explanations"} <= book.tables.keys() else None
-    return join(show_verdicts(book), element("p", told, class_="day") if told else None)
+    return join(show_verdicts(book), element("p", sentence(told), class_="day") if told else None)
 
 
 def _efficiencies(book: Book, drawings: Drawings) -> Html:
-    figures = drawings.take("fe")
-    tables = [_levels(one) for one in catalyst_tables(book)]
-    return join(grid_of(figures), tables)
+    figures = drawings.by("fe", "catalyst")
+    return join(
+        join(
+            element("h3", table.catalyst, class_="catalyst"),
+            element("div", figures.get(table.catalyst), element("div", _levels(table)), class_="beside"),
+        )
+        for table in catalyst_tables(book)
+    )
 
 
 def _levels(table: CatalystTable) -> Html:
@@ -109,9 +119,7 @@ def _levels(table: CatalystTable) -> Html:
         ),
     ]
     return join(
-        show_table(
-            f"{table.catalyst}: FE in per cent at each potential against RHE", columns, name=table.catalyst
-        ),
+        show_table("FE in per cent at each potential against RHE", columns, name=f"FE of {table.catalyst}"),
         [element("p", line, class_="aside") for line in table.marks],
     )
 
@@ -139,7 +147,9 @@ def _curves(book: Book, drawings: Drawings) -> Html | None:
 
 
 def _folded(summary: str, figures: Sequence[Html]) -> Html | None:
-    return element("details", element("summary", summary), grid_of(list(figures))) if figures else None
+    return (
+        element("details", element("summary", summary), grid_of(list(figures), "small")) if figures else None
+    )
 
 
 def _surface(book: Book, drawings: Drawings) -> Html | None:

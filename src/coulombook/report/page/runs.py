@@ -92,7 +92,7 @@ def _show_run(book: Book, row: Row, parts: _Parts) -> Html:
 
 
 def _heading(title: str, content: Html | None) -> Html | None:
-    return None if content is None else join(element("h4", title), content)
+    return None if content is None else join(element("h3", title), content)
 
 
 class _Liquid:

@@ -10,13 +10,18 @@ import re
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 
+from coulombook.balance.verdicts import OVER, SHORT
 from coulombook.book import Cell, Table
+from coulombook.book.closures import OPEN
 from coulombook.book.columns import about_tables
 from coulombook.report.page.html import Html, element, join
 from coulombook.report.page.words import DASH, bare, measured, number_of, parted
 from coulombook.report.tables import harmless_text
 
 _SPREAD = re.compile(r"u\((.+)\)( / .+)?")
+_MANY = 12  # columns, from which on paper needs smaller letters
+_LONG = 34  # characters
+_DOUBTS = frozenset({SHORT, OVER, OPEN})  # verdicts that ask for a look
 Row = Mapping[str, Cell]
 
 
@@ -41,9 +46,10 @@ class Column:
     numeric: bool = True
 
 
-def text_datum(cell: Cell, kind: str = "") -> Datum:
-    """A cell of words."""
-    return Datum(DASH if cell is None else str(cell), kind=kind)
+def text_datum(cell: Cell) -> Datum:
+    """A cell of words; long ones may be broken into lines."""
+    text = DASH if cell is None else str(cell)
+    return Datum(text, kind="doubt" if text in _DOUBTS else "long" if len(text) > _LONG else "")
 
 
 def number_datum(cell: Cell, u: Cell = None) -> Datum:
@@ -106,6 +112,7 @@ def show_table(caption: Html | str, columns: Sequence[Column], *, name: str, qui
             element("caption", caption, class_="unseen" if quiet else None),
             element("thead", heads),
             body,
+            class_="wide" if len(columns) > _MANY else None,
         ),
         class_="scroll",
         role="region",

@@ -20,6 +20,13 @@ const between = (low, high) => (digits(low) === digits(high) ? digits(low) : `${
 
 const series = (label, scale, colour, shown) => ({ label, scale, stroke: () => ink(colour), width: shown ? 1 : 0.8, points: { show: false } });
 
+/** Ends of an axis: a tenth of room, and never so near that the noise of a steady reading fills it. */
+const room = (_, low, high) => {
+  const span = Math.max(1.2 * (high - low), 0.04 * Math.max(Math.abs(low), Math.abs(high)), 1e-12);
+  const middle = (low + high) / 2;
+  return [middle - span / 2, middle + span / 2];
+};
+
 /** Window of the run and injections, below the curves. */
 const marksOf = (log) => (plot) => {
   const { ctx, bbox } = plot;
@@ -80,7 +87,7 @@ const drawLog = async (figure) => {
   const height = () => (innerWidth < 600 ? 230 : 290);
   const plot = new uPlot(
     {
-      width: Math.max(place.clientWidth, 200), height: height(), scales: { x: { time: false } }, legend: { show: false },
+      width: Math.max(place.clientWidth, 200), height: height(), scales: { x: { time: false }, I: { range: room }, E: { range: room } }, legend: { show: false },
       series: [{}, ...drawn],
       bands: single ? [] : [{ series: [2, 1], fill: tinted("--current") }, { series: [4, 3], fill: tinted("--potential") }],
       axes: [{ ...axis("x", "t / s", 2, "--soft"), size: 34 }, axis("I", "I / mA", 3, "--current"), axis("E", log.potential, 1, "--potential")],

@@ -27,6 +27,7 @@ from coulombook.report.page.words import MINUS
 _STEPS = 65535
 _WIDTH, _PANEL, _GAP, _LEFT, _RIGHT, _FOOT = 900, 110, 16, 62, 14, 22
 _STRETCHES = 140  # of the small drawing
+_LEAST_SPAN = 0.04  # of the larger end
 _CURRENT, _POTENTIAL = ("lowest I / mA", "highest I / mA"), ("lowest E / V", "highest E / V")
 
 
@@ -158,7 +159,7 @@ def _panel(
 ) -> Html:
     lows, highs = (log.columns[head] for head in heads)
     low, high = _ends(lows, highs)
-    span = (high - low) or 1.0
+    span = high - low
     step = max(1, -(-len(log.time) // _STRETCHES))
     places = np.arange(0, len(log.time), step)
     of_low, of_high = np.fmin.reduceat(lows, places), np.fmax.reduceat(highs, places)
@@ -174,7 +175,7 @@ def _panel(
         element("path", d=whole(_up_and_down(ends)), class_=f"line {kind}") if ends else None,
         element("text", _number(high), x=_LEFT - 6, y=top + 11, text_anchor="end"),
         element("text", _number(low), x=_LEFT - 6, y=top + _PANEL, text_anchor="end"),
-        element("text", name, x=_LEFT - 6, y=top + _PANEL / 2 + 5, text_anchor="end"),
+        element("text", name, x=_LEFT + 6, y=top + 12),
         element("path", d=f"M{_LEFT} {top}V{top + _PANEL}", class_="axis"),
     )
 
@@ -198,7 +199,10 @@ def _up_and_down(stretches: Sequence[tuple[float, float, float]]) -> str:
 def _ends(lows: FloatArray, highs: FloatArray) -> tuple[float, float]:
     every = np.concatenate((lows, highs))
     every = every[np.isfinite(every)]
-    return float(every.min()), float(every.max())
+    low, high = float(every.min()), float(every.max())
+    # never so near that the noise of a steady reading fills the panel
+    span = max(high - low, _LEAST_SPAN * max(abs(low), abs(high))) or 1.0
+    return (low + high - span) / 2.0, (low + high + span) / 2.0
 
 
 def _at(value: float) -> str:

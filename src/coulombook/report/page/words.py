@@ -7,9 +7,11 @@ from collections.abc import Sequence
 
 from coulombook.prose.numbers import ABSENT, fixed, plain, with_uncertainty
 
-MINUS, DASH, THIN = "\N{MINUS SIGN}", "\N{EN DASH}", "\N{NO-BREAK SPACE}"
+MINUS, DASH = "\N{MINUS SIGN}", "\N{EN DASH}"
 _RAISED = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 _EXPONENT = re.compile(r"e(-?\d+)$")
+_POWER_OF_TEN = re.compile(r"(?<=\d)e(-?\d+)\b")
+_NEGATIVE = re.compile(r"(?<![\w.-])-(?=\d)")
 _POWER = re.compile(r"\^(-?\d+)")
 _UNITS = {"umol": "µmol", "degC": "°C", "ohm": "Ω"}
 
@@ -24,6 +26,16 @@ def typeset(number: str) -> str:
         return DASH
     raised = _EXPONENT.sub(lambda found: "×10" + found[1].translate(_RAISED), number)
     return raised.replace("-", MINUS)
+
+
+def sentence(text: str) -> str:
+    """A sentence with its numbers set for print.
+
+    >>> sentence("p < 1e-6 at run m1-4, off by -4.1")
+    'p < 1×10⁻⁶ at run m1-4, off by −4.1'
+    """
+    raised = _POWER_OF_TEN.sub(lambda found: "×10" + found[1].translate(_RAISED), text)
+    return _NEGATIVE.sub(MINUS, raised)
 
 
 def measured(value: float | None, u: float | None) -> str:
