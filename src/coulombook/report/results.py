@@ -145,10 +145,12 @@ def _documents(book: Book) -> dict[str, bytes]:
     """What people open, by file name; a book that has lost what it was computed from has none."""
     if book.settled is None:
         return {}
+    from coulombook.report.page import NAME as PAGE
+    from coulombook.report.page import page_html
     from coulombook.report.workbook import NAME as WORKBOOK
     from coulombook.report.workbook import workbook_bytes
 
-    return {WORKBOOK: workbook_bytes(book)}
+    return {WORKBOOK: workbook_bytes(book), PAGE: page_html(book).encode("utf-8")}
 
 
 def findings_table(book: Book) -> Table:
