@@ -208,6 +208,63 @@ def run_workbook(bench: Bench) -> list[Row]:
     ]
 
 
+def run_draws(bench: Bench) -> list[Row]:
+    """Monte Carlo against the least it could cost."""
+    cost = bench.worker("draws")
+    what = f"100,000 draws of {cost['outputs']:,} outputs with intervals"
+    return [
+        Row(
+            what,
+            "normals, each run's errors drawn for it, and sort, as many threads",
+            1.3,
+            cost["ours"] / cost["by run"],
+            _ms(cost["ours"]),
+            _ms(cost["by run"]),
+        ),
+        Row(
+            what,
+            "the same with every error drawn once, kept for all runs",
+            1.3,
+            cost["ours"] / cost["once"],
+            _ms(cost["ours"]),
+            _ms(cost["once"]),
+        ),
+        Row(f"{what}: peak memory", "250 MB", 1.0, cost["peak"] / 250e6, _mb(cost["peak"]), "250 MB"),
+    ]
+
+
+def run_curves(bench: Bench) -> list[Row]:
+    """Many calibration lines."""
+    cost = bench.worker("curves")
+    return [
+        Row(
+            f"{cost['curves']} curves of 8 levels with covariances",
+            "a loop of `np.polyfit`",
+            0.05,
+            cost["ours"] / cost["polyfit"],
+            f"{cost['ours'] * 1e3:.2f} ms",
+            _ms(cost["polyfit"]),
+        )
+    ]
+
+
+def run_search(bench: Bench) -> list[Row]:
+    """The search for causes from ten to two thousand runs."""
+    cost = bench.worker("explaining")
+    runs, seconds = [int(one) for one in cost], list(cost.values())
+    return [
+        Row(
+            f"search for causes: exponent of time in the number of runs, {first} to {runs[-1]:,}",
+            "proportional growth",
+            1.05,
+            exponent(runs[place:], seconds[place:]),
+            f"{_ms(seconds[place])} to {_ms(seconds[-1])}",
+            "",
+        )
+        for place, first in ((0, runs[0]), (len(runs) - 2, f"{runs[-2]:,}"))
+    ]
+
+
 def run_growth(bench: Bench) -> list[Row]:
     """Time and memory from ten to two thousand runs."""
     sides = {str(runs): bench.tally(bench.day(runs, 100)) for runs in GROWTH_RUNS}
@@ -256,6 +313,9 @@ BENCHMARKS: dict[str, Callable[[Bench], list[Row]]] = {
     "traces": run_traces,
     "uncertainty": run_uncertainty,
     "workbook": run_workbook,
+    "draws": run_draws,
+    "curves": run_curves,
+    "search": run_search,
     "growth": run_growth,
 }
 
@@ -272,6 +332,9 @@ same efficiencies and potentials to nine digits. Tallies and scripts start cold:
 before, files in the page cache. Their processor time, of all threads together, stands beside the time. Traces are
 read and uncertainties propagated in a running process, `pandas` being given the arguments the file needs. Peak memory
 is the largest resident size of the process. Growth is measured in {growth} turns of six sizes.
+
+Draws stand against the least they could cost: the normals and the sort of the outputs, alone. How many normals that is
+depends on whether errors that runs share count once for the day or once for each run; both are shown.
 
 {table}
 """

@@ -86,7 +86,8 @@ def fit_many(x: ArrayLike, y: ArrayLike, form: str = "line", weights: str = "equ
     target = root * y
     across = q.transpose(0, 2, 1)
     found = back @ (across @ target[..., None])
-    design = root[..., None] * x[..., None] ** np.array(powers)
+    # numpy is quick with whole powers that are the same for all elements
+    design = np.stack([root * x**power for power in powers], axis=-1)
     # once more for what rounding left: the digits that are lost between the two kinds of coefficients
     found = found + back @ (across @ (target[..., None] - design @ found))
     residual = (target[..., None] - design @ found)[..., 0]
