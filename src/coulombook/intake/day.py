@@ -479,7 +479,7 @@ def _trace_names(home: Folder, table: TypedTable, long_files: list[Path], findin
     for place, (run, given) in enumerate(zip(table.words("run"), table.words("trace"), strict=True)):
         text = (given or f"traces/{run}.csv").replace("\\", "/")
         names.append(text)
-        if not run and not given:
+        if (not run and not given) or findings.is_full("missing-file"):
             continue
         path = home.inside(text)
         if path is not None and not given and not is_file(path):
@@ -494,7 +494,7 @@ def _scan_files(
     home: Folder, table: TypedTable, kind: str, long_files: list[Path], findings: Findings
 ) -> None:
     for place, given in enumerate(table.words("file")):
-        if given:
+        if given and not findings.is_full("missing-file"):
             path = home.inside(given)
             _look_for(home, path, given, table, place, "file", f"the row has no {kind}", long_files, findings)
 

@@ -39,6 +39,7 @@ from coulombook.units import LARGEST_NUMBER, UnitError, conversion
 
 COMMENT_SIGNS = ("#", "%", "//")
 _BLOCK = 1 << 20  # characters read at a time
+_MOST_FAULTS = 10_000  # cells; nobody reads on, and each takes its time
 _LONGEST_PREAMBLE = 500  # lines between the blocks of a log that was put together from several
 
 Row = tuple[int, list[str]]
@@ -76,6 +77,7 @@ class Patient:
     faults: dict[str, Told] = field(default_factory=dict)  # by quantity
     overlong: Told | None = None
     cut: Told | None = None  # a last line without its end
+    ended_early: bool = False  # after so many faults that nobody reads on
     first_stamp: datetime | None = None
 
 
@@ -194,6 +196,7 @@ class _Reader:
         self._columns = list(layout.columns.items())
         self._heads = [_folded(head) for head in layout.heads]
         self._found = Patient({quantity: array("d") for quantity, _ in self._columns}, array("q"))
+        self._faulty = 0  # cells found to be faults
         self._pending: list[Row] = []  # rows that are no readings and may stand above heads to come
 
     def read(self) -> Patient:
@@ -209,6 +212,9 @@ class _Reader:
             if last is not None:
                 self._untidy(*last)
                 last = None
+                if self._faulty >= _MOST_FAULTS:
+                    found.ended_early = True
+                    break
             try:
                 row = [
                     of_time(cells[place]) if is_time and of_time else plain_number(cells[place], decimal)
@@ -315,6 +321,7 @@ class _Reader:
             for quantity, place in self._columns:
                 cell = cells[place] if place < len(cells) else ""
                 if self._number(quantity, cell) is None:
+                    self._faulty += 1
                     found.faults[quantity] = _told(found.faults.get(quantity), number, cell)
 
     def _are_heads(self, cells: Sequence[str]) -> bool:
@@ -387,14 +394,16 @@ def _report_faults(
         told = read.faults.get(quantity)
         doubt = unsure.get(quantity)
         if told is not None:
-            _report_cell(told, quantity, layout, name, findings)
+            _report_cell(told, quantity, layout, name, "at least " if read.ended_early else "", findings)
         elif doubt is not None:
             _report_unsure(doubt, quantity, layout, name, findings)
     return bool(read.faults or unsure)
 
 
-def _report_cell(told: Told, quantity: str, layout: Layout, name: str, findings: Findings) -> None:
-    more = f"; {told.count - 1} more cells of the column are so" if told.count > 1 else ""
+def _report_cell(
+    told: Told, quantity: str, layout: Layout, name: str, at_least: str, findings: Findings
+) -> None:
+    more = f"; {at_least}{told.count - 1} more cells of the column are so" if told.count > 1 else ""
     where = Origin(name, None, told.first, layout.heads[layout.columns[quantity]])
     found = (quoted(told.example) if told.example else "nothing") + more
     if quantity == "t" and (layout.times is not Times.NUMBER or has_two_parts(told.example)):

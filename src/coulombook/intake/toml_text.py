@@ -78,6 +78,9 @@ def read_settings(folder: Folder, path: Path, findings: Findings) -> Settings | 
             "correct the line; text stands in quotes, a key with blanks too",
         )
         return None
+    except ValueError as error:  # Python turns a number of thousands of digits away
+        _broken(findings, name, f"{error!s:.60}", "correct the number that is too long to be one")
+        return None
     except RecursionError:
         _broken(findings, name, "brackets nested too deeply", "write the settings as the how-to shows")
         return None
