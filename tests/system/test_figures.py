@@ -16,7 +16,7 @@ from tests.system.test_surface import RATES, scan, spectrum, write_day
 
 import coulombook
 from coulombook.cli import main
-from coulombook.figures import KINDS, data_of, drawings_of
+from coulombook.figures import FORMATS, KINDS, data_of, drawings_of, rendered
 from coulombook.report.tables import original_text
 
 ROOT = Path(__file__).parents[2]
@@ -243,3 +243,30 @@ def test_the_help_names_every_kind_of_figure(capsys: pytest.CaptureFixture[str])
     assert main(["figures", "--help"]) == 0
     told = capsys.readouterr().out
     assert all(re.search(rf"^  {kind}  +\S", told, re.MULTILINE) for kind in KINDS)
+
+
+def test_the_command_offers_every_format_there_is() -> None:
+    from coulombook.cli.commands.figures import FORMATS as OFFERED
+
+    assert OFFERED == FORMATS
+
+
+def test_the_picture_of_the_document_says_what_the_example_day_gives() -> None:
+    book = coulombook.tally(
+        ROOT / "example_experiments" / "2043-05-18-mesh-foil-foam", calibrations=[ROOT / "calibrations"]
+    )
+    (one,) = [each for each in drawings_of(book, frozenset({"fe"})) if each.name == "fe-annealed-copper-mesh"]
+    sheet = one.draw(None, 85.0).get_figure(root=True)
+    assert sheet is not None
+    shown = ET.parse(ROOT / "docs" / "images" / f"{one.name}.svg").getroot()
+    drawn = ET.fromstring(rendered(sheet, "svg", title=one.title, description=one.caption))
+    # texts and ids, not coordinates, which another version of a library may round otherwise
+    for told in (
+        lambda each: each.text if each.tag.endswith("text") else None,
+        lambda each: mark_of(each.get("id")),
+    ):
+        assert [told(each) for each in shown.iter()] == [told(each) for each in drawn.iter()]
+
+
+def mark_of(name: str | None) -> str | None:
+    return name if name and name.startswith("fe") and ":" in name else None
