@@ -36,7 +36,7 @@ def book_of(options: argparse.Namespace) -> Book | int:
         tell_findings(faults.findings)
         say(f"coulombook: {faults_in_words(faults)}")
         return FAULTS
-    except (FileNotFoundError, NotADirectoryError, PermissionError) as error:
+    except OSError as error:
         return refuse(plain_words(error))
 
 
@@ -50,9 +50,13 @@ def missing(day: Path | None, calibrations: Iterable[Path]) -> str | None:
     """Why a folder that was named cannot be read; None where all are there."""
     folders = [("day", day)] if day is not None else []
     for what, folder in (*folders, *(("calibrations", one) for one in calibrations)):
-        if not folder.is_dir():
+        try:
+            if folder.is_dir():
+                continue
             state = "is a file, not a folder" if folder.exists() else "does not exist"
-            return f"the folder of the {what}, '{folder}', {state}"
+        except OSError as error:  # a drive that is gone
+            state = f"cannot be read: {error.strerror or error}"
+        return f"the folder of the {what}, '{folder}', {state}"
     return None
 
 

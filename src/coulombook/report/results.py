@@ -1,16 +1,9 @@
-"""Write the results folder, whole or not at all.
-
-Everything is written into a folder beside the final one and flushed to the disk; only then does it take the
-final name. A results folder that is there already steps aside first and comes back if the exchange fails,
-so that at every moment either the old results or the new ones are whole on the disk.
-"""
+"""Write the results folder, whole or not at all (`coulombook.report.exchange`), and nothing but a folder of ours."""
 
 from __future__ import annotations
 
 import os
-import shutil
 from collections.abc import Mapping
-from contextlib import suppress
 from datetime import UTC, datetime
 from fnmatch import fnmatch
 from pathlib import Path
@@ -18,6 +11,8 @@ from pathlib import Path
 from coulombook.book import TABLES, Book, Table
 from coulombook.report.datapackage import NAME as DATAPACKAGE
 from coulombook.report.datapackage import datapackage_text
+from coulombook.report.exchange import replace_folder
+from coulombook.report.lock import BusyError
 from coulombook.report.manifest import NAME as MANIFEST
 from coulombook.report.manifest import RESULTS, manifest_text, read_manifest
 from coulombook.report.tables import csv_text
@@ -69,18 +64,16 @@ def write_folder(
     ``holds`` says what they are; a folder is only replaced by one that holds the same.
     """
     check_destination(out, holds)
-    target = _real(out)
     when = created or datetime.now(UTC)
+    # the manifest last: a folder that has one is whole
     files = {**files, MANIFEST: manifest_text(book, files, when, holds).encode("utf-8")}
-    fresh = _sibling(target, "new")
     try:
-        try:
-            target.parent.mkdir(parents=True, exist_ok=True)
-            _fill(fresh, files)
-            _exchange(target, fresh)
-        finally:
-            # after the exchange there is nothing of that name left to remove
-            shutil.rmtree(fresh, ignore_errors=True)
+        replace_folder(_real(out), files, lambda folder: _check(folder, out, holds))
+    except BusyError as error:
+        raise ResultsError(
+            f"the {holds} folder '{out}' is being written by {error.holder}, which took longer than "
+            f"{error.patience_second:g} s; try again when that has ended, or give another --out"
+        ) from error
     except OSError as error:
         raise ResultsError(
             f"the {holds} cannot be written to '{out}': {error.strerror or error}; "
@@ -100,7 +93,11 @@ def result_files(book: Book, *, tables_only: bool = False) -> dict[str, bytes]:
 
 def check_destination(out: Path, holds: str = RESULTS) -> None:
     """Raise `ResultsError` unless ``out`` is absent, empty, or a folder of results (or figures) as it was written."""
-    target = _real(out)
+    _check(_real(out), out, holds)
+
+
+def _check(target: Path, out: Path, holds: str) -> None:
+    """See `check_destination`; ``target`` is the folder looked at, ``out`` the one that is spoken of."""
     if not os.path.lexists(target):
         return
     if not target.is_dir():
@@ -170,48 +167,6 @@ def findings_table(book: Book) -> Table:
     )
 
 
-def _fill(folder: Path, files: Mapping[str, bytes]) -> None:
-    folder.mkdir()
-    for name, content in files.items():
-        with open(folder / name, "xb") as stream:
-            stream.write(content)
-            stream.flush()
-            os.fsync(stream.fileno())
-    _flush_folder(folder)
-
-
-def _exchange(target: Path, fresh: Path) -> None:
-    if not os.path.lexists(target):
-        os.rename(fresh, target)
-    else:
-        aside = _sibling(target, "old")
-        os.rename(target, aside)
-        try:
-            os.rename(fresh, target)
-        except BaseException:
-            os.rename(aside, target)
-            raise
-        # the new results are in place: what cannot be removed of the old ones harms nothing
-        shutil.rmtree(aside, ignore_errors=True)
-    _flush_folder(target.parent)
-
-
-def _flush_folder(folder: Path) -> None:
-    """Bring the names in a folder to the disk, where a folder can be opened for that (not on Windows)."""
-    with suppress(OSError):
-        handle = os.open(folder, os.O_RDONLY)
-        try:
-            os.fsync(handle)
-        finally:
-            os.close(handle)
-
-
 def _real(out: Path) -> Path:
     # a link is followed: the folder it points to is replaced, not the link
     return Path(os.path.realpath(out))
-
-
-def _sibling(target: Path, word: str) -> Path:
-    # a random name, so that two tallies of one day never share it; mkdir with the usual rights, unlike
-    # tempfile's
-    return target.with_name(f".{target.name}.{os.urandom(4).hex()}.{word}")

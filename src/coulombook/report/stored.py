@@ -12,6 +12,7 @@ from pathlib import Path
 from coulombook.book import TABLES, Book, Cell, InputFile, Table
 from coulombook.book.columns import Column, Kind, about_tables
 from coulombook.findings import Finding, Severity
+from coulombook.report.exchange import restored
 from coulombook.report.manifest import NAME as MANIFEST
 from coulombook.report.manifest import Written, read_manifest
 from coulombook.report.tables import original_text
@@ -23,20 +24,27 @@ class StoredError(Exception):
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Stored:
-    """A results folder: where it lies, what its manifest says, and which files are not as they were written."""
+    """A results folder: where it lies, what its manifest says, and which files are not as they were written.
+
+    ``interrupted`` says that a tally was killed while it replaced these results; they are those of before.
+    """
 
     folder: Path
     manifest: Written
     changed: tuple[str, ...]
     missing: tuple[str, ...]
+    interrupted: bool = False
 
 
-def find_results(path: Path) -> Path:
-    """The results folder meant by a path: itself, or ``results`` within a day folder."""
-    if (path / MANIFEST).is_file():
-        return path
-    if (path / "results" / MANIFEST).is_file():
-        return path / "results"
+def find_results(path: Path) -> tuple[Path, bool]:
+    """The results folder meant by a path (itself, or ``results`` within a day folder), and whether it stood aside.
+
+    It stands aside when a tally was killed while it replaced it; see `coulombook.report.exchange`.
+    """
+    for place in (path, path / "results"):
+        folder, aside = restored(place)
+        if (folder / MANIFEST).is_file():
+            return folder, aside
     if not path.is_dir():
         state = "is a file, not a folder" if path.exists() else "does not exist"
         raise StoredError(f"the folder '{path}' {state}")
@@ -53,7 +61,7 @@ def open_results(path: Path) -> Stored:
     StoredError
         There are none, or their manifest cannot be read.
     """
-    folder = find_results(path)
+    folder, interrupted = find_results(path)
     manifest = read_manifest(folder)
     if manifest is None:
         raise StoredError(f"'{folder / MANIFEST}' is no manifest of coulombook, or is damaged")
@@ -66,7 +74,7 @@ def open_results(path: Path) -> Stored:
             continue
         if hashlib.sha256(content).hexdigest() != digest:
             changed.append(name)
-    return Stored(folder, manifest, tuple(changed), tuple(missing))
+    return Stored(folder, manifest, tuple(changed), tuple(missing), interrupted)
 
 
 def read_book(stored: Stored) -> Book:

@@ -24,7 +24,7 @@ def run(options: argparse.Namespace) -> int:
         return refuse(problem)
     try:
         checked = check(day, calibrations=calibrations)
-    except (FileNotFoundError, NotADirectoryError, PermissionError) as error:
+    except OSError as error:
         return refuse(plain_words(error))
     with quiet_pipe():
         show_check(checked.lines, checked.findings, console_for(sys.stdout))

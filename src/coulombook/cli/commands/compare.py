@@ -61,7 +61,7 @@ def run(options: argparse.Namespace) -> int:
         return FAULTS
     except (ComparisonError, ResultsError) as error:
         return refuse(str(error))
-    except (FileNotFoundError, NotADirectoryError, PermissionError) as error:
+    except OSError as error:
         return refuse(plain_words(error))
     with quiet_pipe():
         show_comparison(comparison, console_for(sys.stdout), written=written)

@@ -71,6 +71,8 @@ def _print(book: Book, stored: Stored, options: argparse.Namespace) -> None:
 
 
 def _warn(stored: Stored) -> None:
+    if stored.interrupted:
+        say("coulombook: a tally was interrupted while it replaced these results; they are those of before")
     for words, names in (("changed", stored.changed), ("removed", stored.missing)):
         if names:
             say(f"coulombook: {words} since the results were written: {', '.join(names)}")

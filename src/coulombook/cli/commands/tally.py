@@ -55,7 +55,7 @@ def run(options: argparse.Namespace) -> int:
         return FAULTS
     except ResultsError as error:
         return refuse(str(error))
-    except (FileNotFoundError, NotADirectoryError, PermissionError) as error:
+    except OSError as error:
         return refuse(plain_words(error))
     if options.plain:
         from coulombook.report.table_view import print_plain
