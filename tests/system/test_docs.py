@@ -248,6 +248,7 @@ SECTIONS_OF_SETTINGS = {
     "[liquid]": "liquid",
     "[surface]": "surface",
     "[balance]": "balance",
+    "[kinetics]": "kinetics",
     "[read.traces]": "read.traces",
     "[[uncertainty]]": "uncertainty#1",
     "[species.NAME]": "species.butanol",
@@ -272,7 +273,7 @@ def test_day_folder_lists_every_key_of_a_section(
     assert sorted(listed) == sorted(map(fold, asked[SECTIONS_OF_SETTINGS[heading]]))
 
 
-@pytest.mark.parametrize("heading", ["[gas]", "[liquid]", "[surface]", "[balance]"])
+@pytest.mark.parametrize("heading", ["[gas]", "[liquid]", "[surface]", "[balance]", "[kinetics]"])
 def test_defaults_of_the_day_folder_are_those_of_the_code(heading: str, tmp_path: Path) -> None:
     rows = table(section(text_of("docs/day_folder.md"), heading))
     given = [
