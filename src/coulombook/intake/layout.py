@@ -309,9 +309,10 @@ def _factors(
                 factors[quantity] = 1.0  # each cell brings its own
                 continue
         try:
-            factors[quantity] = _factor(column, unit if unit is not None else below)
-            if unit is not None and below is not None and _factor(column, below) != factors[quantity]:
+            factor = _factor(column, unit if unit is not None else below)
+            if unit is not None and below is not None and _factor(column, below) != factor:
                 raise UnitError("unknown-unit", f"{unit}' and '{below}", "one unit for a column", None)
+            factors[quantity] = factor
         except UnitError as error:
             hint = f"; did you mean '{error.suggestion}'?" if error.suggestion else ""
             deceit = lookalike(unit or "")
