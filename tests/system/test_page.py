@@ -164,8 +164,10 @@ class _Tables(HTMLParser):
         ("Replicates pooled: one line per catalyst, level and product", "series"),
         ("Capacitance of each electrode", "surface"),
         ("Curves that were used", "calibrations"),
-        ("carbon", "carbon"),
-        ("efficiencies", "efficiencies"),
+        ("Carbon: where the CO2 went", "carbon"),
+        ("Carbon and energy efficiency of each product", "efficiencies"),
+        ("Kinetics: Tafel slopes and onsets", "kinetics"),
+        ("Change in the course of each run", "stability"),
     ],
 )
 def test_a_table_of_the_page_agrees_with_that_of_the_files(

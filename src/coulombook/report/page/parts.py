@@ -16,13 +16,22 @@ from coulombook.report.page.provenance import show_provenance
 from coulombook.report.page.runs import show_runs
 from coulombook.report.page.tables import Column, Datum, book_table, show_table, text_datum
 from coulombook.report.page.verdict import show_verdicts
-from coulombook.report.page.words import sentence, typeset
+from coulombook.report.page.words import counted, sentence, typeset
 from coulombook.report.pivot import CatalystTable, catalyst_tables
 
 MOST_ROWS = 3000  # of one table; a longer one is left to its file
 # tables that stand in a part of their own, or whose rows stand with their runs
 _PLACED = ("summary", "ledger", "injections", "budget", "closure", "findings", "explanations", "cautions", "series",
            "surface", "spectra", "calibrations")  # fmt: skip
+_COMPARED = ("kinetics", "stability")
+_HEADINGS = {
+    "kinetics": "Kinetics: Tafel slopes and onsets",
+    "stability": "Change in the course of each run",
+    "carbon": "Carbon: where the CO2 went",
+    "efficiencies": "Carbon and energy efficiency of each product",
+    "intervals": "Coverage intervals by random draws",
+    "reconciliation": "Readings adjusted to their balance",
+}
 _NOT_SHOWN = "Its rows stand in {name}.csv alone: there are {rows} of them."
 
 
@@ -166,15 +175,25 @@ def _surface(book: Book, drawings: Drawings) -> Html | None:
 
 
 def _comparison(book: Book) -> Html | None:
-    return _whole(book.tables["series"], "Replicates pooled: one line per catalyst, level and product")
+    series = _whole(book.tables["series"], "Replicates pooled: one line per catalyst, level and product")
+    return join(series, [_folded_table(book.tables[name]) for name in _COMPARED if name in book.tables])
+
+
+def _folded_table(table: Table) -> Html | None:
+    heading = _HEADINGS.get(table.name, table.name)
+    shown = _whole(table, heading)
+    if shown is None:
+        return None
+    return element("details", element("summary", f"{heading} ({counted(len(table), 'row')})"), shown)
 
 
 def _further(book: Book, drawings: Drawings) -> Html | None:
     """Tables and figures that no other part shows, so that a new one appears by itself."""
+    placed = {*_PLACED, *_COMPARED}
     tables = [
-        element("details", element("summary", f"{name} ({len(table)} rows)"), shown)
+        shown
         for name, table in book.tables.items()
-        if name not in _PLACED and (shown := _whole(table, name)) is not None
+        if name not in placed and (shown := _folded_table(table)) is not None
     ]
     rest = grid_of(drawings.rest())
     return join(tables, rest) if tables or rest else None

@@ -63,12 +63,13 @@ def simplified(line: list[Point], tolerance: float = _TOLERANCE) -> list[Point]:
         first, last = stack.pop()
         (x0, y0), (x1, y1) = line[first], line[last]
         dx, dy = x1 - x0, y1 - y0
-        length = (dx * dx + dy * dy) ** 0.5
+        square = dx * dx + dy * dy
         far, place = tolerance, None
         for one in range(first + 1, last):
             x, y = line[one][0] - x0, line[one][1] - y0
-            # from the chord, or from its one point where it begins where it ends
-            off = abs(x * dy - y * dx) / length if length else (x * x + y * y) ** 0.5
+            # from the nearest point of the chord
+            at = min(max((x * dx + y * dy) / square, 0.0), 1.0) if square else 0.0
+            off = ((x - at * dx) ** 2 + (y - at * dy) ** 2) ** 0.5
             if off > far:
                 far, place = off, one
         if place is not None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
+from typing import TypedDict
 
 import numpy as np
 
@@ -32,6 +33,11 @@ def show_runs(book: Book) -> Html:
     )
 
 
+class _Like(TypedDict):
+    like: str
+    titled: bool
+
+
 class _Parts:
     """Rows of the tables by run, gathered once, and the liquid readings."""
 
@@ -41,7 +47,13 @@ class _Parts:
             for name in ("ledger", "injections", "budget")
             if name in book.tables
         }
+        self._kinds: dict[str, int] = {}
         self.liquid = _Liquid(book.settled) if book.settled is not None else None
+
+    def like(self, kind: str) -> _Like:
+        """The first table of a kind says what its heads mean."""
+        self._kinds[kind] = self._kinds.get(kind, 0) + 1
+        return {"like": kind, "titled": self._kinds[kind] == 1}
 
     def of(self, table: str, run: str) -> list[Row]:
         """Rows of a run."""
@@ -61,14 +73,14 @@ def _show_run(book: Book, row: Row, parts: _Parts) -> Html:
     of_run = [
         show_trace(book, run),
         _heading("Products", book_table(
-            book.tables["ledger"], "", rows=parts.of("ledger", run), name=f"products of run {run}", quiet=True,
-            leave_out=("run", "catalyst", "electrode", "level", "E vs RHE / V", "electrons"),
+            book.tables["ledger"], "", rows=parts.of("ledger", run), name=f"products of run {run}",
+            leave_out=("run", "catalyst", "electrode", "level", "E vs RHE / V", "electrons"), **parts.like("products"),
         )),
         _heading("Gas readings", book_table(
             book.tables["injections"], "", rows=parts.of("injections", run), name=f"gas readings of run {run}",
-            quiet=True, leave_out=("run",),
+            leave_out=("run",), **parts.like("gas"),
         )),
-        _heading("Liquid readings", parts.liquid.show(run) if parts.liquid else None),
+        _heading("Liquid readings", parts.liquid.show(run, **parts.like("liquid")) if parts.liquid else None),
         _heading("Where the uncertainty comes from", _budget(run, parts.of("budget", run))),
     ]  # fmt: skip
     return element(
@@ -112,7 +124,7 @@ class _Liquid:
         for signal, number in zip(liquid.signals, liquid.signal_analyte.tolist(), strict=True):
             self._signals.setdefault(number, []).append(signal.signal)
 
-    def show(self, run: str) -> Html | None:
+    def show(self, run: str, like: str, titled: bool) -> Html | None:
         """The readings of a run's vials, blanks taken off."""
         numbers = self._of_run.get(run, [])
         if not numbers:
@@ -141,7 +153,7 @@ class _Liquid:
             Column("volume / mL", [_millilitres(vial.compartment_volume_m3) for vial in vials]),
             Column("aliquot / mL", [_millilitres(vial.aliquot_m3) for vial in vials]),
         ]
-        return show_table("", columns, name=f"liquid readings of run {run}", quiet=True)
+        return show_table("", columns, name=f"liquid readings of run {run}", like=like, titled=titled)
 
 
 def _millilitres(volume_m3: float | None) -> Datum:
@@ -169,11 +181,7 @@ def _budget(run: str, rows: Sequence[Row]) -> Html | None:
         Column("source", [text_datum(source) for source, _ in kept], numeric=False),
         Column("shared by", [text_datum(shared) for _, shared in kept], numeric=False),
         *(
-            Column(
-                output,
-                [_share(share[key].get(output)) for key in kept],
-                meaning="share of the variance in per cent",
-            )
+            Column(output, [_share(share[key].get(output)) for key in kept], shares=True)
             for output in outputs
         ),
     ]

@@ -1,9 +1,12 @@
 // Tables sort by any column and copy as tab-separated values, both from the full figures behind the cells.
 
+/** Whether a cell stands in a column of figures. */
+const numeric = (cell) => cell.closest("table").tHead.rows[0].cells[cell.cellIndex].classList.contains("n");
+
 /** The figure behind a cell; where there is none, the one it shows. */
 const figureOf = (cell) => {
   if (cell.dataset.v !== undefined) return Number(cell.dataset.v);
-  const shown = cell.classList.contains("n") ? Number.parseFloat(cell.textContent.replace("\u2212", "-").replace("<", "")) : NaN;
+  const shown = numeric(cell) ? Number.parseFloat(cell.textContent.replace("\u2212", "-").replace("<", "")) : NaN;
   return Number.isNaN(shown) ? null : shown;
 };
 
@@ -40,7 +43,7 @@ const asText = (table) => {
   const line = heads.flatMap((head) => [head.dataset.h, ...(head.dataset.uh ? [head.dataset.uh] : [])]);
   const rows = [...table.tBodies[0].rows].map((row) =>
     [...row.cells].flatMap((cell, place) => {
-      const shown = cell.classList.contains("n") ? cell.textContent.replaceAll("\u2212", "-") : cell.textContent;
+      const shown = numeric(cell) ? cell.textContent.replaceAll("\u2212", "-") : cell.textContent;
       const word = absent(cell) ? "" : cell.dataset.v ?? cell.dataset.c ?? shown;
       return [word, ...(heads[place].dataset.uh ? [cell.dataset.u ?? ""] : [])];
     }),
@@ -62,6 +65,16 @@ const copy = async (text) => {
     if (!done) throw new Error("the browser does not allow copying");
   }
 };
+
+// what a head means is said in the first of tables that are alike
+const meanings = new Map();
+for (const table of document.querySelectorAll("table[data-like]")) {
+  for (const head of table.tHead.rows[0].cells) {
+    const key = `${table.dataset.like} ${head.dataset.h}`;
+    if (head.title) meanings.set(key, head.title);
+    else head.title = meanings.get(key) ?? "";
+  }
+}
 
 for (const table of document.querySelectorAll(".scroll > table")) {
   const heads = [...table.tHead.rows[0].cells];

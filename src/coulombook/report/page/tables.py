@@ -44,6 +44,7 @@ class Column:
     u_head: str = ""
     meaning: str = ""
     numeric: bool = True
+    shares: bool = False  # of one decimal, in a table that holds nothing else: what is shown is all there is
 
 
 def text_datum(cell: Cell) -> Datum:
@@ -96,28 +97,40 @@ def columns_of(table: Table, rows: Sequence[Row], leave_out: Iterable[str] = ())
     return columns
 
 
-def show_table(caption: Html | str, columns: Sequence[Column], *, name: str, quiet: bool = False) -> Html:
+def show_table(
+    caption: str, columns: Sequence[Column], *, name: str = "", like: str = "", titled: bool = True
+) -> Html:
     """A table with its caption; the first column heads the rows.
 
-    ``name`` is that of the data, for the label of the region that scrolls; ``quiet`` shows the caption to screen
-    readers alone, where the heading above says the same.
+    Without a caption the ``name`` is one for screen readers, where the heading above says the same. Tables that are
+    ``like`` one another say what their heads mean only where they are ``titled``: the script lets the others take it
+    from there.
     """
-    heads = element("tr", (_head(column) for column in columns))
+    heads = element("tr", (_head(column, titled) for column in columns))
     rows = zip(*(column.cells for column in columns), strict=True)
     body = element("tbody", (_row(columns, row) for row in rows))
     return element(
         "div",
         element(
             "table",
-            element("caption", caption, class_="unseen" if quiet else None),
+            element("caption", caption or name, class_=None if caption else "unseen"),
             element("thead", heads),
             body,
-            class_="wide" if len(columns) > _MANY else None,
+            class_=" ".join(
+                kind
+                for kind, holds in (
+                    ("wide", len(columns) > _MANY),
+                    ("shares", any(column.shares for column in columns)),
+                )
+                if holds
+            )
+            or None,
+            data_like=like or None,
         ),
         class_="scroll",
         role="region",
         tabindex=0,
-        aria_label=f"table: {name}",
+        aria_label=f"table: {name or caption}",
     )
 
 
@@ -128,18 +141,17 @@ def book_table(
     rows: Sequence[Row] | None = None,
     leave_out: Iterable[str] = (),
     name: str = "",
-    quiet: bool = False,
+    like: str = "",
+    titled: bool = True,
 ) -> Html | None:
     """A table of the book, or some of its rows; None where there are none."""
     rows = list(table.records()) if rows is None else rows
     if not rows:
         return None
-    return show_table(
-        caption, columns_of(table, rows, leave_out), name=name or caption or table.name, quiet=quiet
-    )
+    return show_table(caption, columns_of(table, rows, leave_out), name=name, like=like, titled=titled)
 
 
-def _head(column: Column) -> Html:
+def _head(column: Column, titled: bool) -> Html:
     quantity, unit = parted(column.head)
     return element(
         "th",
@@ -147,7 +159,7 @@ def _head(column: Column) -> Html:
         join(" ", element("span", unit, class_="unit")) if unit else None,
         scope="col",
         class_="n" if column.numeric else None,
-        title=column.meaning or None,
+        title=(column.meaning or None) if titled else None,
         data_h=column.head,
         data_uh=column.u_head or None,
     )
@@ -166,7 +178,8 @@ def _row(columns: Sequence[Column], row: Sequence[Datum]) -> Html:
 def _cell(column: Column, datum: Datum, *, first: bool) -> Html:
     if column.numeric:
         # a cell with a figure is set to the right by that alone
-        kind = " ".join(one for one in ("" if datum.value is not None else "n", datum.kind) if one)
+        right = "" if datum.value is not None or column.shares else "n"
+        kind = " ".join(one for one in (right, datum.kind) if one)
         return element(
             "td",
             datum.shown,

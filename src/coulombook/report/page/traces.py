@@ -26,7 +26,7 @@ from coulombook.report.page.words import MINUS
 
 _STEPS = 65535
 _WIDTH, _PANEL, _GAP, _LEFT, _RIGHT, _FOOT = 900, 110, 16, 62, 14, 22
-_STRETCHES = 140  # of the small drawing
+_STRETCHES = 100  # of the small drawing
 _LEAST_SPAN = 0.04  # of the larger end
 _CURRENT, _POTENTIAL = ("lowest I / mA", "highest I / mA"), ("lowest E / V", "highest E / V")
 
