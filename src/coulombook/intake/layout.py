@@ -113,7 +113,7 @@ def _layout_below(
     sample = [(number, text.split_line(line, separator)) for number, line in numbered[: _SAMPLE + 1]]
     units_row: int | None = None
     units: tuple[str, ...] = ()
-    if sample and _is_units(sample[0][1], columns, table):
+    if sample and is_units(sample[0][1], columns, table):
         units_row, units = sample[0][0], tuple(sample[0][1])
         sample, numbered = sample[1:], numbered[1:]
     below = [line for _, line in numbered[:_SAMPLE]]
@@ -261,7 +261,7 @@ def _unit_in(cell: str) -> str:
     return bracket[1] if bracket else cell
 
 
-def _is_units(cells: Sequence[str], columns: Mapping[str, int], table: Schema) -> bool:
+def is_units(cells: Sequence[str], columns: Mapping[str, int], table: Schema) -> bool:
     """Whether a row under the heads is one of units: each column read has one that its quantity may have."""
     found = 0
     for quantity, place in columns.items():

@@ -22,7 +22,7 @@ from coulombook.findings import Findings, Origin
 from coulombook.intake import text
 from coulombook.intake.clock import StampSecond, Times, clock_second, has_two_parts
 from coulombook.intake.files import unreadable
-from coulombook.intake.layout import Layout, quantity_of, score_of
+from coulombook.intake.layout import Layout, is_units, quantity_of, score_of
 from coulombook.intake.limits import LARGEST_UNTIDY_LOG_BYTE, LONGEST_LINE
 from coulombook.intake.numbers import (
     Habit,
@@ -76,6 +76,7 @@ class Patient:
     sure_signs: set[str] = field(default_factory=set)
     faults: dict[str, Told] = field(default_factory=dict)  # by quantity
     overlong: Told | None = None
+    other_heads: Told | None = None  # heads or units that are not those of the first block
     cut: Told | None = None  # a last line without its end
     ended_early: bool = False  # after so many faults that nobody reads on
     first_stamp: datetime | None = None
@@ -252,6 +253,9 @@ class _Reader:
         if layout.units and [*cells] == [*layout.units][: len(cells)]:
             found.repeated = _told(found.repeated, number)
             return
+        if score_of(cells, self._table, self._options) == 1 or is_units(cells, layout.columns, self._table):
+            found.other_heads = _told(found.other_heads, number, layout.separator.join(cells))
+            return
         read_cells = [cells[place] if place < len(cells) else "" for _, place in self._columns]
         first = next(filter(None, cells), "")
         if first.startswith(COMMENT_SIGNS) or not any(map(is_like_a_number, read_cells)):
@@ -325,12 +329,7 @@ class _Reader:
                     found.faults[quantity] = _told(found.faults.get(quantity), number, cell)
 
     def _are_heads(self, cells: Sequence[str]) -> bool:
-        """Whether a row repeats the heads; heads that place the columns otherwise are a fault by their cells."""
-        width = len(self._heads)
-        if [_folded(cell) for cell in cells[:width]] == self._heads[: len(cells)] and len(cells) >= max(
-            place for _, place in self._columns
-        ) + 1:
-            return True
+        """Whether a row repeats the heads, or those of the columns that are read at their places."""
         if score_of(cells, self._table, self._options) < 1:
             return False
         return all(
@@ -384,6 +383,16 @@ def _report_faults(
             "write decimals with a point, or put semicolons between the cells",
             found=f"{read.overlong.example}{more}",
             expected=f"{len(layout.heads)} cells",
+        )
+        return True
+    if read.other_heads is not None:
+        findings.add(
+            "unreadable-file",
+            Origin(name, None, read.other_heads.first),
+            "the heads or units change within the file",
+            "keep one log a file, or give its blocks the same columns",
+            found=quoted(read.other_heads.example),
+            expected=quoted(layout.separator.join(layout.heads)) + " throughout",
         )
         return True
     unsure = {} if decimal_is_told else {

@@ -137,12 +137,20 @@ def test_second_log_that_begins_at_zero_again_is_a_fault(read: Read) -> None:
     assert "one log a file" in fault.mend
 
 
-def test_blocks_with_their_columns_in_another_order_are_a_fault(read: Read) -> None:
-    other = "t / s;I / mA;E / V\n"
-    trace, findings = read(HEADS + ROWS[0] + other + "0.5;-10;-1.25\n2;0;-1.5\n")
-    assert trace is None or [
-        one for one in findings if one.kind == "lines-passed-over" and "repeated" not in one.text
-    ]
+@pytest.mark.parametrize(
+    ("block", "row"),
+    [
+        ("t / s;I / mA;E / V\n0.5;-10;-1.25\n2;0;-1.5\n", 3),  # another order
+        ("t / s;E / V;I / A\n0.5;-1.25;-0.01\n2;-1.5;0\n", 3),  # another unit
+        (HEADS + "s;mV;mA\n0.5;-1250;-10\n2;-1500;0\n", 4),
+    ],
+)
+def test_block_with_other_columns_or_units_is_a_fault(read: Read, block: str, row: int) -> None:
+    trace, findings = read(HEADS + ROWS[0] + block)
+    assert trace is None
+    (fault,) = [one for one in findings if one.severity is Severity.STOP]
+    assert (fault.kind, fault.where) == ("unreadable-file", f"a.csv, row {row}")
+    assert fault.text == "the heads or units change within the file"
 
 
 def test_text_in_a_reading_is_a_fault_and_no_line_to_pass_over(read: Read) -> None:
