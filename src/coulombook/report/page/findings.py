@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 
 from coulombook.findings import KINDS, Finding, Severity
 from coulombook.report.page.html import Html, element, join
@@ -26,22 +26,11 @@ def show_findings(findings: Iterable[Finding]) -> Html:
 
 
 def _show_kind(same: Sequence[Finding]) -> Html:
-    """Findings of one kind; equal texts at several places stand together, a common advice once."""
+    """Findings of one kind: equal texts at several places stand together, and below them the advice they share."""
     first = same[0]
-    texts: dict[tuple[str, str], list[Finding]] = {}
+    groups: dict[str, dict[str, list[Finding]]] = {}
     for one in same:
-        texts.setdefault((one.text, one.mend), []).append(one)
-    advice = {one.mend for one in same}
-    entries = [
-        element(
-            "li",
-            element("span", _places(alike), class_="where"),
-            join(" ", text) if text else None,
-            _other_places(alike),
-            _advice(mend) if len(advice) > 1 else None,
-        )
-        for (text, mend), alike in texts.items()
-    ]
+        groups.setdefault(one.mend, {}).setdefault(one.text, []).append(one)
     return element(
         "section",
         element(
@@ -51,16 +40,28 @@ def _show_kind(same: Sequence[Finding]) -> Html:
             _sentence(KINDS[first.kind][1] if first.kind in KINDS else first.kind),
             element("span", counted(len(same), "place"), class_="count") if len(same) > 1 else None,
         ),
-        element("ul", entries[:FOLDED_BEYOND]),
-        element(
-            "details",
-            element("summary", f"and {len(entries) - FOLDED_BEYOND} more"),
-            element("ul", entries[FOLDED_BEYOND:]),
-        )
-        if len(entries) > FOLDED_BEYOND
-        else None,
-        _advice(first.mend) if len(advice) == 1 else None,
+        (join(_entries(texts), _advice(mend)) for mend, texts in groups.items()),
         class_=f"finding {first.severity}",
+    )
+
+
+def _entries(texts: Mapping[str, Sequence[Finding]]) -> Html:
+    """One entry per text; a long list is folded behind its first ones."""
+    entries = [
+        element(
+            "li",
+            element("span", _places(alike), class_="where"),
+            f" {text}" if text else None,
+            _other_places(alike),
+        )
+        for text, alike in texts.items()
+    ]
+    more = len(entries) - FOLDED_BEYOND
+    return join(
+        element("ul", entries[:FOLDED_BEYOND]),
+        element("details", element("summary", f"and {more} more"), element("ul", entries[FOLDED_BEYOND:]))
+        if more > 0
+        else None,
     )
 
 
