@@ -22,9 +22,11 @@ Rows = list[tuple[int, Sequence[Cell]]]
 _ERROR_CELLS = frozenset(
     ("#DIV/0!", "#REF!", "#N/A", "#NAME?", "#NULL!", "#NUM!", "#VALUE!", "#SPILL!", "#CALC!", "#GETTING_DATA")
 )
-_MERGED = re.compile(rb'<(?:[\w.-]+:)?mergeCell\s[^<>]*?ref="([A-Z]{1,3})(\d{1,7}):([A-Z]{1,3})(\d{1,7})"')
-_HIDDEN_ROW = re.compile(rb'<(?:[\w.-]+:)?row\s[^<>]*?\shidden="(?:1|true)"')
-_HIDDEN_COLUMN = re.compile(rb'<(?:[\w.-]+:)?col\s[^<>]*?\shidden="(?:1|true)"')
+_MERGED = re.compile(
+    rb'<(?:[\w.-]+:)?mergeCell(?=\s)[^<>]*?\sref="([A-Z]{1,3})(\d{1,7}):([A-Z]{1,3})(\d{1,7})"'
+)
+_HIDDEN_ROW = re.compile(rb'<(?:[\w.-]+:)?row(?=\s)[^<>]*?\shidden="(?:1|true)"')
+_HIDDEN_COLUMN = re.compile(rb'<(?:[\w.-]+:)?col(?=\s)[^<>]*?\shidden="(?:1|true)"')
 
 
 @dataclass(frozen=True, slots=True)
@@ -233,7 +235,7 @@ def _looks(data: bytes, read: _Read) -> dict[str, Look]:
                 count = len(pattern.findall(content))
                 if count:
                     hidden.append(f"{count} {one}{'s' if count > 1 else ''}")
-            looks[title] = Look(merged, tuple(hidden))
+            looks[title] = Look(tuple(sorted(merged, key=lambda one: (one.top, one.left))), tuple(hidden))
     return looks
 
 
