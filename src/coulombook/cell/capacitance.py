@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import itertools
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -210,15 +211,22 @@ def _sweep_mean(cycle: Cycle, sign: float, low: float, high: float) -> tuple[flo
     return (float(area[0] / width[0]) if width[0] else math.nan), abs(float(width[0])) / (high - low)
 
 
-def _sweep_means(cycle: Cycle, sign: float, edges: FloatArray) -> FloatArray:
+def _sweep_means(cycle: Cycle, sign: float, low: FloatArray, high: FloatArray) -> FloatArray:
+    """Mean current of one sweep in each stretch, (n_stretches,)."""
     # as many stretches at once as fit into some ten megabytes
     at_once = max(1, 1_000_000 // max(cycle.direction.size, 1))
-    parts = []
-    for first in range(0, edges.size - 1, at_once):
-        held = edges[first : first + at_once + 1]
-        area, width = _sweep_integrals(cycle, sign, held[:-1], held[1:])
-        parts.append(np.divide(area, width, out=np.full_like(area, math.nan), where=width != 0.0))
+    parts = [
+        _mean_current(
+            *_sweep_integrals(cycle, sign, low[first : first + at_once], high[first : first + at_once])
+        )
+        for first in range(0, low.size, at_once)
+    ]
     return np.concatenate(parts)
+
+
+def _mean_current(area: FloatArray, width: FloatArray) -> FloatArray:
+    """NaN where a sweep does not come by."""
+    return np.divide(area, width, out=np.full_like(area, math.nan), where=width != 0.0)
 
 
 def _sweep_integrals(
@@ -244,16 +252,24 @@ class Band:
     common_ampere: float  # half their sum: leakage, and every current that both carry
 
 
+def bands(cycle: Cycle, stretches: Sequence[tuple[float, float]]) -> list[Band]:
+    """Both sweeps averaged over stretches of potential by trapezoids, with straight lines to their ends."""
+    low, high = np.array(stretches, dtype=float).T
+    rising, falling = (_sweep_means(cycle, sign, low, high) for sign in (1.0, -1.0))
+    return [
+        Band(0.5 * (up - down), 0.5 * (up + down))
+        for up, down in zip(rising.tolist(), falling.tolist(), strict=True)
+    ]
+
+
 def band(cycle: Cycle, low_volt: float, high_volt: float) -> Band:
-    """Both sweeps averaged over a stretch of potential by trapezoids, with straight lines to its ends."""
-    rising, _ = _sweep_mean(cycle, 1.0, low_volt, high_volt)
-    falling, _ = _sweep_mean(cycle, -1.0, low_volt, high_volt)
-    return Band(0.5 * (rising - falling), 0.5 * (rising + falling))
+    """The same of a single stretch."""
+    return bands(cycle, [(low_volt, high_volt)])[0]
 
 
 def charging_profile_ampere(cycle: Cycle, edges_volt: FloatArray) -> FloatArray:
     """Half the difference of the sweeps in each stretch between neighbouring edges, (n_edges - 1,). [A]"""
-    rising, falling = (_sweep_means(cycle, sign, edges_volt) for sign in (1.0, -1.0))
+    rising, falling = (_sweep_means(cycle, sign, edges_volt[:-1], edges_volt[1:]) for sign in (1.0, -1.0))
     result: FloatArray = 0.5 * (rising - falling)
     return result
 

@@ -19,9 +19,11 @@ import numpy as np
 
 from coulombook.cell.capacitance import (
     MIDDLE_SHARE,
+    Band,
     Cycle,
     FloatArray,
     band,
+    bands,
     capacitance_by_charge_farad,
     charging_profile_ampere,
     cycles_of,
@@ -128,6 +130,10 @@ def scan_figures(
 
 def _figures(chosen: Cycle, whole: Sequence[Cycle], rate: float, low: float, high: float) -> ScanFigures:
     middle = middle_of(low, high)
+    fifths = _fifths(low, high)
+    in_middle, central, across, *sides = bands(
+        chosen, [middle, middle_of(low, high, 3.0 * MIDDLE_SHARE), (low, high), *fifths]
+    )
     # the first cycle is still coming to rest
     later = [band(one, *middle).charging_ampere for one in whole[1:]]
     return ScanFigures(
@@ -136,14 +142,14 @@ def _figures(chosen: Cycle, whole: Sequence[Cycle], rate: float, low: float, hig
         chosen.highest_volt,
         low,
         high,
-        band(chosen, *middle).charging_ampere,
-        band(chosen, *middle_of(low, high, 3.0 * MIDDLE_SHARE)).charging_ampere,
-        band(chosen, low, high).charging_ampere,
+        in_middle.charging_ampere,
+        central.charging_ampere,
+        across.charging_ampere,
         capacitance_by_charge_farad(chosen, low, high),
         float(np.std(later, ddof=1)) if len(later) > 1 else math.nan,
         _measured_rate(chosen),
         transient_of(chosen, rate),
-        symmetry_of(chosen, low, high),
+        _symmetry(chosen, low, high, sides),
     )
 
 
@@ -248,11 +254,20 @@ def symmetry_of(cycle: Cycle, low_volt: float, high_volt: float) -> Symmetry:
     low_volt, high_volt : float
         The window. [V]
     """
+    return _symmetry(cycle, low_volt, high_volt, bands(cycle, _fifths(low_volt, high_volt)))
+
+
+def _fifths(low_volt: float, high_volt: float) -> list[tuple[float, float]]:
+    """A fifth of a window below its middle, one about it, and one above."""
     width = high_volt - low_volt
-    ends = [
+    return [
         (low_volt + share * width, low_volt + (share + MIDDLE_SHARE) * width) for share in (0.1, 0.4, 0.7)
     ]
-    lower, middle, upper = (band(cycle, *end) for end in ends)
+
+
+def _symmetry(cycle: Cycle, low_volt: float, high_volt: float, fifths: Sequence[Band]) -> Symmetry:
+    width = high_volt - low_volt
+    lower, middle, upper = fifths
     # a current that is no charging current has no symmetry to judge
     size = middle.charging_ampere if middle.charging_ampere > 0.0 else math.nan
     return Symmetry(

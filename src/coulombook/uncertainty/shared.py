@@ -70,29 +70,36 @@ class SharedCovariance:
 
 def _arranged(columns: csr_array) -> tuple[IntArray, NDArray[np.bool_], int]:
     """An order of the values, which errors are of neighbours then, and how far apart these reach at most."""
-    from scipy.sparse.csgraph import reverse_cuthill_mckee
-
     n, touched = columns.shape[0], np.diff(columns.indptr)
     natural = np.arange(n)
     if n <= _ONE_BLOCK:
         return natural, np.ones(len(touched), dtype=bool), max(n - 1, 0)
+    cost, near, band = _parted(columns, natural)
+    if cost <= n * float(_ONE_BLOCK) ** 2:
+        return natural, near, band
+    from scipy.sparse.csgraph import reverse_cuthill_mckee
+
     few = columns[:, touched <= _WIDE * n]
-    by_neighbour = reverse_cuthill_mckee((few @ few.T).tocsr(), symmetric_mode=True).astype(np.intp)
-    found = []
-    for order in (natural, by_neighbour):
-        place = np.empty(n, dtype=np.intp)
-        place[order] = natural
-        at = place[columns.indices]
-        first = columns.indptr[:-1]
-        span = np.maximum.reduceat(at, first) - np.minimum.reduceat(at, first) if at.size else touched
-        ranked = np.sort(span)
-        # with the c errors of least span in A: its band, squared, for every value, and so U's columns
-        band = np.concatenate(([0], ranked)).astype(float)
-        left = np.arange(len(ranked), -1, -1).astype(float)
-        cost = n * (band + _LEAST_BLOCK) ** 2 + n * left**2 + left**3
-        best = int(cost.argmin())
-        found.append((float(cost[best]), order, span <= band[best], int(band[best])))
-    return min(found, key=lambda one: one[0])[1:]
+    order = reverse_cuthill_mckee((few @ few.T).tocsr(), symmetric_mode=True).astype(np.intp)
+    other, near_too, band_too = _parted(columns, order)
+    return (order, near_too, band_too) if other < cost else (natural, near, band)
+
+
+def _parted(columns: csr_array, order: IntArray) -> tuple[float, NDArray[np.bool_], int]:
+    """Which errors are best taken as those of neighbours in an order, with what it costs, and how far they reach."""
+    n = columns.shape[0]
+    place = np.empty(n, dtype=np.intp)
+    place[order] = np.arange(n)
+    at, first = place[columns.indices], columns.indptr[:-1]
+    span = np.zeros(0, dtype=np.intp)
+    if at.size:
+        span = np.maximum.reduceat(at, first) - np.minimum.reduceat(at, first)
+    # with the c errors of least span in A: its band, squared, for every value, and so U's columns
+    band = np.concatenate(([0], np.sort(span))).astype(float)
+    left = np.arange(len(span), -1, -1).astype(float)
+    cost = n * (band + _LEAST_BLOCK) ** 2 + n * left**2 + left**3
+    best = int(cost.argmin())
+    return float(cost[best]), span <= band[best], int(band[best])
 
 
 def _blocks(
