@@ -25,7 +25,9 @@ def workbook_bytes(book: Book) -> bytes:
     if book.settled is None:
         raise ValueError("a workbook needs what the tables were computed from")
     sheets, charts = assemble(book)
-    return written(sheets, charts, about_lines(book, sheets), book.title or book.day, _date(book))
+    return written(
+        sheets, charts, about_lines(book, sheets, charts=bool(charts)), book.title or book.day, _date(book)
+    )
 
 
 def _date(book: Book) -> datetime:

@@ -31,8 +31,11 @@ class Said:
     kind: Kind | None = None
 
 
-def about_lines(book: Book, sheets: Sequence[Sheet]) -> Iterator[Said]:
-    """The sheet from top to bottom."""
+CHARTS = "charts", "Faradaic efficiency and partial current density against potential"  # sheet, title
+
+
+def about_lines(book: Book, sheets: Sequence[Sheet], *, charts: bool) -> Iterator[Said]:
+    """The sheet from top to bottom; ``charts`` tells whether there are any."""
     yield Said(Line.TITLE, (book.title or book.day,))
     yield Said(
         Line.PLAIN,
@@ -55,8 +58,9 @@ def about_lines(book: Book, sheets: Sequence[Sheet]) -> Iterator[Said]:
         yield Said(Line.PLAIN, ("", said))
     yield Said(Line.PLAIN)
     yield Said(Line.SECTION, ("Sheets",))
-    for sheet in sheets:
-        yield Said(Line.SHEET, (sheet.name, sheet.title))
+    listed = [(sheet.name, sheet.title) for sheet in sheets]
+    for cells in (*listed[:1], *([CHARTS] if charts else []), *listed[1:]):
+        yield Said(Line.SHEET, cells)
     yield Said(Line.PLAIN)
     yield Said(Line.SECTION, ("Options of the tally",))
     for name, value in book.options.items():

@@ -12,7 +12,7 @@ from coulombook.book.entries import MILLIAMPERE, PPM, UMOL
 from coulombook.curves.inverse import invert
 from coulombook.report.workbook.cells import FIRST_ROW, Sheet, Sheets, listed
 from coulombook.report.workbook.curves import COEFFICIENTS, CurveCells, inverse
-from coulombook.report.workbook.place import Account, found_in, runs_of, spreads, values, yes_no
+from coulombook.report.workbook.place import Account, found_in, picked, runs_of, spreads, values, yes_no
 from coulombook.uncertainty.linearised import IntArray, Number
 
 
@@ -136,7 +136,7 @@ def injections_sheet(account: Account, gas: Sheet, peaks: PeakOrder) -> Sheet:
         (_mean_of_channels(gas, *peaks.held[reading]) for reading in held),
         values(settled.readings.mole_fraction, PPM)[held],
         "of the used peaks of the injection: their mean over channels",
-        u=[spreads(settled.readings.mole_fraction, PPM)[one] for one in held],
+        u=picked(spreads(settled.readings.mole_fraction, PPM), held),
     )
     return sheet
 
@@ -318,5 +318,4 @@ def finish_injections(account: Account, sheet: Sheet, sheets: Sheets, peaks: Pea
 
 def _of_injections(account: Account, readings: list[int], x: Number, unit: float) -> list[Cell]:
     """Uncertainties of a quantity of injections, for the readings in them."""
-    u = spreads(x, unit)
-    return [u[injection] for injection in account.settled.plan.gas.reading_injection[readings].tolist()]
+    return picked(spreads(x, unit), account.settled.plan.gas.reading_injection[readings].tolist())

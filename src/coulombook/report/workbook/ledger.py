@@ -9,7 +9,7 @@ import numpy as np
 from coulombook.book.entries import PERCENT, level_of
 from coulombook.compare.series import series_points
 from coulombook.report.workbook.cells import FIRST_ROW, Sheet, Sheets, joined
-from coulombook.report.workbook.place import Account, runs_of, values
+from coulombook.report.workbook.place import Account, picked, runs_of, values
 from coulombook.uncertainty.linearised import IntArray, nominal
 
 COUNTED = "counted"
@@ -41,7 +41,7 @@ def ledger_sheet(account: Account, sheets: Sheets) -> Sheet:
         (f"={charge['E vs RHE / V']}{place}" for place in places),
         table.column("E vs RHE / V"),
         "of the run",
-        u=[account.column("summary", "u(E vs RHE) / V")[run] for run in products.run.tolist()],
+        u=picked(account.column("summary", "u(E vs RHE) / V"), products.run.tolist()),
     )
     sheet.text("group", table.column("group"))
     sheet.text("phase", table.column("phase"))
@@ -339,7 +339,9 @@ def series_sheet(account: Account, ledger: Sheet) -> Sheet:
         (_pooled("AVERAGE", ledger["E vs RHE / V"], one) for one in rows),
         table.column("E vs RHE / V"),
         "mean of the runs",
-        u=[account.column("summary", "u(E vs RHE) / V")[plan.products.run[one[0]]] for one in rows],
+        u=picked(
+            account.column("summary", "u(E vs RHE) / V"), [int(plan.products.run[one[0]]) for one in rows]
+        ),
     )
     sheet.computed("runs", table.column("runs"), "that are pooled")
     for value, u in (

@@ -21,7 +21,7 @@ from coulombook.balance.readings import FloatArray, Signal, Species
 from coulombook.book.entries import PERCENT, UMOL
 from coulombook.report.workbook.cells import FIRST_ROW, Sheet, Sheets, joined
 from coulombook.report.workbook.curves import CurveCells, inverse
-from coulombook.report.workbook.place import ML, Account, found_in, runs_of, spreads, values
+from coulombook.report.workbook.place import ML, Account, found_in, picked, runs_of, spreads, values
 from coulombook.uncertainty.linearised import IntArray, gather, linear_map, nominal, sparse_map
 
 if TYPE_CHECKING:
@@ -379,7 +379,7 @@ def compartments_sheet(account: Account, sheets: Sheets) -> Sheet:
         "charge to sampling / C",
         values(charge)[liquid.product_sampling],
         "from the log",
-        u=[spreads(charge)[one] for one in of],
+        u=picked(spreads(charge), of),
     )
     electrons = sheet.letters["electrons"]
     efficiency = settled.liquids.compartment_efficiency

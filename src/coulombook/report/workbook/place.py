@@ -67,6 +67,11 @@ def spreads(x: Number, unit: float = 1.0) -> list[Cell]:
     return found
 
 
+def picked(cells: Sequence[Cell], places: Iterable[int]) -> list[Cell]:
+    """Those at some places."""
+    return [cells[place] for place in places]
+
+
 def any_finite(array: FloatArray) -> bool:
     """Whether there is anything in a column that may be empty."""
     return bool(np.isfinite(array).any())

@@ -18,7 +18,7 @@ from xlsxwriter.worksheet import Worksheet
 
 from coulombook.figures.marks import Style, style_of_product
 from coulombook.prose.text import visible
-from coulombook.report.workbook.about import Line, Said
+from coulombook.report.workbook.about import CHARTS, Line, Said
 from coulombook.report.workbook.cells import FIRST_ROW, HEAD_ROW, Column, Kind, Sheet
 from coulombook.report.workbook.charts import Chart
 from coulombook.report.workbook.digits import GENERAL, digits_shown
@@ -34,6 +34,7 @@ _SHORT_HEAD = 14  # characters of a head that stands in one line
 _PER_CHARACTER, _PER_SMALL_CHARACTER = 1.0, 0.75  # widths, of the sheet's unit of width
 _AS_TYPED = frozenset({Kind.ENTERED, Kind.TEXT})
 _LOOKED_AT = 400  # records that decide how wide a column of text is
+_CHARTS_FROM, _CHART_ROWS = 3, 24  # rows: of the first chart, and from one to the next
 # hatches of the figures, as a spreadsheet names its patterns
 _PATTERNS = {"////": "light_upward_diagonal", "\\\\\\\\": "light_downward_diagonal", "xxxx": "diagonal_brick",
              "....": "percent_10", "----": "dashed_horizontal", "||||": "dashed_vertical", "++++": "divot",
@@ -223,21 +224,26 @@ def name_of(sheet: str, head: str) -> str:
 
 
 def _draw_charts(workbook: Workbook, charts: Sequence[Chart], styles: Styles) -> None:
-    page = workbook.add_worksheet("charts")
+    name, title = CHARTS
+    page = workbook.add_worksheet(name)
     page.hide_gridlines(2)
     page.set_row(0, 24)
-    page.write_string(
-        0, 0, "Faradaic efficiency and partial current density against potential", styles.look("title")
-    )
+    page.write_string(0, 0, title, styles.look("title"))
     page.write_string(
         1, 0, "Means over the runs of each level; drawn from the sheet of chart data.", styles.look("about")
     )
     for number, chart in enumerate(charts):
         down, right = divmod(number, 2)
-        page.insert_chart(3 + 24 * down, 11 * right, _drawn(workbook, chart), {"object_position": 2})
+        page.insert_chart(
+            _CHARTS_FROM + _CHART_ROWS * down, 11 * right, _drawn(workbook, chart), {"object_position": 2}
+        )
     page.set_landscape()
     page.set_paper(9)
-    page.fit_to_pages(1, 0)
+    page.set_print_scale(62)
+    # two rows of charts to a page, none of them cut
+    page.set_h_pagebreaks(
+        range(_CHARTS_FROM + 2 * _CHART_ROWS, _CHARTS_FROM + _CHART_ROWS * len(charts), 2 * _CHART_ROWS)
+    )
 
 
 def _drawn(workbook: Workbook, chart: Chart) -> object:
