@@ -208,6 +208,26 @@ def run_workbook(bench: Bench) -> list[Row]:
     ]
 
 
+def run_page(bench: Bench) -> list[Row]:
+    """The example day with all that people open, cold, and the size of its page."""
+    cost = bench.worker("page")
+    what = "tally of the example day with workbook and page, cold"
+    return [
+        Row(
+            what,
+            against,
+            2.0,
+            cost["whole"] / cost[side],
+            f"{_ms(cost['whole'])} (processor {_ms(cost['whole processor'])})",
+            f"{_ms(cost[side])} (processor {_ms(cost[f'{side} processor'])})",
+        )
+        for side, against in (
+            ("drawn", "FE table by hand and the page's figures with matplotlib"),
+            ("drawn with logs", "the same and the logs of the runs"),
+        )
+    ] + [Row("size of that page", "1.5 MB", 1.0, cost["bytes"] / 1.5e6, _mb(cost["bytes"]), "1.5 MB")]
+
+
 def run_draws(bench: Bench) -> list[Row]:
     """Monte Carlo against the least it could cost."""
     cost = bench.worker("draws")
@@ -313,6 +333,7 @@ BENCHMARKS: dict[str, Callable[[Bench], list[Row]]] = {
     "traces": run_traces,
     "uncertainty": run_uncertainty,
     "workbook": run_workbook,
+    "page": run_page,
     "draws": run_draws,
     "curves": run_curves,
     "search": run_search,
