@@ -13,6 +13,8 @@ from coulombook.report.page.svg import Styles, adopt
 from coulombook.report.page.tables import spread_heads
 from coulombook.report.page.words import bare, measured, number_of, parted
 
+MOST = 40  # figures of one kind: a page of hundreds would take minutes to draw and long to open
+_LEFT = "{count} more: coulombook figures draws them."
 _WIDE = frozenset({"closure", "budget"})  # kinds that have a line of the page to themselves
 TRACE = "trace"  # logs are drawn by the page itself, so that they can be looked into
 _UNSAID = frozenset({MARK, "level", "unit of u"})
@@ -29,12 +31,14 @@ class Drawings:
             self._kinds.setdefault(one.kind, []).append(one)
 
     def take(self, kind: str) -> list[Html]:
-        """All figures of one kind."""
-        return [self._drawn(one) for one in self._kinds.pop(kind, [])]
+        """The figures of one kind, with a word about those that are too many."""
+        every = self._kinds.pop(kind, [])
+        drawn = [self._drawn(one) for one in every[:MOST]]
+        return drawn if len(every) <= MOST else [*drawn, element("p", _LEFT.format(count=len(every) - MOST))]
 
     def by(self, kind: str, head: str) -> dict[str, Html]:
-        """All figures of one kind, by what their tables say under a head."""
-        return {str(one.data.column(head)[0]): self._drawn(one) for one in self._kinds.pop(kind, [])}
+        """The figures of one kind, by what their tables say under a head; the tables stand for those beyond."""
+        return {str(one.data.column(head)[0]): self._drawn(one) for one in self._kinds.pop(kind, [])[:MOST]}
 
     def rest(self) -> list[Html]:
         """Every figure of a kind that was not taken."""

@@ -9,6 +9,7 @@ from coulombook.report.page.html import Html, element, join
 from coulombook.report.page.words import counted
 
 FOLDED_BEYOND = 4  # places of one kind that stand open
+MOST = 200  # of one kind on the page at all
 _WORD = {Severity.STOP: "fault", Severity.WARN: "warning", Severity.NOTE: "note"}
 _RANK = {severity: place for place, severity in enumerate(_WORD)}
 _KIND_RANK = {kind: place for place, kind in enumerate(KINDS)}
@@ -59,7 +60,14 @@ def _entries(texts: Mapping[str, Sequence[Finding]]) -> Html:
     more = len(entries) - FOLDED_BEYOND
     return join(
         element("ul", entries[:FOLDED_BEYOND]),
-        element("details", element("summary", f"and {more} more"), element("ul", entries[FOLDED_BEYOND:]))
+        element(
+            "details",
+            element("summary", f"and {more} more"),
+            element("ul", entries[FOLDED_BEYOND:MOST]),
+            element("p", f"The other {len(entries) - MOST} stand in findings.csv.")
+            if len(entries) > MOST
+            else None,
+        )
         if more > 0
         else None,
     )
@@ -75,7 +83,13 @@ def _other_places(alike: Sequence[Finding]) -> Html | None:
     rest = [one.where for one in alike[FOLDED_BEYOND:]]
     if not rest:
         return None
-    return element("details", element("summary", f"the other {counted(len(rest), 'place')}"), "; ".join(rest))
+    more = "; ..." if len(rest) > MOST else ""
+    return element(
+        "details",
+        element("summary", f"the other {counted(len(rest), 'place')}"),
+        "; ".join(rest[:MOST]),
+        more,
+    )
 
 
 def _advice(mend: str) -> Html | None:

@@ -14,10 +14,11 @@ import pytest
 
 from coulombook import Book, Table, tally
 from coulombook.findings import finding
-from coulombook.report.page import page_html
+from coulombook.report.page import drawings, page_html
 from coulombook.report.page.dangers import show_cautions
 from coulombook.report.page.explanation import show_explanation
-from coulombook.report.page.findings import FOLDED_BEYOND, show_findings
+from coulombook.report.page.findings import FOLDED_BEYOND, MOST, show_findings
+from coulombook.report.page.runs import MOST_RUNS
 from coulombook.report.page.traces import show_trace
 from coulombook.report.page.verdict import show_verdicts
 
@@ -121,6 +122,16 @@ def test_long_lists_of_one_kind_are_folded() -> None:
     assert folded.count("<li>") == 10 - FOLDED_BEYOND
 
 
+def test_of_thousands_of_findings_some_hundreds_are_shown_and_the_file_is_named() -> None:
+    many = [finding("check-off", f"row {n}", f"it is off by {n}", "recalibrate") for n in range(5000)]
+    shown = show_findings(many).text
+    assert shown.count("<li>") == MOST
+    assert f"The other {5000 - MOST} stand in findings.csv." in shown
+    alike = show_findings([finding("check-off", f"row {n}", "it is off") for n in range(5000)]).text
+    assert "the other 4996 places" in alike
+    assert alike.count("; row") < MOST + FOLDED_BEYOND
+
+
 def test_a_day_without_findings_says_so() -> None:
     assert "Nothing was assumed" in show_findings([]).text
 
@@ -190,3 +201,18 @@ def test_a_book_that_has_lost_its_account_is_shown_from_its_tables(book: Book) -
     page = page_html(replace(book, settled=None, pictures=()))
     assert "copper on carbon paper" in page
     assert "class=still" not in page
+
+
+def test_a_day_of_very_many_runs_shows_some_and_says_where_the_others_are(book: Book) -> None:
+    rows = [RUN | {"run": f"r{n}", "level": str(n)} for n in range(MOST_RUNS + 30)]
+    page = page_html(replace(with_rows(book, "summary", *rows), settled=None, pictures=()))
+    assert page.count("<details class=run>") == MOST_RUNS
+    assert "The other 30 runs stand in the tables of the results folder." in page
+
+
+def test_of_very_many_figures_some_are_drawn(book: Book, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(drawings, "MOST", 2)
+    page = page_html(book)
+    curves = len(book.tables["calibrations"])
+    assert f"{curves - 2} more: coulombook figures draws them." in page
+    assert page.count('<figure class="figure curve">') == 2
