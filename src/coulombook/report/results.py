@@ -109,6 +109,9 @@ def _check(target: Path, out: Path, holds: str) -> None:
     present = {name for name in present if not any(fnmatch(name, litter) for litter in _LITTER)}
     if not present:
         return
+    # a system may rename a folder whose files it lets nobody remove
+    if not os.access(target, os.W_OK):
+        raise ResultsError(f"the folder '{out}' is protected against writing; give another folder to --out")
     written = read_manifest(target)
     if written is None:
         raise ResultsError(
@@ -145,9 +148,13 @@ def _documents(book: Book) -> dict[str, bytes]:
     from coulombook.report.page import NAME as PAGE
     from coulombook.report.page import page_html
     from coulombook.report.workbook import NAME as WORKBOOK
-    from coulombook.report.workbook import workbook_bytes
+    from coulombook.report.workbook import DayTooLong, workbook_bytes
 
-    return {WORKBOOK: workbook_bytes(book), PAGE: page_html(book).encode("utf-8")}
+    try:
+        workbook = workbook_bytes(book)
+    except DayTooLong as error:
+        raise ResultsError(f"the day is too long for a workbook: {error}; give --tables-only") from error
+    return {WORKBOOK: workbook, PAGE: page_html(book).encode("utf-8")}
 
 
 def findings_table(book: Book) -> Table:

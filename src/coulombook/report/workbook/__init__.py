@@ -13,18 +13,33 @@ NAME = "book.xlsx"
 _NO_DATE = datetime(1980, 1, 1)
 
 
+class DayTooLong(ValueError):
+    """A day has more readings than a sheet has rows; the message says of what."""
+
+
 def workbook_bytes(book: Book) -> bytes:
     """The workbook of a book that holds what it was computed from (``book.settled``).
 
-    The same book gives the same bytes. Raises ValueError for a book without it.
+    The same book gives the same bytes.
+
+    Raises
+    ------
+    ValueError
+        The book is without it.
+    DayTooLong
+        There are more readings of one kind than a sheet has rows.
     """
     from coulombook.report.workbook.about import about_lines
     from coulombook.report.workbook.assemble import assemble
+    from coulombook.report.workbook.cells import MOST_ROWS
     from coulombook.report.workbook.write import written
 
     if book.settled is None:
         raise ValueError("a workbook needs what the tables were computed from")
     sheets, charts = assemble(book)
+    for sheet in sheets:
+        if sheet.rows > MOST_ROWS:
+            raise DayTooLong(f"the sheet '{sheet.name}' would need {sheet.rows:,} rows of {MOST_ROWS:,}")
     return written(
         sheets, charts, about_lines(book, sheets, charts=bool(charts)), book.title or book.day, _date(book)
     )

@@ -14,6 +14,7 @@ from coulombook.book import Cell
 
 HEAD_ROW = 4  # rows as the spreadsheet counts them
 FIRST_ROW = 6  # of the records; between the two it says how each column is found
+MOST_ROWS = 1_048_576 - FIRST_ROW  # records that a sheet can hold
 
 
 class Kind(Enum):

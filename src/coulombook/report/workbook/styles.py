@@ -6,7 +6,6 @@ from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
 from coulombook.report.workbook.cells import Kind
-from coulombook.report.workbook.digits import GENERAL
 
 if TYPE_CHECKING:
     from xlsxwriter import Workbook
@@ -38,30 +37,40 @@ _KINDS: Mapping[Kind, Mapping[str, Any]] = {
 PARTED: Mapping[str, Any] = {"top": _THIN, "top_color": _SOFT}
 
 
+class Numbers(dict[str, "Format"]):
+    """Formats of one kind of cell by number format, each made when it is first asked for."""
+
+    def __init__(self, workbook: Workbook, kind: Kind) -> None:
+        super().__init__()
+        self._make, self._look = workbook.add_format, _KINDS[kind]
+
+    def __missing__(self, number_format: str) -> Format:
+        self[number_format] = made = self._make({**_BASE, **self._look, "num_format": number_format})
+        return made
+
+
 class Styles:
     """The formats of one workbook, each made once."""
 
     def __init__(self, workbook: Workbook) -> None:
         self._workbook = workbook
-        self._made: dict[tuple[object, object], Format] = {}
+        self._looks: dict[object, Format] = {}
+        self._numbers = {kind: Numbers(workbook, kind) for kind in Kind}
 
     def look(self, name: str) -> Format:
         """One of `LOOKS`."""
-        return self._of(("look", name), LOOKS[name])
+        return self._of(name, LOOKS[name])
 
-    def cell(self, kind: Kind, number_format: str = "") -> Format:
-        """A number of a kind, with its number format."""
-        made = self._made.get((kind, number_format))
-        return made or self._of(
-            (kind, number_format), {**_KINDS[kind], "num_format": number_format or GENERAL}
-        )
+    def numbers(self, kind: Kind) -> Numbers:
+        """The formats of the numbers of a kind."""
+        return self._numbers[kind]
 
     def words(self, kind: Kind, wrapped: bool = False) -> Format:
         """Text of a kind."""
         return self._of((kind, wrapped), {**_KINDS[kind], "align": "left", "indent": 1, "text_wrap": wrapped})
 
-    def _of(self, key: tuple[object, object], look: Mapping[str, Any]) -> Format:
-        made = self._made.get(key)
+    def _of(self, key: object, look: Mapping[str, Any]) -> Format:
+        made = self._looks.get(key)
         if made is None:
-            made = self._made[key] = self._workbook.add_format({**_BASE, **look})
+            made = self._looks[key] = self._workbook.add_format({**_BASE, **look})
         return made

@@ -10,10 +10,8 @@ from coulombook.amounts.carbon import HYDROXIDE_PER_CARBONATE
 from coulombook.book import Cell, Table
 from coulombook.book.columns import Kind as Content
 from coulombook.book.columns import about_tables
-from coulombook.report.workbook.cells import FIRST_ROW, Column, Kind, Sheet, Sheets
+from coulombook.report.workbook.cells import FIRST_ROW, MOST_ROWS, Column, Kind, Sheet, Sheets
 from coulombook.report.workbook.place import Account, runs_of
-
-MOST_ROWS = 1_048_576 - FIRST_ROW  # that a sheet can hold
 
 # what a table is called, and how many columns stay in sight
 _TITLES = {

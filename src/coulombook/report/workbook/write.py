@@ -118,38 +118,49 @@ def _write(page: Worksheet, sheet: Sheet, styles: Styles) -> None:
 
 
 def _write_column(page: Worksheet, place: int, column: Column, styles: Styles) -> None:
-    formulas, u, kinds = column.formulas, column.u, column.kinds
-    for number, value in enumerate(column.values):
-        if value is None or value == "":
-            continue
-        row = FIRST_ROW - 1 + number
-        kind = column.kind if kinds is None else kinds[number]
-        formula = None if formulas is None else formulas[number]
-        if kind is Kind.FORMULA and formula is None:
-            kind = Kind.COMPUTED
-        if isinstance(value, str):
-            style = styles.words(kind, column.wide)
-            if formula is not None:
-                page.write_formula(row, place, formula, style, value)
-            else:
-                page.write_string(
-                    row, place, shown(value, _LONGEST_WRAPPED if column.wide else _LONGEST), style
-                )
-            continue
-        if kind in _AS_TYPED or column.exact or isinstance(value, int):
-            style = styles.cell(kind, GENERAL)
-        else:
-            spread = None if u is None else u[number]
-            style = styles.cell(kind, digits_shown(value, spread if isinstance(spread, float) else None))
-        if formula is not None:
-            page.write_formula(row, place, formula, style, value)
-        else:
-            page.write_number(row, place, value, style)
+    if column.kinds is None:
+        _write_cells(page, place, column, styles, column.kind, range(len(column.values)))
+    else:
+        for number, kind in enumerate(column.kinds):
+            _write_cells(page, place, column, styles, kind, (number,))
     if column.choices and column.values:
         page.data_validation(
             FIRST_ROW - 1, place, FIRST_ROW + len(column.values) - 2, place,
             {"validate": "list", "source": list(column.choices)},
         )  # fmt: skip
+
+
+def _write_cells(
+    page: Worksheet, place: int, column: Column, styles: Styles, kind: Kind, records: Iterable[int]
+) -> None:
+    """Some records of a column, all of one kind; among formulas, what has none is a computed value."""
+    values, formulas, u = column.values, column.formulas, column.u
+    numbers, words = styles.numbers(kind), styles.words(kind, column.wide)
+    bare = Kind.COMPUTED if kind is Kind.FORMULA else kind
+    bare_numbers, bare_words = styles.numbers(bare), styles.words(bare, column.wide)
+    as_typed = column.exact or kind in _AS_TYPED
+    longest = _LONGEST_WRAPPED if column.wide else _LONGEST
+    for number in records:
+        value = values[number]
+        if value is None or value == "":
+            continue
+        row = FIRST_ROW - 1 + number
+        formula = None if formulas is None else formulas[number]
+        if isinstance(value, str):
+            if formula is None:
+                page.write_string(row, place, shown(value, longest), bare_words)
+            else:
+                page.write_formula(row, place, formula, words, value)
+            continue
+        if as_typed or isinstance(value, int):
+            digits = GENERAL
+        else:
+            spread = None if u is None else u[number]
+            digits = digits_shown(value, spread if isinstance(spread, float) else None)
+        if formula is None:
+            page.write_number(row, place, value, bare_numbers[digits])
+        else:
+            page.write_formula(row, place, formula, numbers[digits], value)
 
 
 def _width(column: Column) -> float:

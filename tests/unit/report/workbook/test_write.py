@@ -4,13 +4,18 @@ import re
 import zipfile
 from datetime import datetime
 from io import BytesIO
+from pathlib import Path
 
 import openpyxl
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+from tests.forward.days import small_day
+from tests.forward.files import write_day
 from tests.unit.report.sample import sample_book
 
+import coulombook
+from coulombook.report.results import ResultsError, write_results
 from coulombook.report.workbook import workbook_bytes
 from coulombook.report.workbook.cells import Sheet
 from coulombook.report.workbook.charts import Chart, Series
@@ -96,3 +101,14 @@ def test_a_chart_takes_its_name_from_a_cell() -> None:
 def test_a_book_without_what_it_was_computed_from_has_no_workbook() -> None:
     with pytest.raises(ValueError, match="computed from"):
         workbook_bytes(sample_book())
+
+
+def test_a_day_longer_than_a_sheet_is_refused_with_a_way_out(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    book = coulombook.tally(write_day(tmp_path / "day", small_day()))
+    monkeypatch.setattr("coulombook.report.workbook.cells.MOST_ROWS", 20)
+    with pytest.raises(ResultsError, match=r"too long for a workbook: the sheet '\w+' .* --tables-only"):
+        write_results(book, tmp_path / "results")
+    assert not (tmp_path / "results").exists()
+    assert write_results(book, tmp_path / "results", tables_only=True).is_dir()
