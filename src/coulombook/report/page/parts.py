@@ -105,7 +105,8 @@ def _efficiencies(book: Book, drawings: Drawings) -> Html:
 
 def _levels(table: CatalystTable) -> Html:
     """The table that the terminal shows, levels across."""
-    levels = table.levels
+    # from the most negative potential on, as the figure beside it goes
+    levels = tuple(reversed(table.levels))
     first = [product for _, product in table.products]
     rows = [*first, "total FE", "closure"]
     groups = [group for group, _ in table.products] + ["", ""]

@@ -6,7 +6,7 @@ from collections.abc import Mapping, Sequence
 
 from coulombook.book import Book, Cell
 from coulombook.report.page.html import Child, Html, element, join
-from coulombook.report.page.words import bare, counted, listed, measured, number_of
+from coulombook.report.page.words import JOINED, bare, counted, listed, measured, number_of
 
 Row = Mapping[str, Cell]
 HYDROGEN = "hydrogen"
@@ -55,11 +55,11 @@ def _strong(text: str) -> Html:
 def _where(row: Row) -> str:
     potential = measured(number_of(row["E vs RHE / V"]), number_of(row["u(E vs RHE) / V"]))
     current = bare(number_of(row["j / mA cm^-2"]), 3)
-    return f"{potential} V vs RHE and {current} mA cm⁻² (run {row['run']})"
+    return f"{potential}{JOINED}V vs RHE and {current}{JOINED}mA{JOINED}cm⁻² (run {row['run']})"
 
 
 def _percent(row: Row, head: str) -> str:
-    return f"{measured(number_of(row[head]), number_of(row[_u(head)]))} %"
+    return f"{measured(number_of(row[head]), number_of(row[_u(head)]))}{JOINED}%"
 
 
 def _u(head: str) -> str:

@@ -8,7 +8,9 @@ from collections.abc import Sequence
 from coulombook.prose.numbers import ABSENT, fixed, plain, with_uncertainty
 
 MINUS, DASH = "\N{MINUS SIGN}", "\N{EN DASH}"
+JOINED = "\N{NO-BREAK SPACE}"  # between a number and its unit
 _RAISED = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
+_RANGE = re.compile(r"(?<=[\d)])-(?=\d)")
 _EXPONENT = re.compile(r"e(-?\d+)$")
 _POWER_OF_TEN = re.compile(r"(?<=\d)e(-?\d+)\b")
 _NEGATIVE = re.compile(r"(?<![\w.-])-(?=\d)")
@@ -19,13 +21,13 @@ _UNITS = {"umol": "µmol", "degC": "°C", "ohm": "Ω"}
 def typeset(number: str) -> str:
     """A number of `prose.numbers` with a minus sign and a raised exponent.
 
-    >>> typeset("-0.7337(19)"), typeset("1.235(22)e-7"), typeset("-")
-    ('−0.7337(19)', '1.235(22)×10⁻⁷', '–')
+    >>> typeset("-0.7337(19)"), typeset("1.235(22)e-7"), typeset("99.0-99.3"), typeset("-")
+    ('−0.7337(19)', '1.235(22)×10⁻⁷', '99.0–99.3', '–')
     """
     if number == ABSENT:
         return DASH
     raised = _EXPONENT.sub(lambda found: "×10" + found[1].translate(_RAISED), number)
-    return raised.replace("-", MINUS)
+    return _RANGE.sub(DASH, raised).replace("-", MINUS)
 
 
 def sentence(text: str) -> str:
