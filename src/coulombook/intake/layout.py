@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 from pathlib import Path
 
 from coulombook.findings import Findings, Origin
@@ -261,6 +262,16 @@ def _unit_in(cell: str) -> str:
     return bracket[1] if bracket else cell
 
 
+@lru_cache(maxsize=1024)
+def _measures(unit: str, dimension: str) -> bool:
+    """Whether a unit is one of a dimension."""
+    try:
+        conversion(unit, dimension)
+    except UnitError:
+        return False
+    return True
+
+
 def is_units(cells: Sequence[str], columns: Mapping[str, int], table: Schema) -> bool:
     """Whether a row under the heads is one of units: each column read has one that its quantity may have."""
     found = 0
@@ -271,9 +282,7 @@ def is_units(cells: Sequence[str], columns: Mapping[str, int], table: Schema) ->
             if is_like_a_number(cell):
                 return False
             continue
-        try:
-            conversion(_unit_in(cell), dimension)
-        except UnitError:
+        if not _measures(_unit_in(cell), dimension):
             # a clock has a form in place of a unit
             if quantity == "t" and _FORM_OF_TIMES.fullmatch(cell):
                 continue

@@ -23,7 +23,7 @@ from coulombook.intake import text
 from coulombook.intake.clock import StampSecond, Times, clock_second, has_two_parts
 from coulombook.intake.files import unreadable
 from coulombook.intake.layout import Layout, is_units, quantity_of, score_of
-from coulombook.intake.limits import LARGEST_UNTIDY_LOG_BYTE, LONGEST_LINE
+from coulombook.intake.limits import LARGEST_UNTIDY_LOG_BYTE, LONGEST_LINE, MOST_WORDY_ROWS
 from coulombook.intake.numbers import (
     Habit,
     is_like_a_number,
@@ -78,6 +78,7 @@ class Patient:
     overlong: Told | None = None
     other_heads: Told | None = None  # heads or units that are not those of the first block
     cut: Told | None = None  # a last line without its end
+    too_wordy: bool = False  # more rows of words than a log has
     ended_early: bool = False  # after so many faults that nobody reads on
     first_stamp: datetime | None = None
 
@@ -197,6 +198,7 @@ class _Reader:
         self._columns = list(layout.columns.items())
         self._heads = [_folded(head) for head in layout.heads]
         self._found = Patient({quantity: array("d") for quantity, _ in self._columns}, array("q"))
+        self._of_words = 0  # rows of words that are no comments
         self._faulty = 0  # cells found to be faults
         self._pending: list[Row] = []  # rows that are no readings and may stand above heads to come
 
@@ -213,8 +215,9 @@ class _Reader:
             if last is not None:
                 self._untidy(*last)
                 last = None
-                if self._faulty >= _MOST_FAULTS:
+                if self._faulty >= _MOST_FAULTS or self._of_words >= MOST_WORDY_ROWS:
                     found.ended_early = True
+                    found.too_wordy = self._of_words >= MOST_WORDY_ROWS
                     break
             try:
                 row = [
@@ -243,23 +246,13 @@ class _Reader:
     def _untidy(self, number: int, cells: list[str]) -> None:
         """A row that holds something else than plain numbers."""
         found, layout = self._found, self._layout
-        if self._are_heads(cells):
-            found.repeated = _told(found.repeated, number)
-            # what stands between a block's end and the next heads is that block's own preamble
-            for above, _ in self._pending[-_LONGEST_PREAMBLE:]:
-                found.passed = _told(found.passed, above)
-            self._pending = self._pending[:-_LONGEST_PREAMBLE]
-            return
-        if layout.units and [*cells] == [*layout.units][: len(cells)]:
-            found.repeated = _told(found.repeated, number)
-            return
-        if score_of(cells, self._table, self._options) == 1 or is_units(cells, layout.columns, self._table):
-            found.other_heads = _told(found.other_heads, number, layout.separator.join(cells))
-            return
         read_cells = [cells[place] if place < len(cells) else "" for _, place in self._columns]
         first = next(filter(None, cells), "")
-        if first.startswith(COMMENT_SIGNS) or not any(map(is_like_a_number, read_cells)):
+        if first.startswith(COMMENT_SIGNS):
             found.passed = _told(found.passed, number, first)
+            return
+        if not any(map(is_like_a_number, read_cells)):
+            self._words(number, cells, first)
             return
         row = [
             self._number(quantity, cell)
@@ -286,6 +279,23 @@ class _Reader:
                 else:
                     found.unsure[quantity] = _told(found.unsure.get(quantity), number, cell)
         found.rows.append(number)
+
+    def _words(self, number: int, cells: list[str], first: str) -> None:
+        """A row of words: the heads or units once more, others than those, or a remark."""
+        found, layout = self._found, self._layout
+        self._of_words += 1
+        if self._are_heads(cells):
+            found.repeated = _told(found.repeated, number)
+            # what stands between a block's end and the next heads is that block's own preamble
+            for above, _ in self._pending[-_LONGEST_PREAMBLE:]:
+                found.passed = _told(found.passed, above)
+            self._pending = self._pending[:-_LONGEST_PREAMBLE]
+        elif layout.units and [*cells] == [*layout.units][: len(cells)]:
+            found.repeated = _told(found.repeated, number)
+        elif score_of(cells, self._table, self._options) == 1 or is_units(cells, layout.columns, self._table):
+            found.other_heads = _told(found.other_heads, number, layout.separator.join(cells))
+        else:
+            found.passed = _told(found.passed, number, first)
 
     def _number(self, quantity: str, cell: str) -> tuple[float, Habit | None, str, bool] | None:
         """Value of a cell, how it was written, the sign between thousands, and whether that is sure."""
@@ -383,6 +393,16 @@ def _report_faults(
             "write decimals with a point, or put semicolons between the cells",
             found=f"{read.overlong.example}{more}",
             expected=f"{len(layout.heads)} cells",
+        )
+        return True
+    if read.too_wordy and read.passed is not None:
+        findings.add(
+            "unreadable-file",
+            Origin(name, None, read.passed.first),
+            "the file holds more lines of words than a log does",
+            "begin remarks with '#', or export the readings alone",
+            found=f"{MOST_WORDY_ROWS} lines and more, the first {quoted(read.passed.example)}",
+            expected=f"fewer than {MOST_WORDY_ROWS} lines that are no readings",
         )
         return True
     if read.other_heads is not None:
