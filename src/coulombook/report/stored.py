@@ -61,7 +61,10 @@ def open_results(path: Path) -> Stored:
     StoredError
         There are none, or their manifest cannot be read.
     """
-    folder, interrupted = find_results(path)
+    try:
+        folder, interrupted = find_results(path)
+    except OSError as error:
+        raise StoredError(f"'{path}' cannot be read: {error.strerror or error}") from error
     manifest = read_manifest(folder)
     if manifest is None:
         raise StoredError(f"'{folder / MANIFEST}' is no manifest of coulombook, or is damaged")
@@ -69,9 +72,11 @@ def open_results(path: Path) -> Stored:
     for name, digest in sorted(manifest.outputs.items()):
         try:
             content = (folder / name).read_bytes()
-        except OSError:
+        except FileNotFoundError:
             missing.append(name)
             continue
+        except OSError as error:
+            raise StoredError(f"'{folder / name}' cannot be read: {error.strerror or error}") from error
         if hashlib.sha256(content).hexdigest() != digest:
             changed.append(name)
     return Stored(folder, manifest, tuple(changed), tuple(missing), interrupted)

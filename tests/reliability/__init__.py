@@ -1,0 +1,1 @@
+"""Faults of the machine, made on purpose: what is left of the results, and what the command says."""
