@@ -43,7 +43,7 @@ _RUNS_OF_A_TURN = 8  # what runs share is then evaluated once for so many
 _TURN_BYTE = (
     36_000_000  # of the draws of a turn's outputs, which are kept to be sorted; one run may need more
 )
-_SHARED_BYTE = 40_000_000  # of the draws of shared errors, which are kept to be used again
+_SHARED_BYTE = 32_000_000  # of the draws of shared errors, which are kept to be used again
 
 # Quantities that cannot be negative. Where a normal distribution would put more than 3e-7 of its draws below zero (zero
 # within five standard deviations), a lognormal one of the same mean and standard deviation takes its place.
