@@ -25,7 +25,7 @@ MOST_ADVICE = 100  # faults of a kind that get the nearest known name, which tak
 # --- logs ---
 
 LARGEST_LOG_BYTE = 4_000_000_000  # 1e8 rows: a month of 40 readings a second
-# row by row costs 24 byte of memory and some two microseconds a reading: half a minute and 700 MB at this size
+# row by row costs some 40 byte of memory and 3 us a reading (decision 19): a gigabyte and two minutes at this size
 LARGEST_UNTIDY_LOG_BYTE = 1_000_000_000
 MOST_WORDY_ROWS = (
     5_000  # remarks without a comment sign among the readings; each is looked at for heads and units

@@ -1,7 +1,7 @@
 """Numbers of untidy logs kept between tallies, outside the day folder: safe to delete, and never trusted over the file.
 
 Only what the patient reader took seconds for is kept; a tidy log is read anew in less time than it takes to know it
-again (decision 16). An entry is found by the content of the log, so that a changed log never meets an old one. Whatever
+again (decision 19). An entry is found by the content of the log, so that a changed log never meets an old one. Whatever
 is wrong with an entry or its place, the log is read as if there were no cache.
 """
 
