@@ -14,7 +14,6 @@ import json
 import os
 import stat
 import sys
-import tempfile
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from datetime import datetime
@@ -151,6 +150,8 @@ def keep(key: str, kept: Kept) -> None:
     place = folder()
     if place is None or kept.rows.nbytes * (len(kept.values) + 1) > LARGEST_ENTRY_BYTE // 2:
         return
+    import tempfile  # with its own imports some milliseconds that most days need not spend
+
     part = None
     try:
         place.mkdir(mode=0o700, parents=True, exist_ok=True)
