@@ -21,10 +21,11 @@ from coulombook.report.pivot import CatalystTable, catalyst_tables
 
 MOST_ROWS = 3000  # of one table; a longer one is left to its file
 # tables that stand in a part of their own, or whose rows stand with their runs
-_PLACED = ("summary", "ledger", "injections", "budget", "closure", "findings", "explanations", "cautions", "series",
+_PLACED = ("summary", "ledger", "injections", "budget", "closure", "findings", "explanations", "cautions",
            "surface", "spectra", "calibrations")  # fmt: skip
-_COMPARED = ("kinetics", "stability")
+_COMPARED = ("series", "kinetics", "stability")
 _HEADINGS = {
+    "series": "Replicates pooled: one line per catalyst, level and product",
     "kinetics": "Kinetics: Tafel slopes and onsets",
     "stability": "Change in the course of each run",
     "carbon": "Carbon: where the CO2 went",
@@ -176,8 +177,8 @@ def _surface(book: Book, drawings: Drawings) -> Html | None:
 
 
 def _comparison(book: Book) -> Html | None:
-    series = _whole(book.tables["series"], "Replicates pooled: one line per catalyst, level and product")
-    return join(series, [_folded_table(book.tables[name]) for name in _COMPARED if name in book.tables])
+    tables = [_folded_table(book.tables[name]) for name in _COMPARED if name in book.tables]
+    return join(tables) if any(tables) else None
 
 
 def _folded_table(table: Table) -> Html | None:
