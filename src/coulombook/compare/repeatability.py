@@ -6,9 +6,12 @@ estimated for one quantity over all catalysts and levels, beside what the stated
 runs scatter more than those of the others stands by itself, and so does a single group of replicates, by Cochran's test
 at 5 % (the level of a straggler in ISO 5725-2): setting apart too much costs resolution, too little costs the truth.
 
-Sources: Patterson & Thompson, Biometrika 58 (1971) 545 (restricted likelihood, here solved by scoring); ISO
+Of two catalysts with replicates no others tell which of them scatters as usual, and a test between the two overlooks
+much: each is judged by its own scatter, as in Welch's test, and catalysts without replicates by the larger of the two.
+
+Sources: Welch, Biometrika 34 (1947) 28; Ruxton, Behav. Ecol. 17 (2006) 688 (Welch's test without a test before it); Patterson & Thompson, Biometrika 58 (1971) 545 (restricted likelihood, here solved by scoring); ISO
 5725-2:1994, 7.3.3 (Cochran's test); 't Lam, Anal. Chim. Acta 659 (2010) 68 (its F form, for groups of unequal size).
-All three from memory.
+All from memory.
 """
 
 from __future__ import annotations
@@ -47,10 +50,12 @@ class Repeatability:
 
     Each group belongs to an estimate, ``estimate`` (n,): 0 is the one common to all that do not stand apart. Of each
     estimate ``relative`` is the standard deviation over the mean, and ``freedom`` the effective degrees of freedom with
-    which its square is known. ``deviation`` (n,) is that of each group's runs in the unit of the quantity.
+    which its square is known. ``deviation`` (n,) is that of each group's runs in the unit of the quantity. ``apart``
+    (n,) are those that scatter more than the others beyond chance.
     """
 
     estimate: IntArray
+    apart: Mask
     relative: FloatArray
     freedom: FloatArray
     deviation: FloatArray
@@ -71,16 +76,21 @@ def repeatability(groups: Groups) -> Repeatability:
     """
     usable = (groups.freedom > 0) & np.isfinite(groups.variance)
     estimate = np.zeros(len(groups.mean), dtype=np.intp)
+    apart = np.zeros(len(groups.mean), dtype=bool)
     last = 0
     by_owner = [np.flatnonzero(groups.owner == one) for one in np.unique(groups.owner)]
+    quieter = _quieter_of_two(groups, usable, by_owner)
+    if quieter is not None:
+        last += 1
+        estimate[quieter] = last
     while (found := _straggler(groups, usable & (estimate == 0), by_owner, whole=True)) is not None:
         last += 1
-        estimate[found] = last
+        estimate[found], apart[found] = last, True
     by_itself = [np.array([place]) for place in range(len(groups.mean))]
     for pool in range(last + 1):
         while (found := _straggler(groups, usable & (estimate == pool), by_itself, whole=False)) is not None:
             last += 1
-            estimate[found] = last
+            estimate[found], apart[found] = last, True
     relative, freedom = np.zeros(last + 1), np.full(last + 1, math.inf)
     for pool in range(last + 1):
         held = usable & (estimate == pool)
@@ -89,7 +99,22 @@ def repeatability(groups: Groups) -> Repeatability:
         relative[pool] = math.sqrt(square)
         if square > 0:
             freedom[pool] = square**2 * information
-    return Repeatability(estimate, relative, freedom, relative[estimate] * np.abs(groups.mean))
+    return Repeatability(estimate, apart, relative, freedom, relative[estimate] * np.abs(groups.mean))
+
+
+def _quieter_of_two(groups: Groups, usable: Mask, by_owner: list[IntArray]) -> IntArray | None:
+    """The groups of the catalyst that scatters less, if two have replicates and no more."""
+    # a mean of nothing has no scatter that is a share of it
+    usable = usable & (groups.mean != 0)
+    replicated = [one for one in by_owner if usable[one].any()]
+    if len(replicated) != 2:
+        return None
+    squares = []
+    for one in replicated:
+        held = np.zeros(len(usable), dtype=bool)
+        held[one] = usable[one]
+        squares.append(_common(groups, held, groups.freedom * groups.counts)[0])
+    return replicated[int(np.argmin(squares))]
 
 
 def _common(groups: Groups, held: Mask, freedom: FloatArray) -> tuple[float, float]:

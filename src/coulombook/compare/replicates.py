@@ -149,18 +149,21 @@ def _counting(points: Sequence[Point], electrode: Sequence[Hashable]) -> FloatAr
     """Share of the degrees of freedom of each point that counts.
 
     Two electrodes compared at five levels are one comparison and not five, if one of them gives more than its like at
-    every level: so the degrees of freedom of a catalyst are never more than its electrodes less one.
+    every level. What counts are the comparisons that do not follow from others: of electrodes that met at one level or
+    by way of others, their number less one.
     """
-    units: dict[str, set[Hashable]] = {}
+    circles: dict[str, list[set[Hashable]]] = {}
     freedom: dict[str, int] = {}
     for point in points:
-        units.setdefault(point.catalyst, set()).update(_units(point, electrode))
+        known = circles.setdefault(point.catalyst, [])
+        met = set(_units(point, electrode))
+        apart = [one for one in known if not one & met]
+        circles[point.catalyst] = [*apart, met.union(*(one for one in known if one & met))]
         freedom[point.catalyst] = freedom.get(point.catalyst, 0) + len(point.rows) - 1
+    independent = {catalyst: sum(len(one) - 1 for one in known) for catalyst, known in circles.items()}
     return np.array(
         [
-            min(1.0, (len(units[point.catalyst]) - 1) / max(freedom[point.catalyst], 1))
-            if freedom[point.catalyst]
-            else 1.0
+            independent[point.catalyst] / freedom[point.catalyst] if freedom[point.catalyst] else 1.0
             for point in points
         ]
     )

@@ -38,8 +38,8 @@ def _report_replicates(verdicts: Sequence[Verdicts], findings: Findings) -> None
         repeats = one.series.repeatability
         apart = [
             f"{point.catalyst} at {point.level}"
-            for point, estimate in zip(one.series.points, repeats.estimate, strict=True)
-            if estimate > 0
+            for point, stands_apart in zip(one.series.points, repeats.apart, strict=True)
+            if stands_apart
         ]
         if apart:
             findings.add(

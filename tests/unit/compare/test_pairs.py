@@ -48,11 +48,35 @@ def test_a_difference_without_scatter_beyond_the_stated_is_normal() -> None:
 
 
 def test_undeclared_scatter_of_equal_means_is_students_test() -> None:
-    # equal means, so that a common relative scatter is a common one: s^2 = (0.02 + 0.08)/2 = 0.05 with two degrees of
-    # freedom, u = sqrt(0.05 (1/2 + 1/2))
-    pair = _one_level(numbers([1.1, 0.9, 1.2, 0.8], 0.0), "aabb").pairs[0]
-    assert pair.u == pytest.approx(0.05**0.5)
-    assert pair.degrees_of_freedom == pytest.approx(2.0)
+    # equal means, so that a common relative scatter is a common one: s^2 = (0.02 + 0.08 + 0.02)/3 = 0.04 with three
+    # degrees of freedom, u = sqrt(0.04 (1/2 + 1/2))
+    pair = _one_level(numbers([1.1, 0.9, 1.2, 0.8, 1.1, 0.9], 0.0), "aabbcc").pairs[0]
+    assert pair.u == pytest.approx(0.04**0.5)
+    assert pair.degrees_of_freedom == pytest.approx(3.0)
+
+
+def test_two_catalysts_alone_are_held_against_each_other_by_welchs_test() -> None:
+    one, other = np.array([0.52, 0.48, 0.50, 0.51, 0.49, 0.50]), np.array([0.70, 0.50, 0.63])
+    pair = _one_level(numbers([*one, *other], 0.0), "a" * 6 + "b" * 3).pairs[0]
+    expected = welch(Sample.of(other), Sample.of(one))
+    assert pair.u == pytest.approx(expected.u)
+    assert (pair.low, pair.high) == pytest.approx((expected.low, expected.high))
+
+
+@pytest.mark.parametrize(("scatters", "runs", "least"), [(0.1, 3, 0.93), (0.03, 3, 0.92), (0.01, 3, 0.93)])
+def test_the_many_runs_of_one_catalyst_do_not_speak_for_the_few_of_another(
+    scatters: float, runs: int, least: float
+) -> None:
+    # with one scatter common to both the intervals held the truth in 77, 86 and 95 % of 1500 days; Welch's own test of
+    # normal samples of 6 and 3 holds 93 to 95 %; 400 days know a coverage to 1.1 %
+    generator = np.random.default_rng(3)
+    held, days = 0, 400
+    for _ in range(days):
+        quiet = 0.5 * (1 + np.hypot(0.01, 0.01) * generator.standard_normal(6))
+        loud = 0.5 * (1 + np.hypot(scatters, 0.01) * generator.standard_normal(runs))
+        pair = _one_level(numbers([*quiet, *loud], 0.01), "a" * 6 + "b" * runs).pairs[0]
+        held += pair.low <= 0.0 <= pair.high
+    assert held / days >= least - 0.01
 
 
 def test_a_catalyst_that_stands_apart_is_held_against_the_others_by_welchs_test() -> None:

@@ -66,18 +66,29 @@ def test_setting_apart_is_cochrans_test() -> None:
         assert (repeatability(groups).estimate > 0).sum() == apart
 
 
+def test_of_two_catalysts_each_scatters_by_itself_and_those_without_replicates_as_the_louder() -> None:
+    mean, variance = np.array([0.5, 0.4, 0.3, 0.0]), np.array([1e-4, 16e-4, np.nan, 0.0])
+    groups = Groups(np.arange(4), mean, variance, np.zeros(4), np.array([2.0, 1.0, 0.0, 1.0]), np.ones(4))
+    found = repeatability(groups)
+    # 0.01/0.5 = 2 %, 0.04/0.4 = 10 %; a mean of nothing tells nothing of how far runs scatter
+    assert found.relative[found.estimate] == pytest.approx([0.02, 0.1, 0.1, 0.1])
+    assert found.freedom[found.estimate][:2] == pytest.approx([2.0, 1.0])
+    # neither is told to scatter more than others do
+    assert not found.apart.any()
+
+
 def test_a_group_of_nothing_is_left_where_it_is() -> None:
     groups = Groups(
-        np.arange(3),
-        np.array([0.0, 0.5, 0.4]),
-        np.array([0.0, 1e-4, 1e-4]),
-        np.zeros(3),
-        np.ones(3),
-        np.ones(3),
+        np.arange(4),
+        np.array([0.0, 0.5, 0.4, 0.5]),
+        np.array([0.0, 1e-4, 1e-4, 1e-4]),
+        np.zeros(4),
+        np.ones(4),
+        np.ones(4),
     )
     found = repeatability(groups)
     assert found.deviation[0] == 0.0
-    assert found.relative[0] == pytest.approx(np.sqrt(0.5 * (1e-4 / 0.25 + 1e-4 / 0.16)))
+    assert found.relative[0] == pytest.approx(np.sqrt((2e-4 / 0.25 + 1e-4 / 0.16) / 3))
 
 
 def test_single_runs_alone_tell_nothing_of_scatter() -> None:

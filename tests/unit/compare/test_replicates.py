@@ -47,6 +47,19 @@ def test_two_electrodes_compared_at_two_levels_are_one_comparison() -> None:
     assert _series([0.40, 0.44, 0.40, 0.44], 0.0, "xxyy", "mnop").scatter.freedom[0] == pytest.approx(2.0)
 
 
+def test_electrodes_count_by_the_comparisons_that_do_not_follow_from_others() -> None:
+    def freedom(values: list[float], level: str, electrode: str) -> float:
+        return float(_series(values, 0.0, level, electrode).scatter.freedom[0])
+
+    pair = [0.40, 0.44]
+    # an electrode that was used alone is compared with none
+    assert freedom([*pair, *pair, 0.42], "xxyyz", "mnmno") == pytest.approx(1.0)
+    # two pairs that never met, each at two levels
+    assert freedom(pair * 4, "xxyyzzww", "mnmnopop") == pytest.approx(2.0)
+    # m and n, n and o: m and o follow from that
+    assert freedom(pair * 3, "xxyyzz", "mnnomo") == pytest.approx(2.0)
+
+
 def test_runs_without_the_quantity_are_left_out() -> None:
     found = _series([0.40, float("nan"), 0.44], 0.01, "xxy", "mnm")
     assert [point.rows.tolist() for point in found.points] == [[0], [2]]
