@@ -9,9 +9,9 @@ at 5 % (the level of a straggler in ISO 5725-2): setting apart too much costs re
 Of two catalysts with replicates no others tell which of them scatters as usual, and a test between the two overlooks
 much: each is judged by its own scatter, as in Welch's test, and catalysts without replicates by the larger of the two.
 
-Sources: Welch, Biometrika 34 (1947) 28; Ruxton, Behav. Ecol. 17 (2006) 688 (Welch's test without a test before it); Patterson & Thompson, Biometrika 58 (1971) 545 (restricted likelihood, here solved by scoring); ISO
-5725-2:1994, 7.3.3 (Cochran's test); 't Lam, Anal. Chim. Acta 659 (2010) 68 (its F form, for groups of unequal size).
-All from memory.
+Sources: Welch, Biometrika 34 (1947) 28; Ruxton, Behav. Ecol. 17 (2006) 688 (Welch's test without a test before it);
+Patterson & Thompson, Biometrika 58 (1971) 545 (restricted likelihood, here solved by scoring); ISO 5725-2:1994, 7.3.3
+(Cochran's test); 't Lam, Anal. Chim. Acta 659 (2010) 68 (its F form, for groups of unequal size). All from memory.
 """
 
 from __future__ import annotations
