@@ -39,10 +39,9 @@ CHUNK = 256
 # draws that are drawn at a time
 BLOCK = 8 * CHUNK
 THREADS = 2
-_RUNS_OF_A_TURN = 8  # what runs share is then evaluated once for so many
-_TURN_BYTE = (
-    36_000_000  # of the draws of a turn's outputs, which are kept to be sorted; one run may need more
-)
+_RUNS_OF_A_TURN = 8  # at most: what runs share is evaluated once for so many
+# of the draws of a turn's outputs, which are kept to be sorted; one run may need more
+_TURN_BYTE = 36_000_000
 _SHARED_BYTE = 32_000_000  # of the draws of shared errors, which are kept to be used again
 
 # Quantities that cannot be negative. Where a normal distribution would put more than 3e-7 of its draws below zero (zero
@@ -88,23 +87,30 @@ def draw_day(
     """
     record = Record(settled)
     runs = _turns(settled, count)
-    shared = _SharedErrors(
-        Counter(column for turn in runs for column in record.columns(turn).tolist()), count, seed
-    )
+    columns = [record.columns(turn) for turn in runs]
+    shared = _SharedErrors(Counter(column for one in columns for column in one.tolist()), count, seed)
     turns = [
-        _Turn(record, turn, np.random.Generator(np.random.SFC64([seed, len(record.errors) + number])), shared)
-        for number, turn in enumerate(runs)
+        _Turn(
+            record,
+            turn,
+            one,
+            np.random.Generator(np.random.SFC64([seed, len(record.errors) + number])),
+            shared,
+        )
+        for number, (turn, one) in enumerate(zip(runs, columns, strict=True))
     ]
     draws = np.empty((max((turn.rows for turn in turns), default=0), count))
     level = settled.plan.settings.level_of_confidence
     done = 0
     # normals are drawn ahead in a thread of their own: half of the work, in calls that let the other half go on
-    with ThreadPoolExecutor(THREADS - 1) as pool, np.errstate(all="ignore"):
+    with ThreadPoolExecutor(THREADS - 1) as pool:
         blocks = _ahead(pool, turns, count)
         for turn in turns:
-            for first in range(0, count, BLOCK):
-                turn.evaluate(next(blocks), draws[:, first : first + BLOCK])
-            yield turn.summary(draws, level)
+            with np.errstate(all="ignore"):
+                for first in range(0, count, BLOCK):
+                    turn.evaluate(next(blocks), draws[:, first : first + BLOCK])
+                found = turn.summary(draws, level)
+            yield found
             done += len(turn.runs)
             if progress is not None:
                 progress(done, len(settled.plan.runs))
@@ -196,19 +202,27 @@ class _SharedErrors:
             self._kept[column] = stream.standard_normal(self._count)
         kept = self._kept.get(column)
         for first in range(0, self._count, BLOCK):
+            # before the last block is handed out, for nobody asks for one beyond it
+            if first + BLOCK >= self._count:
+                self._left[column] -= 1
+                if not self._left[column]:
+                    self._kept.pop(column, None)
             yield stream.standard_normal(BLOCK) if kept is None else kept[first : first + BLOCK]
-        self._left[column] -= 1
-        if not self._left[column]:
-            self._kept.pop(column, None)
 
 
 class _Turn:
     """Some runs that are drawn together."""
 
     def __init__(
-        self, record: Record, runs: IntArray, own: np.random.Generator, shared: _SharedErrors
+        self,
+        record: Record,
+        runs: IntArray,
+        columns: IntArray,
+        own: np.random.Generator,
+        shared: _SharedErrors,
     ) -> None:
         self.runs = runs
+        self.columns: list[int] = columns.tolist()  # the errors it needs
         self._record = record
         self._own = own
         self._shared = shared
@@ -216,21 +230,12 @@ class _Turn:
         self.rows = sum(len(rows) for _, rows in self._outputs)
 
     @cached_property
-    def _needs(self) -> Needs:
-        return Needs(_moving(self._outputs))
-
-    @cached_property
-    def _columns(self) -> list[int]:
-        rows: list[int] = self._needs.rows.get(id(self._record.errors), np.zeros(0, dtype=np.intp)).tolist()
-        return rows
-
-    @cached_property
     def _of_others(self) -> list[Iterator[FloatArray]]:
-        return [self._shared.take(column) for column in self._columns if column in self._shared]
+        return [self._shared.take(column) for column in self.columns if column in self._shared]
 
     def draw(self, block: FloatArray) -> FloatArray:
         """Normals of the next block of draws, (chunks, errors, draws of a chunk), in memory that is given."""
-        columns = len(self._columns)
+        columns = len(self.columns)
         own = columns - len(self._of_others)
         normals = block[: BLOCK * columns].reshape(-1, columns, CHUNK)
         for chunk in normals:
@@ -241,14 +246,14 @@ class _Turn:
 
     @cached_property
     def _program(self) -> tuple[FloatArray, Program]:
-        columns = np.array(self._columns, dtype=np.intp)
-        of_others = np.array([column in self._shared for column in self._columns], dtype=bool)
+        columns = np.array(self.columns, dtype=np.intp)
+        of_others = np.array([column in self._shared for column in self.columns], dtype=bool)
         place = (
             np.where(of_others, np.count_nonzero(~of_others) + np.cumsum(of_others), np.cumsum(~of_others))
             - 1
         )
-        normals = aligned(len(columns), CHUNK)
-        return normals, Program(_moving(self._outputs), self._needs, self._record.errors, place, normals)
+        normals, moving = aligned(len(columns), CHUNK), _moving(self._outputs)
+        return normals, Program(moving, Needs(moving), self._record.errors, place, normals)
 
     def evaluate(self, block: FloatArray, draws: FloatArray) -> None:
         """Fill the first rows of ``draws`` with the outputs, one below the other; draws beyond its end are left out."""
@@ -278,7 +283,7 @@ class _Turn:
                 part[...] = nominal(number)[rows, None]
             found.append(coverage(part, level))
         # what a turn was made with is not wanted any more
-        for name in ("_needs", "_columns", "_of_others", "_program"):
+        for name in ("_of_others", "_program"):
             self.__dict__.pop(name, None)
         return Drawn(self.runs, self._record.products(self.runs), *found)
 
@@ -286,7 +291,7 @@ class _Turn:
 def _ahead(pool: ThreadPoolExecutor, turns: Sequence[_Turn], count: int) -> Iterator[FloatArray]:
     """Blocks of normals for one turn after the other, drawn before they are asked for."""
     blocks = len(range(0, count, BLOCK))
-    most = max((len(turn._columns) for turn in turns), default=0)
+    most = max((len(turn.columns) for turn in turns), default=0)
     # one that is in use, one that waits, one that is being filled
     rooms = cycle([np.empty(BLOCK * most) for _ in range(3)])
     waiting: deque[Future[FloatArray]] = deque()

@@ -103,13 +103,22 @@ def test_one_run_alone_spreads_as_it_does_among_others(
 
 
 def test_shared_errors_are_dropped_after_their_last_turn() -> None:
-    shared = draws._SharedErrors(Counter({4: 2, 5: 1}), 10, 1)
+    shared = draws._SharedErrors(Counter({4: 2, 5: 1}), BLOCK + 1, 1)
     assert 4 in shared
     assert 5 not in shared
-    first = list(shared.take(4))
+    first, second = shared.take(4), shared.take(4)
+    drawn = [next(first), next(first)]
     assert shared._kept
-    np.testing.assert_array_equal(first, list(shared.take(4)))
+    # as a turn does it: nobody asks for a third block
+    np.testing.assert_array_equal(drawn, [next(second), next(second)])
     assert not shared._kept
+
+
+def test_the_callers_treatment_of_floating_point_errors_is_left_alone(settled: Settled) -> None:
+    with np.errstate(all="raise"):
+        wanted = np.geterr()
+        for _ in draw_day(settled, 500, 1):
+            assert np.geterr() == wanted
 
 
 def test_a_quantity_near_zero_is_lognormal_with_its_mean_and_deviation() -> None:
