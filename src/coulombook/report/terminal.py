@@ -21,6 +21,7 @@ from coulombook.prose.text import LONGEST, visible
 from coulombook.report.pivot import catalyst_tables
 from coulombook.report.terminal_tables import show_catalyst, show_runs
 
+NARROWEST, USUAL = 20, 80  # columns of a console
 AT_MOST = 10  # findings of one kind; the rest are counted
 
 CAUTIONS = (
@@ -44,7 +45,10 @@ class _Console(Console):
 
 def console_for(stream: TextIO) -> Console:
     """A console that takes no text for markup, links or emoji names."""
-    return _Console(file=stream, markup=False, emoji=False, highlight=False, soft_wrap=False)
+    console = _Console(file=stream, markup=False, emoji=False, highlight=False, soft_wrap=False)
+    # a terminal that tells of no columns has some; and in very few every word would be cut to pieces
+    console.width = max(console.width or USUAL, NARROWEST)
+    return console
 
 
 def show_book(book: Book, console: Console, *, written: Path | None = None) -> None:
