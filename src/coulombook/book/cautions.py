@@ -17,6 +17,7 @@ import numpy as np
 from coulombook.balance.readings import FloatArray
 from coulombook.balance.settle import Settled
 from coulombook.book.entries import PERCENT, PPM, Row
+from coulombook.species import Species
 from coulombook.uncertainty.linearised import IntArray, nominal
 
 MIXTURE = "all together"
@@ -36,6 +37,9 @@ class Limits:
     danger_ppm: float | None  # immediately dangerous to life or health
 
 
+_NONE = Limits(None, None, None, None)
+
+
 @cache
 def safety_limits() -> Mapping[str, Limits]:
     """Limits by substance, from the shipped table."""
@@ -44,7 +48,9 @@ def safety_limits() -> Mapping[str, Limits]:
     exposure = {row["species"]: row for row in table["exposure"]}
     return {
         name: Limits(
-            _least(flammable.get(name, {}), ("nfpa_percent", "iec_percent"), 1.0 / PERCENT),
+            _least(
+                flammable.get(name, {}), ("nfpa_percent", "iec_percent", "further_percent"), 1.0 / PERCENT
+            ),
             _least(exposure.get(name, {}), ("osha_twa_ppm", "niosh_twa_ppm")),
             _least(exposure.get(name, {}), ("niosh_ceiling_ppm", "niosh_stel_ppm")),
             _least(exposure.get(name, {}), ("idlh_ppm",)),
@@ -107,36 +113,62 @@ def flammable_share(mole_fraction: FloatArray, lower_flammable: FloatArray, mixt
 
 
 def caution_rows(settled: Settled) -> list[Row]:
-    """One row per gas with a limit, at its highest concentration of the day, and one for what burns together.
+    """One row per product in the gas, at its highest concentration of the day, and one for what burns together.
 
     Every injection counts, unused ones as well. CO2 has a row without a concentration: nothing measures it.
     """
     gas, known = settled.plan.gas, safety_limits()
     if not len(gas.reading_injection):
         return []
-    fraction = np.nan_to_num(nominal(settled.readings.mole_fraction))
+    fraction = _at_least(settled)
     names = [one.name for one in gas.reading_species]
-    rows = [_mixture_row(settled, names, fraction)]
-    for name in dict.fromkeys(names):
-        if name not in known:
+    rows = [_mixture_row(settled, fraction)]
+    for species in dict.fromkeys(gas.reading_species):
+        if species.name not in known and not _burns(species):
             continue
-        readings = np.flatnonzero([one == name for one in names])
+        readings = np.flatnonzero([one == species.name for one in names])
         highest = int(readings[np.argmax(fraction[readings])])
         rows.append(
-            _row(name, known[name], float(fraction[highest]))
+            _row(species.name, known.get(species.name, _NONE), float(fraction[highest]))
             | _place(settled, int(gas.reading_injection[highest]))
         )
     rows.append(_row(CARBON_DIOXIDE, known[CARBON_DIOXIDE], None))
     return rows
 
 
-def _mixture_row(settled: Settled, names: Sequence[str], fraction: FloatArray) -> Row:
+def _at_least(settled: Settled) -> FloatArray:
+    """Mole fraction of each reading; where a curve that bends down does not reach a peak, that of its highest point."""
+    gas, x = settled.plan.gas, settled.inputs.nominal
+    fraction = nominal(settled.readings.mole_fraction).copy()
+    a1, a2 = x["a1"][gas.peak_curve], x["a2"][gas.peak_curve]
+    top = np.divide(-a1, 2.0 * a2, out=np.zeros(len(a1)), where=a2 < 0)
+    peaks = gas.channel_mean
+    for reading in np.flatnonzero(np.isnan(fraction)).tolist():
+        held = peaks.indices[peaks.indptr[reading] : peaks.indptr[reading + 1]]
+        fraction[reading] = top[held].max(initial=0.0)
+    return fraction
+
+
+def _burns(species: Species) -> bool:
+    """Whether it is no carrier: what CO2 and water are reduced to can be burnt."""
+    return not species.carrier
+
+
+def _lower_limit(species: Species) -> float:
+    """Lower flammable limit, NaN for what does not burn; of what burns and has none here, the lowest of the table."""
     known = safety_limits()
-    limit = np.array(
-        [np.nan if name not in known else known[name].lower_flammable or np.nan for name in names],
-        dtype=float,
-    )
-    share = flammable_share(fraction, limit, settled.plan.gas.reading_injection)
+    limits = known.get(species.name, _NONE)
+    if limits.lower_flammable is not None:
+        return limits.lower_flammable
+    if not _burns(species):
+        return float("nan")
+    return min(one.lower_flammable for one in known.values() if one.lower_flammable is not None)
+
+
+def _mixture_row(settled: Settled, fraction: FloatArray) -> Row:
+    gas = settled.plan.gas
+    limit = np.array([_lower_limit(one) for one in gas.reading_species], dtype=float)
+    share = flammable_share(fraction, limit, gas.reading_injection)
     worst = int(np.argmax(share))
     row: Row = {"substance": MIXTURE, "of flammable limit / %": float(share[worst]) * PERCENT}
     return row | _place(settled, worst)

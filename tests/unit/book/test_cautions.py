@@ -7,6 +7,8 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from tests.faults.day import add, swap, write_day
+
 from coulombook import tally
 from coulombook.book.cautions import flammable_share, safety_limits, safety_sources
 
@@ -48,7 +50,7 @@ def test_a_negative_reading_takes_nothing_off() -> None:
 
 
 def test_every_source_has_its_year() -> None:
-    assert len(safety_sources()) == 4
+    assert len(safety_sources()) == 5
     assert all(any(str(year) in one for year in range(2000, 2030)) for one in safety_sources())
 
 
@@ -81,3 +83,72 @@ def test_what_burns_together_is_at_least_each_part_of_it(book: object) -> None:
         row["of flammable limit / %"] for row in rows if row["of flammable limit / %"] is not None
     ]
     assert together >= max(alone)
+
+
+def _rows(folder: Path) -> dict[object, dict[str, object]]:
+    return {row["substance"]: dict(row) for row in tally(folder).tables["cautions"].records()}
+
+
+def test_a_product_without_a_limit_still_burns(tmp_path: Path) -> None:
+    changes = {
+        "gas.csv": add("a2,1,1800,FID,dimethyl ether,60\n"),
+        "day.toml": add('\n[species."dimethyl ether"]\nformula = "C2H6O"\nphase = "gas"\n'),
+        "calibrations/gases/standards.csv": add(
+            "FID,dimethyl ether,20,4.1\nFID,dimethyl ether,100,19.8\nFID,dimethyl ether,300,60.1\n"
+        ),
+    }
+    rows = _rows(write_day(tmp_path, changes))
+    ether = rows["dimethyl ether"]
+    assert ether["highest / ppm"] == pytest.approx(300, rel=0.01)
+    assert ether["lower flammable limit / %"] is None
+    # by hand: hydrogen 1380 ppm of 4 %, CO 1060 ppm of 10.9 %, ethylene 115 ppm of 2.3 %, and 300 ppm of the lowest of
+    # all limits, butane's 1.4 % (IEC 60079-20-1, from memory)
+    together = 100 * (1380e-6 / 0.04 + 1060e-6 / 0.109 + 115e-6 / 0.023 + 300e-6 / 0.014)
+    assert rows["all together"]["of flammable limit / %"] == pytest.approx(together, rel=0.02)
+
+
+def test_propane_counts_with_its_own_limit(tmp_path: Path) -> None:
+    changes = {
+        "gas.csv": add("a2,1,1800,FID,propane,60\n"),
+        "calibrations/gases/standards.csv": add(
+            "FID,propane,20,4.1\nFID,propane,100,19.8\nFID,propane,300,60.1\n"
+        ),
+    }
+    propane = _rows(write_day(tmp_path, changes))["propane"]
+    assert propane["lower flammable limit / %"] == pytest.approx(1.7)
+    assert propane["of flammable limit / %"] == pytest.approx(100 * 300e-6 / 0.017, rel=0.01)
+
+
+def test_a_peak_above_what_its_curve_reaches_is_not_taken_for_nothing(tmp_path: Path) -> None:
+    # an unused peak beyond the vertex of a curve that bends down: its mole fraction is at least that of the vertex
+    standards = "".join(
+        f"TCD,hydrogen,{x * 1e4:g},{1000 * x - 40 * x**2:g}\n" for x in (0.02, 0.1, 0.5, 1, 2, 4, 8)
+    )
+    changes = {
+        "gas.csv": lambda text: (
+            text.replace("peak area\n", "peak area,use\n")
+            .replace("hydrogen,69\n", "hydrogen,9000,no\n")
+            .replace("hydrogen,70\n", "hydrogen,70,\n")
+        ),
+        "calibrations/gases/standards.csv": lambda text: (
+            "".join(line for line in text.splitlines(keepends=True) if "hydrogen" not in line) + standards
+        ),
+        "calibrations/gases/calibration.toml": add('\n[curve."hydrogen@TCD"]\nform = "quadratic"\n'),
+    }
+    hydrogen = _rows(write_day(tmp_path, changes))["hydrogen"]
+    # y = 1000 x - 40 x^2 with x in percent has its vertex at 12.5 %
+    assert hydrogen["highest / ppm"] == pytest.approx(125_000, rel=0.01)
+    assert (hydrogen["run"], hydrogen["injection"]) == ("a2", "1")
+
+
+def test_what_is_below_detection_keeps_its_row_and_its_reading(tmp_path: Path) -> None:
+    def faint(text: str) -> str:
+        return text.replace("CO,105", "CO,0.6").replace("CO,104", "CO,0.5").replace("CO,106", "CO,0.4")
+
+    book = tally(write_day(tmp_path, {"gas.csv": faint}))
+    status = {row["status"] for row in book.tables["ledger"].records() if row["product"] == "carbon monoxide"}
+    assert status == {"below detection"}
+    injections = [row for row in book.tables["injections"].records() if row["product"] == "carbon monoxide"]
+    row = next(one for one in book.tables["cautions"].records() if one["substance"] == "carbon monoxide")
+    assert row["highest / ppm"] == pytest.approx(max(one["mole fraction / ppm"] for one in injections))
+    assert row["times exposure limit"] == pytest.approx(row["highest / ppm"] / 35.0)
