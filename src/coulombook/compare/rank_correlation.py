@@ -1,5 +1,8 @@
 """Spearman's rank correlation, its probability by permutations, and its interval.
 
+Electrodes of one catalyst are alike in more than roughness and no independent pairs: chance is told by orders of the
+catalysts then (Hurlbert, Ecol. Monogr. 54 (1984) 187, on replicates that are none).
+
 Sources: Spearman, Am. J. Psychol. 15 (1904) 72; Bonett & Wright, Psychometrika 65 (2000) 23 (the variance of Fisher's z
 for ranks, (1 + rho^2/2)/(n - 3)); Student's t with n - 2 degrees of freedom for more than eight pairs (Zar, J. Am.
 Stat. Assoc. 67 (1972) 578). All from memory.
@@ -8,7 +11,7 @@ Stat. Assoc. 67 (1972) 578). All from memory.
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import lru_cache
 from itertools import permutations
 
@@ -18,6 +21,7 @@ from numpy.typing import NDArray
 from coulombook.compare.statistics import student_p
 
 FloatArray = NDArray[np.float64]
+IntArray = NDArray[np.intp]
 
 FEWEST = 5  # pairs: with four, even a perfect order comes by chance once in twelve
 MOST_EXACT = 8  # pairs whose orders are counted out: 8! = 40,320
@@ -28,10 +32,11 @@ EXACT, STUDENT = "permutations", "Student's t"
 class RankCorrelation:
     """Spearman's coefficient with its two-sided probability under no relation, and its interval.
 
-    NaN wherever it cannot be told: nothing varies, or there are too few pairs for an interval.
+    NaN wherever it cannot be told: nothing varies, or there are too few independent pairs for an interval.
     """
 
     count: int
+    independent: int  # pairs that chance may exchange
     rho: float
     p: float
     method: str
@@ -55,11 +60,28 @@ def spearman(x: FloatArray, y: FloatArray, level: float = 0.95) -> RankCorrelati
     ranks = midranks(x), midranks(y)
     rho = _correlation(*ranks)
     if not math.isfinite(rho):
-        return RankCorrelation(count, math.nan, math.nan, "", math.nan, math.nan)
+        return RankCorrelation(count, count, math.nan, math.nan, "", math.nan, math.nan)
     exact = count <= MOST_EXACT
     p = _by_permutations(*ranks) if exact else _by_student(rho, count)
     low, high = interval(rho, count, level)
-    return RankCorrelation(count, rho, p, EXACT if exact else STUDENT, low, high)
+    return RankCorrelation(count, count, rho, p, EXACT if exact else STUDENT, low, high)
+
+
+def spearman_of_kinds(x: FloatArray, y: FloatArray, kind: IntArray, level: float = 0.95) -> RankCorrelation:
+    """Rank correlation of pairs of which those of one kind, (n,), are no independent ones.
+
+    The coefficient is that of all pairs. Its probability is that of the means of the kinds, and its interval has as
+    many pairs as there are kinds. Pairs that are all of one kind, or each of another, are independent.
+    """
+    whole = spearman(x, y, level)
+    _, kind = np.unique(kind, return_inverse=True)
+    kinds = int(kind.max(initial=-1)) + 1
+    if kinds in (1, len(x)) or not math.isfinite(whole.rho):
+        return whole
+    count = np.bincount(kind)
+    of_means = spearman(np.bincount(kind, x) / count, np.bincount(kind, y) / count, level)
+    low, high = interval(whole.rho, kinds, level)
+    return replace(whole, independent=kinds, p=of_means.p, method=of_means.method, low=low, high=high)
 
 
 def midranks(x: FloatArray) -> FloatArray:

@@ -10,7 +10,7 @@ import numpy as np
 
 from coulombook.compare.pairs import Contest, contest, family
 from coulombook.compare.potentials import interpolate
-from coulombook.compare.rank_correlation import RankCorrelation, spearman
+from coulombook.compare.rank_correlation import RankCorrelation, spearman_of_kinds
 from coulombook.compare.ranking import Ranking, rank
 from coulombook.compare.replicates import Series, pool_series
 from coulombook.compare.statistics import Difference, Sample, Variance, one_way, welch
@@ -101,6 +101,8 @@ def along_roughness(
 
     ``names`` are those of the electrodes, by run. Electrodes without a roughness factor are left out.
     """
+    catalysts = list(dict.fromkeys(runs.catalyst))
+    kind_of = {name: catalysts.index(one) for name, one in zip(names, runs.catalyst, strict=True)}
     rough = {
         name: float(value)
         for name, value in zip(names, nominal(runs.roughness_factor), strict=True)
@@ -119,7 +121,9 @@ def along_roughness(
         x = np.array([rough[one.owner] for one in values])
         y = np.array([one.value for one in values])
         if len(values) > 2:
-            result.append(AlongRoughness(quantity, at, point, volt, values, spearman(x, y, level)))
+            kind = np.array([kind_of[one.owner] for one in values], dtype=np.intp)
+            correlation = spearman_of_kinds(x, y, kind, level)
+            result.append(AlongRoughness(quantity, at, point, volt, values, correlation))
     return result
 
 

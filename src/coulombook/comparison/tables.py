@@ -228,7 +228,7 @@ def conclusion(one: AlongRoughness, level: float) -> str:
     from coulombook.compare.rank_correlation import FEWEST
 
     found = one.correlation
-    if found.count < FEWEST:
+    if found.independent < FEWEST:
         return TOO_FEW
     if not found.p < 1.0 - level:
         return CANNOT_TELL

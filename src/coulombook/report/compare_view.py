@@ -231,10 +231,13 @@ def _correlation(one: AlongRoughness) -> str:
 
 def _about_roughness(shown: Sequence[AlongRoughness], comparison: Comparison) -> str:
     if all(conclusion(one, comparison.level) == TOO_FEW for one in shown):
-        return f"Too few electrodes: with fewer than {FEWEST}, no order of ranks convinces."
+        return (
+            f"Too few: with fewer than {FEWEST} electrodes, or catalysts where these have several, no order of ranks "
+            "convinces."
+        )
     return (
-        "Electrodes of one catalyst are alike, so that they count for less than their number; and catalysts differ in "
-        "more than roughness: this is no proof of a cause."
+        "Where catalysts have several electrodes, which are alike in more than roughness, p and intervals count the "
+        "catalysts. These differ in more than roughness too: this is no proof of a cause."
     )
 
 

@@ -6,8 +6,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-
-from tests.faults.day import add, swap, write_day
+from tests.faults.day import add, write_day
 
 from coulombook import tally
 from coulombook.book.cautions import flammable_share, safety_limits, safety_sources

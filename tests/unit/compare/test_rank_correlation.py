@@ -6,7 +6,14 @@ import numpy as np
 import pytest
 from scipy import stats
 
-from coulombook.compare.rank_correlation import EXACT, STUDENT, interval, midranks, spearman
+from coulombook.compare.rank_correlation import (
+    EXACT,
+    STUDENT,
+    interval,
+    midranks,
+    spearman,
+    spearman_of_kinds,
+)
 
 
 @pytest.mark.parametrize("count", [4, 5, 7, 8, 9, 15, 40])
@@ -104,3 +111,33 @@ def test_intervals_hold_the_true_coefficient(count: int, r: float) -> None:
         covered += low <= true <= high
     # 0.7 % is the standard deviation of the share; with few pairs the interval is a little wide
     assert 0.93 <= covered / 1000 <= 0.98
+
+
+def test_electrodes_of_one_catalyst_are_no_independent_pairs() -> None:
+    """Catalysts with a roughness and a selectivity that have nothing to do with each other, two electrodes each."""
+    generator = np.random.default_rng(1)
+    kind = np.repeat(np.arange(6), 2)
+    days, alone, together = 1000, 0, 0
+    for _ in range(days):
+        x, y = generator.standard_normal((2, 6))[:, kind] + 0.05 * generator.standard_normal((2, 12))
+        alone += spearman(x, y).p < 0.05
+        together += spearman_of_kinds(x, y, kind).p < 0.05
+    assert alone / days > 0.15  # what taking them for independent does
+    # 5 % and twice the standard deviation of a count of 1000 at 5 %
+    assert together / days <= 0.05 + 2 * 0.007
+
+
+def test_a_correlation_over_kinds_is_that_of_all_pairs_with_the_chance_of_the_kinds() -> None:
+    x, y = np.array([1.0, 1.1, 2.0, 2.2, 3.0, 3.1]), np.array([1.0, 1.2, 3.1, 3.0, 2.0, 2.1])
+    found = spearman_of_kinds(x, y, np.array([0, 0, 1, 1, 2, 2]))
+    assert (found.count, found.independent) == (6, 3)
+    assert found.rho == pytest.approx(spearman(x, y).rho)
+    # means in the order 1, 3, 2: rho 0.5, which every order of three reaches on one side or the other
+    assert found.p == pytest.approx(1.0)
+    assert np.isnan(found.low)
+
+
+@pytest.mark.parametrize("kind", [[0] * 6, list(range(6))])
+def test_electrodes_of_one_catalyst_alone_or_of_as_many_are_independent(kind: list[int]) -> None:
+    x, y = np.arange(6.0), np.array([0.0, 2.0, 1.0, 3.0, 4.0, 5.0])
+    assert spearman_of_kinds(x, y, np.array(kind)) == spearman(x, y)
