@@ -7,6 +7,7 @@ none of this runs.
 
 from __future__ import annotations
 
+import functools
 import hashlib
 import json
 import os
@@ -108,6 +109,11 @@ class Bench:
             raise RuntimeError("the good day cannot be tallied")
         shutil.rmtree(self.results)
 
+    @functools.cached_property
+    def writings(self) -> Writings:
+        """Results of the day that are made once and written often."""
+        return Writings(self)
+
     def tally(self, *options: str | Path) -> Callable[[], int]:
         """A tally that can be told from every other one by its seed."""
         self._seed += 1
@@ -160,12 +166,22 @@ class Bench:
         return self.changed_inputs() + left + whole(self.results, [self.newest])
 
     def _snapshot(self) -> dict[str, str]:
-        files = {}
-        for path in self.day.rglob("*"):
-            first = path.relative_to(self.day).parts[0]
-            if path.is_file() and first != "results" and not _OURS.fullmatch(first):
-                files[str(path.relative_to(self.day))] = hashlib.sha256(path.read_bytes()).hexdigest()
-        return files
+        found = hashes(self.day)
+        first = {name: Path(name).parts[0] for name in found}
+        return {
+            name: found[name]
+            for name in found
+            if first[name] != "results" and not _OURS.fullmatch(first[name])
+        }
+
+
+def hashes(folder: Path) -> dict[str, str]:
+    """SHA-256 of every file under a folder."""
+    return {
+        str(path.relative_to(folder)): hashlib.sha256(path.read_bytes()).hexdigest()
+        for path in folder.rglob("*")
+        if path.is_file()
+    }
 
 
 class Writings:

@@ -12,7 +12,7 @@ import subprocess
 from collections.abc import Callable, Iterator
 from pathlib import Path
 
-from tests.reliability.bench import OLD, Bench, Tally, Writings, child, command, whole
+from tests.reliability.bench import OLD, Bench, Tally, child, command, whole
 
 _PAGE_BYTE = os.sysconf("SC_PAGE_SIZE")
 _NOBODY = 65534
@@ -39,7 +39,7 @@ def full(bench: Bench, number: int, seed: int) -> Tally:
     """A small disk with old results and some pages more, fewer than new ones need."""
     told = Tally("disk with too few pages left (a file system in memory)")
     chance = random.Random(seed)
-    writings = Writings(bench)
+    writings = bench.writings
     disk = bench.day.parent / "disk"
     with _small_disk(disk) as mounted:
         if not mounted:
@@ -83,7 +83,7 @@ def limited(bench: Bench, number: int, seed: int) -> Tally:
     """No file may grow beyond some size, as under a quota."""
     told = Tally("files that may not grow beyond a limit")
     chance = random.Random(seed)
-    writings = Writings(bench)
+    writings = bench.writings
     bench.clear()
     writings.lay(bench.results)
     largest = max(one.stat().st_size for one in bench.results.iterdir())
@@ -107,7 +107,7 @@ def limited(bench: Bench, number: int, seed: int) -> Tally:
 def read_only(bench: Bench, number: int, seed: int) -> Tally:
     """A day on a medium that can only be read, with results that stand aside."""
     told = Tally("medium that can only be read")
-    writings = Writings(bench)
+    writings = bench.writings
     bench.clear()
     disk = bench.day.parent / "disk"
     out = bench.day.parent / "elsewhere"
@@ -158,7 +158,7 @@ def forbidden(bench: Bench, number: int, seed: int) -> Tally:
     if os.geteuid() != 0:
         told.skipped = "only root can become another user"
         return told
-    writings = Writings(bench)
+    writings = bench.writings
     bench.clear()
     files = sorted(one for one in bench.day.rglob("*") if one.is_file())
     out = bench.day.parent / "out of nobody"

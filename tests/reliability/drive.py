@@ -17,7 +17,7 @@ from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import Any
 
-from tests.reliability.bench import OLD, Bench, Ended, Tally, Writings, child, command, whole
+from tests.reliability.bench import OLD, Bench, Ended, Tally, child, command, whole
 
 GONE = (errno.EIO, errno.ESTALE, errno.ENOTCONN, errno.EHOSTDOWN, errno.ETIMEDOUT)
 _BY_PATH = ("stat", "lstat", "scandir", "listdir", "readlink", "mkdir", "rename", "unlink", "rmdir", "access")
@@ -187,7 +187,7 @@ def fills_up(bench: Bench, number: int, seed: int) -> Tally:
     """The disk has room for some bytes more, and none after them."""
     told = Tally("disk that is full after some bytes")
     chance = random.Random(seed)
-    writings = Writings(bench)
+    writings = bench.writings
     bench.clear()
     writings.lay(bench.results)
     for _ in range(number):

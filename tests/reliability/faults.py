@@ -11,7 +11,7 @@ import tempfile
 from collections.abc import Callable
 from pathlib import Path
 
-from tests.reliability import disk, drive, kills, writers
+from tests.reliability import disk, drive, inputs, kills, writers
 from tests.reliability.bench import Bench, Tally
 
 KINDS: dict[str, Callable[[Bench, int, int], Tally]] = {
@@ -29,6 +29,7 @@ KINDS: dict[str, Callable[[Bench, int, int], Tally]] = {
     "without-locks": writers.without_locks,
     "held": writers.held,
     "open": writers.open_elsewhere,
+    "damages": inputs.random_damages,
 }
 
 

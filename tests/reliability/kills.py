@@ -77,7 +77,7 @@ def between_calls(bench: Bench, number: int, seed: int) -> Tally:
     """Kill a writing before and after each call of the system, or at some of them: from old results, from none, and
     from what an earlier kill between the two steps of the exchange left."""
     told = Tally("writing killed between two calls of the system")
-    writings = Writings(bench)
+    writings = bench.writings
     starts: dict[str, tuple[Callable[[], None], list[str | None]]] = {
         "from old results": (lambda: writings.lay(bench.results), [OLD, NEW]),
         "from no results": (lambda: None, [None, NEW]),

@@ -9,7 +9,7 @@ import time
 from collections.abc import Callable
 from contextlib import ExitStack
 
-from tests.reliability.bench import NEW, OLD, Bench, Tally, Writings, child, whole
+from tests.reliability.bench import NEW, OLD, Bench, Tally, child, whole
 
 from coulombook.report import exchange, lock
 
@@ -63,7 +63,7 @@ def _together(bench: Bench, number: int, what: str, without: Callable[[int], boo
 def held(bench: Bench, number: int, seed: int) -> Tally:
     """A writer that does not end is named, and what it holds is taken over when it is killed."""
     told = Tally("writer that stops while it holds the folder, and is killed")
-    writings = Writings(bench)
+    writings = bench.writings
     chance = random.Random(seed)
     bench.clear()
     writings.lay(bench.results)
@@ -102,7 +102,7 @@ def held(bench: Bench, number: int, seed: int) -> Tally:
 def open_elsewhere(bench: Bench, number: int, seed: int) -> Tally:
     """Results that are open in other programs: replaced where the system allows it, else left as they are."""
     told = Tally("results open in another program")
-    writings = Writings(bench)
+    writings = bench.writings
     chance = random.Random(seed)
     for one in range(number):
         bench.clear()

@@ -16,13 +16,13 @@ import pytest
 
 ROOT = Path(__file__).parents[2]
 NUMBERS = {
-    "moments": 10,
-    "calls": 20,
-    "gone": 15,
-    "flicker": 15,
+    "moments": 6,
+    "calls": 12,
+    "gone": 8,
+    "flicker": 10,
     "looked-at": 10,
     "room": 5,
-    "full": 6,
+    "full": 5,
     "limited": 4,
     "read-only": 1,
     "forbidden": 1,

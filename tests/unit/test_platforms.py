@@ -15,6 +15,7 @@ import sys
 import warnings
 from collections.abc import Iterator
 from dataclasses import replace
+from functools import cache
 from pathlib import Path
 
 import pytest
@@ -56,6 +57,7 @@ MODULES_OF_ONE_SYSTEM = {
 ASKS = re.compile(r"sys\.platform|os\.name|hasattr\(os")
 
 
+@cache
 def tree_of(path: Path) -> ast.Module:
     return ast.parse(path.read_text(encoding="utf-8"))
 
