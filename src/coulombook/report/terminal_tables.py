@@ -121,7 +121,7 @@ _NEVER_GIVEN_UP = 3  # the luxury of closure
 def charge_bar(shares: Sequence[float | None], signs: str) -> str:
     """What the charge became, as a bar of `BAR` columns for 100 %: what is missing stays blank, what is over is cut.
 
-    >>> charge_bar([50.0, 25.0, 12.5], "hc#"), charge_bar([None, 60.0, 60.0], "hc#"), charge_bar([-1.0, 0.0, 3.2], "hc#")
+    >>> charge_bar([50.0, 25.0, 12.5], "hc#"), charge_bar([None, 60.0, 60.0], "hc#"), charge_bar([-1.0, 0, 3.2], "hc#")
     ('hhhhhhhhcccc##  ', 'cccccccccc######', '#               ')
     """
     if all(share is None for share in shares):
