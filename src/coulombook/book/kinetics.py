@@ -2,15 +2,15 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 
 from coulombook.balance.settle import Settled
 from coulombook.book.entries import MA_PER_CM2, PERCENT, Row, level_of
+from coulombook.compare.adjustment import holm
 from coulombook.compare.kinetics import BEND_CHANCE, Onset, Tafel, onset, tafel
-from coulombook.compare.statistics import holm
 from coulombook.compare.trend import Points
 from coulombook.findings import Findings
 from coulombook.uncertainty.errors import DAY
@@ -38,8 +38,7 @@ _SLOPE_HEADS = (
 )  # fmt: skip
 
 
-@dataclass(frozen=True, slots=True)
-class _Key:
+class _Key(NamedTuple):
     """What one series is of, and the names of its levels from the least negative potential."""
 
     catalyst: str
@@ -48,8 +47,7 @@ class _Key:
     levels: tuple[str, ...]
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class _Series:
+class _Series(NamedTuple):
     """Series, over points (n,): results of runs."""
 
     keys: tuple[_Key, ...]
@@ -58,9 +56,11 @@ class _Series:
     series: IntArray  # ascending
     level: IntArray  # within the series
 
+    bounds: IntArray  # (n_series + 1,) first point of each
+
     def points_of(self, number: int, levels: int | None = None) -> IntArray:
         """The points of one series, or of so many of its lower levels."""
-        held = np.arange(*np.searchsorted(self.series, (number, number + 1)))
+        held = np.arange(self.bounds[number], self.bounds[number + 1])
         return held if levels is None else held[self.level[held] < levels]
 
 
@@ -132,8 +132,9 @@ def _series(settled: Settled, current: FloatArray) -> _Series:
             for basis in bases:
                 points += [(run, place, len(keys), level) for run, place, level in of_product]
                 keys.append(_Key(catalyst, product, basis, tuple(level for level, _ in held)))
-    columns = np.array(points, dtype=np.intp).reshape(-1, 4).T
-    return _Series(tuple(keys), *columns)
+    runs, currents, of_series, levels = np.array(points, dtype=np.intp).reshape(-1, 4).T
+    bounds = np.searchsorted(of_series, np.arange(len(keys) + 1))
+    return _Series(tuple(keys), runs, currents, of_series, levels, bounds)
 
 
 def _neighbours(levels: list[tuple[str, list[int]]], sound: NDArray[np.bool_]) -> list[tuple[str, list[int]]]:

@@ -3,14 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
 from coulombook.balance.settle import Settled
 from coulombook.book.entries import MA_PER_CM2, PERCENT, Row
+from coulombook.compare.adjustment import holm
 from coulombook.compare.stability import FEWEST_INJECTIONS, Drift, drift
-from coulombook.compare.statistics import holm
 from coulombook.findings import Findings
 from coulombook.uncertainty.errors import READING
 from coulombook.uncertainty.linearised import (
@@ -30,8 +30,7 @@ _ENOUGH_FREEDOM = 10  # to know a standard deviation to a quarter of itself
 QUANTITIES = (("FE / %", PERCENT), ("j / mA cm^-2", MA_PER_CM2))
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class _Courses:
+class _Courses(NamedTuple):
     """Figures over the injections of runs: each course (n_courses,) has points (n,)."""
 
     run: IntArray

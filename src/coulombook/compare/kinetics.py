@@ -13,7 +13,7 @@ three levels are kept.
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -41,8 +41,7 @@ FEW, BENT, FLAT = "cannot tell", "no straight range", "no rise"
 WITHIN, BELOW, ABOVE = "within the levels", "below the lowest level", "not reached"
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Tafel:
+class Tafel(NamedTuple):
     """Straight ranges of series, (n_series,) each; NaN where there is none.
 
     ``low`` and ``high`` are the ends of the interval of the slope, ``high`` infinite where the current may as well not
@@ -70,7 +69,7 @@ def tafel(
     points : Points
         Of runs, (n_runs,): x the potential [V], y the natural logarithm of a current density, in any unit.
     series : (n_runs,) int array
-        The series of each run.
+        The series of each run, ascending.
     level : (n_runs,) int array
         The level of each run within its series: 0, 1, ... from the least negative potential.
     n_series : int
@@ -157,8 +156,7 @@ def _bend(found: Lines) -> tuple[FloatArray, FloatArray]:
     return np.minimum(p[clearest, every], 1.0), (value < 0).astype(np.float64)
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Onset:
+class Onset(NamedTuple):
     """Potentials at which series pass a current density, (n_series,); NaN where they do not within their levels."""
 
     potential_volt: FloatArray
@@ -191,8 +189,7 @@ def onset(
     first = np.zeros(n_series + 1, dtype=np.intp)
     np.maximum.at(first, series + 1, level + 1)
     first = np.cumsum(first)
-    group = first[series] + level
-    e, y = (pool(one, group, int(first[-1])) for one in (potential_volt, log_current))
+    e, y = (pool(one, first[series] + level, int(first[-1])) for one in (potential_volt, log_current))
     mean = nominal(y.mean)
     verdict, above, held = [], [], []
     for number in range(n_series):

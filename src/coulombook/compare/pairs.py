@@ -12,8 +12,9 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from coulombook.compare.adjustment import holm
 from coulombook.compare.replicates import Scatter
-from coulombook.compare.statistics import holm, student_p, student_quantile
+from coulombook.compare.statistics import student_p, student_quantile
 from coulombook.uncertainty.linearised import FloatArray, Linearised, standard_uncertainty
 
 CLEAR_OF_ZERO = 3.0  # standard uncertainties: less and the interval of a logarithm is no interval of a ratio

@@ -5,7 +5,7 @@ The line is an assumption, and the time to 80 % of the start value an extension 
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -20,8 +20,7 @@ FARTHEST = 3.0  # lengths of the injections' span up to which a line may be exte
 STEADY, WITHIN, EXTENDED, BEYOND = "not reached", "within the run", "by extension", "far beyond the run"
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Drift:
+class Drift(NamedTuple):
     """Lines against time, (n_groups,) each.
 
     ``start`` is the line's value at the first point, ``mean`` the mean with its uncertainty, ``slope`` per unit of
@@ -60,7 +59,7 @@ def drift(
     time : (n,) float array
     y : (n,) numbers
     group : (n,) int array
-        Every group holds `FEWEST_INJECTIONS` points at least, at two different times.
+        Ascending; every group holds `FEWEST_INJECTIONS` points at least, at two different times.
     own : (n_errors,) bool array
         Which errors no two points of a group share.
     kind : (n_groups,) int array

@@ -1,8 +1,7 @@
-"""Tests between groups of replicates: Welch, one-way analysis of variance, Holm.
+"""Tests between groups of replicates: Welch, one-way analysis of variance.
 
-Sources: Welch, Biometrika 34 (1947) 28; Satterthwaite, Biometrics Bull. 2 (1946) 110; Holm, Scand. J. Stat. 6 (1979)
-65; Hedges, J. Educ. Stat. 6 (1981) 107. Student's t and F come from `scipy.special`, which loads in a third of the time
-of `scipy.stats`.
+Sources: Welch, Biometrika 34 (1947) 28; Satterthwaite, Biometrics Bull. 2 (1946) 110; Hedges, J. Educ. Stat. 6 (1981)
+107. Student's t and F come from `scipy.special`, which loads in a third of the time of `scipy.stats`.
 """
 
 from __future__ import annotations
@@ -162,19 +161,3 @@ def one_way(groups: Sequence[FloatArray]) -> Variance:
     a, b = len(groups) - 1, total - len(groups)
     f = math.inf if within == 0 else (between / a) / (within / b)
     return Variance(between, within, a, b, f, float(fdtrc(a, b, f)))
-
-
-def holm(p: Sequence[float]) -> list[float]:
-    """Holm's adjusted p values, in the order given; NaN stays NaN and does not count.
-
-    >>> [round(one, 3) for one in holm([0.01, 0.04, 0.03])]
-    [0.03, 0.06, 0.06]
-    """
-    known = [number for number, one in enumerate(p) if not math.isnan(one)]
-    order = sorted(known, key=lambda number: p[number])
-    adjusted = list(map(float, p))
-    highest = 0.0
-    for place, number in enumerate(order):
-        highest = max(highest, min(1.0, (len(order) - place) * p[number]))
-        adjusted[number] = highest
-    return adjusted

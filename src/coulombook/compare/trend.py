@@ -6,7 +6,8 @@ uncertainty of the slope comes from all errors: what moves all points of a serie
 reference electrode) cancels in it. v is found by moments, as what the weighted squares of the residuals exceed their
 expectation under the stated covariance, not below zero; it enters with its degrees of freedom (Welch-Satterthwaite).
 
-Many series are fitted at once, each a group of points.
+Many series are fitted at once, each a group of points. Results are named tuples: they are made in a twentieth of the
+time of slotted data classes, and every tally loads this module.
 
 Sources: York, Evensen, Martinez & De Basabe Delgado, Am. J. Phys. 72 (2004) 367; JCGM 100:2008, 5.2 and G.4;
 DerSimonian & Laird, Control. Clin. Trials 7 (1986) 177, for a variance by moments.
@@ -14,8 +15,7 @@ DerSimonian & Laird, Control. Clin. Trials 7 (1986) 177, for a variance by momen
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -26,22 +26,20 @@ from coulombook.uncertainty.linearised import (
     Linearised,
     Number,
     nominal,
-    sparse_map,
     squared_norms,
 )
 
 if TYPE_CHECKING:
     from scipy.sparse import csr_array
 
-_TURNS, _SETTLED = 100, 1e-13  # of York's iteration, which gains a digit or more a turn
+_TURNS, _NEAR, _SETTLED = 100, 1e-4, 1e-13  # of York's iteration, which gains a digit or more a turn
 _FLOOR = 1e-9  # no point weighs more than 1e9 times one with the largest error of its series
 _BELIEF = 3.0  # degrees of freedom of a stated uncertainty that is good to 40 % (JCGM 100:2008, G.4.2)
 _ODD = 0.001  # chance below which the scatter of a group is its own
 _ROUNDING = 1e-12  # a residual of this share of the values is rounding, not scatter
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Variances:
+class Variances(NamedTuple):
     """Variances of the x and the y of points, and the covariance of the two, (n,) each."""
 
     xx: FloatArray
@@ -58,8 +56,7 @@ class Variances:
         return Variances(self.xx[rows], self.xy[rows], self.yy[rows])
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Points:
+class Points(NamedTuple):
     """Points (n,) of series: values, variances by all errors and by those that each has for its own.
 
     ``derivatives`` holds those of y and, behind them, those of x where x has errors; None where nothing has.
@@ -102,8 +99,7 @@ def _variances(jacobian: csr_array, own: NDArray[np.bool_]) -> FloatArray:
     return np.stack((squared_norms(jacobian), squared_norms(kept)))
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Estimate:
+class Estimate(NamedTuple):
     """Values (n_groups,) with standard uncertainties, and their degrees of freedom: infinite where u is all stated."""
 
     value: FloatArray
@@ -133,8 +129,7 @@ def _finite(freedom: FloatArray) -> FloatArray:
     return np.minimum(freedom, 1e9)
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Scatter:
+class Scatter(NamedTuple):
     """Variance of a single point about its curve, (n_groups,), and how much of it the stated errors explain."""
 
     variance: FloatArray
@@ -200,9 +195,8 @@ class Scatter:
         return Estimate(value, np.sqrt(variance), np.where(self.unexplained > 0, freedom, np.inf))
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class _Held:
-    """The points that are fitted: ``rows`` (n,) of them all, each in its ``group`` (n,) of ``groups``."""
+class _Held(NamedTuple):
+    """The points that are fitted: ``rows`` (n,) of them all, each in its ``group`` (n,), ascending, of ``groups``."""
 
     points: Points
     rows: IntArray
@@ -218,20 +212,22 @@ class _Held:
         functions, derivatives = len(loadings), self.points.derivatives
         if derivatives is None:
             return np.zeros((functions, self.groups))
-        function = (np.arange(functions)[:, None] * self.groups + self.group).ravel()
-        column, weight = np.tile(self.rows, functions), loadings.ravel()
         n = len(self.points.x)
+        column, weight = self.rows[:, None], loadings[:, :, None]
         if derivatives.shape[0] > n:
             # an error of x moves y less the line by minus the slope
-            weight = np.concatenate((weight, (-slope[self.group] * loadings).ravel()))
-            function, column = np.tile(function, 2), np.concatenate((column, n + column))
-        shape = (functions * self.groups, derivatives.shape[0])
-        found = squared_norms(sparse_map(function, column, weight, shape) @ derivatives)
-        return found.reshape(functions, self.groups)
+            column = np.stack((self.rows, n + self.rows), axis=1)
+            weight = np.stack((loadings, -slope[self.group] * loadings), axis=2)
+        each = column.shape[1] * np.bincount(self.group, minlength=self.groups)
+        pointer = np.concatenate(([0], np.cumsum(np.tile(each, functions))))
+        matrix = type(derivatives)(
+            (weight.ravel(), np.tile(column.ravel(), functions), pointer),
+            shape=(functions * self.groups, derivatives.shape[0]),
+        )
+        return squared_norms(matrix @ derivatives).reshape(functions, self.groups)
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Lines:
+class Lines(NamedTuple):
     """A line through each group of points, (n_groups,) each.
 
     ``mean`` is that of y at ``centre``, both weighted. ``beside`` are the coefficients of the shapes that were fitted
@@ -273,7 +269,7 @@ def fit_lines(
 ) -> Lines:
     """Lines through groups of points.
 
-    Once with the points' own errors for weights, and again with the unexplained scatter added to them.
+    The points weigh by their own errors and by the scatter about a first line that these leave unexplained.
 
     Parameters
     ----------
@@ -281,7 +277,7 @@ def fit_lines(
     rows : (n,) int array
         The points that are used.
     group : (n,) int array
-        The group of each; one that does not hold two different x has no slope, NaN.
+        The group of each, ascending; one that does not hold two different x has no slope, NaN.
     groups : int
     shapes : (n_shapes, n) float array, optional
         Functions of x that may stand beside a line: their values at the points.
@@ -289,17 +285,33 @@ def fit_lines(
         Groups of one kind scatter alike, in proportion to their own errors, or to their mean where none are stated.
     """
     held = _Held(points, rows, group, groups)
-    none = np.zeros((0, len(rows)))
     with np.errstate(invalid="ignore", divide="ignore"):
-        first = _fit(held, np.zeros(groups), none, kind)
-        return _fit(held, np.nan_to_num(first.scatter.unexplained), none if shapes is None else shapes, kind)
+        slope, unexplained = _first(held)
+        return _fit(held, slope, unexplained, np.zeros((0, len(rows))) if shapes is None else shapes, kind)
 
 
-def _fit(held: _Held, unexplained: FloatArray, shapes: FloatArray, kind: IntArray | None) -> Lines:
+def _first(held: _Held) -> tuple[FloatArray, FloatArray]:
+    """First slopes, and the scatter beyond the errors that each point has for its own, good enough to weigh with."""
+    group, total = held.group, held.total
+    x, y = held.points.x[held.rows], held.points.y[held.rows]
+    from_mean = x - (total(x) / total(np.ones(len(x))))[group]
+    start = total(from_mean * y) / total(from_mean**2)
+    slope, weight, _ = _york(held, x, y, start, np.zeros(held.groups), _NEAR)
+    whole, count = total(weight), total(np.ones(len(x)))
+    u, v = x - (total(weight * x) / whole)[group], y - (total(weight * y) / whole)[group]
+    own = held.points.own.take(held.rows).of_residuals(slope[group])
+    excess = total(weight * (v - slope[group] * u) ** 2) - total(weight * own) * (count - 2.0) / count
+    found: FloatArray = np.maximum(excess * count / (whole * (count - 2.0)), 0.0)
+    return slope, np.where(count > 2, np.nan_to_num(found), 0.0)
+
+
+def _fit(
+    held: _Held, start: FloatArray, unexplained: FloatArray, shapes: FloatArray, kind: IntArray | None
+) -> Lines:
     group, total = held.group, held.total
     x, y = held.points.x[held.rows], held.points.y[held.rows]
     count = total(np.ones(len(x)))
-    slope, weight, to_slope = _york(held, x, y, unexplained)
+    slope, weight, to_slope = _york(held, x, y, start, unexplained, _SETTLED)
     whole = total(weight)
     centre, mean = total(weight * x) / whole, total(weight * y) / whole
     from_centre = x - centre[group]
@@ -345,16 +357,13 @@ def _fit(held: _Held, unexplained: FloatArray, shapes: FloatArray, kind: IntArra
 
 
 def _york(
-    held: _Held, x: FloatArray, y: FloatArray, unexplained: FloatArray
+    held: _Held, x: FloatArray, y: FloatArray, slope: FloatArray, unexplained: FloatArray, settled: float
 ) -> tuple[FloatArray, FloatArray, FloatArray]:
     """Slope of each group, the weight of each point, and how far each y moves its slope."""
     group, total = held.group, held.total
     own = held.points.own.take(held.rows)
     scattered = own.yy + unexplained[group]
     own = Variances(own.xx, own.xy, scattered + _floor(own.xx + scattered, held))
-    count = total(np.ones(len(x)))
-    from_mean = x - (total(x) / count)[group]
-    slope = total(from_mean * y) / total(from_mean**2)
     for _ in range(_TURNS):
         b = slope[group]
         weight = 1.0 / own.of_residuals(b)
@@ -363,7 +372,7 @@ def _york(
         beta = weight * (u * own.yy + b * v * own.xx - (b * u + v) * own.xy)
         before, slope = slope, total(weight * beta * v) / total(weight * beta * u)
         # a group without two different x has no slope to wait for
-        if not (np.abs(slope - before) > _SETTLED * np.abs(slope)).any():
+        if not (np.abs(slope - before) > settled * np.abs(slope)).any():
             break
     lever = weight * (beta - (total(weight * beta) / whole)[group])
     return slope, weight, lever / total(lever * u)[group]

@@ -7,8 +7,8 @@ import math
 import numpy as np
 import pytest
 
+from coulombook.compare.adjustment import holm
 from coulombook.compare.stability import BEYOND, EXTENDED, STEADY, WITHIN, Drift, drift
-from coulombook.compare.statistics import holm
 from coulombook.uncertainty.linearised import FloatArray, Linearised, sparse_map
 
 NOTHING = np.zeros(0, dtype=bool)

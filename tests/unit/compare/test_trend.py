@@ -116,24 +116,24 @@ def test_a_relative_error_that_all_share_cancels_in_a_relative_slope() -> None:
     assert relative(0.3) == pytest.approx((value, u), rel=1e-9)
 
 
-def test_groups_are_fitted_each_on_its_own_whatever_their_order() -> None:
+def test_groups_are_fitted_each_on_its_own_whatever_the_order_of_points() -> None:
     generator = np.random.default_rng(3)
     group = np.repeat([0, 1, 2], [4, 6, 9])
     x = generator.uniform(0.0, 1.0, 19)
     y = 2.0 * x + generator.normal(0.0, 0.1, 19)
-    together = fit(points(x, y, group, (0.01, 0.05), (0.1, 0.1)), group)
-    order = generator.permutation(19)
-    shuffled = fit(points(x[order], y[order], group[order], (0.01, 0.05), (0.1, 0.1)), group[order])
+    every = points(x, y, group, (0.01, 0.05), (0.1, 0.1))
+    together = fit(every, group)
+    # the same points in another order within their groups
+    order = np.concatenate([generator.permutation(np.flatnonzero(group == number)) for number in range(3)])
+    shuffled = fit_lines(every, order, group, 3)
     for number in range(3):
-        held = group == number
-        alone = fit(points(x[held], y[held], np.zeros(held.sum(), dtype=np.intp), (0.01, 0.05), (0.1, 0.1)))
+        alone = fit_lines(
+            every, np.flatnonzero(group == number), np.zeros((group == number).sum(), dtype=np.intp), 1
+        )
         for name in ("value", "u", "degrees_of_freedom"):
-            assert getattr(together.slope, name)[number] == pytest.approx(
-                getattr(alone.slope, name)[0], rel=1e-9
-            )
-            assert getattr(together.slope, name)[number] == pytest.approx(
-                getattr(shuffled.slope, name)[number], rel=1e-9
-            )
+            found = getattr(together.slope, name)[number]
+            assert found == pytest.approx(getattr(alone.slope, name)[0], rel=1e-9)
+            assert found == pytest.approx(getattr(shuffled.slope, name)[number], rel=1e-9)
 
 
 def test_points_on_a_line_leave_no_scatter_and_no_bend() -> None:
