@@ -261,6 +261,10 @@ def _write_workbook(path: Path, grids: Mapping[str, Sequence[Sequence[Any]]]) ->
         sheet = book.create_sheet(name)
         for row in grid:
             sheet.append([None if cell == "" else cell for cell in row])
+        for cell in (one for row in sheet.iter_rows() for one in row if one.data_type == "f"):
+            cell.data_type = (
+                "s"  # a name may begin with "=": whoever types it tells the program that it is text
+            )
     buffer = io.BytesIO()
     book.save(buffer)
     path.parent.mkdir(parents=True, exist_ok=True)

@@ -248,7 +248,9 @@ def gas_reading(day: DayTruth, hold: Hold, number: int) -> GasReading:
 
     def current(outlet: float) -> float:
         if hold.headspace_m3 is not None:
-            tau = hold.headspace_m3 / (outlet * hold.molar_volume_m3)
+            # vapour that a wet meter counts flushes the headspace as well
+            flushing = outlet * hold.molar_volume_m3 / _dry_share(day, hold)
+            tau = hold.headspace_m3 / flushing
             return -hold.current.mixed(start, at_electrode, tau)
         low, high = max(at_electrode - day.current_window_second, start), min(at_electrode, stop)
         return -hold.current.mean(low, high)
@@ -287,6 +289,15 @@ def gas_reading(day: DayTruth, hold: Hold, number: int) -> GasReading:
         assert day.tracer is not None
         fractions[day.tracer] = hold.tracer_mol_per_s / outlet
     return GasReading(time, passed, outlet, fractions)
+
+
+def _dry_share(day: DayTruth, hold: Hold) -> float:
+    """Share of a metered outlet volume that is no water vapour."""
+    if day.outlet_flow != "measured" or not day.meter_wet:
+        return 1.0
+    from tests.forward.chemistry import water_vapour_pascal
+
+    return 1.0 - water_vapour_pascal(hold.temperature_kelvin) / hold.pressure_pascal
 
 
 @dataclass(frozen=True, slots=True)
