@@ -12,6 +12,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+from tests.faults.day import swap, write_day
 from tests.published.test_hori_1994 import _hold, _printed, _tally
 from tests.system.test_docs import quoted, section, table, text_of
 
@@ -213,6 +214,38 @@ def test_roughness_and_selectivity_are_correlated_by_ranks_over_all_electrodes(
 def test_four_electrodes_are_too_few_for_any_word_about_roughness(mesh: coulombook.Book) -> None:
     found = coulombook.compare_days([mesh], catalysts=["Annealed copper mesh", "polished copper foil"])
     assert {row["verdict"] for row in found.tables["correlations"].records()} == {"too few"}
+
+
+def test_what_is_below_detection_is_not_known_to_be_nothing(tmp_path: Path) -> None:
+    # one run just shows ethylene, the other just does not: nothing tells the two apart
+    changes = {
+        "runs.csv": swap(
+            "run,catalyst", "run,level,catalyst", "a1,mesh", "a1,one,mesh", "a2,mesh,m1", "a2,one,foil,f1"
+        ),
+        "gas.csv": swap("C2H4,23\n", "C2H4,2.5\n", "C2H4,23.2\n", "C2H4,2.5\n", "C2H4,22.8\n", "C2H4,1.9\n"),
+    }
+    book = coulombook.tally(write_day(tmp_path, changes))
+    assert book.settled is not None
+    row = next(
+        number
+        for number, (run, name) in enumerate(
+            zip(book.settled.plan.products.run, book.settled.plan.products.species, strict=True)
+        )
+        if (run, name) == (1, "ethylene")
+    )
+    limit = 100 * book.settled.detection.efficiency_limit[row]
+    found = coulombook.compare_days([book], products=["C2+"], kinds=["FE", "C2+/C1"])
+    foil = rows(found, "series", quantity="C2+ FE / %", catalyst="foil")[0]
+    assert foil["value"] == 0.0
+    # a rectangular distribution between nothing and the limit, about nothing: L/sqrt(3)
+    assert foil["u(value)"] == pytest.approx(limit / 3**0.5)
+    ratio = rows(found, "series", quantity="C2+/C1", catalyst="foil")[0]
+    c1 = book.summary.set_index("run").loc["a2", "C1 FE / %"]
+    assert ratio["u(value)"] == pytest.approx(limit / 3**0.5 / c1)
+    pair = rows(found, "pairs", quantity="C2+ FE / %")[0]
+    mesh = rows(found, "series", quantity="C2+ FE / %", catalyst="mesh")[0]
+    assert float(str(mesh["value"])) > 3 * float(str(mesh["u(value)"])) > 0  # clear of zero, not of the foil
+    assert pair["verdict"] == "cannot tell"
 
 
 # --- published rows as series ---

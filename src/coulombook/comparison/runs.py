@@ -5,6 +5,10 @@ borrowed by carbon number is uncertain by; a specific capacitance of the same va
 day-wide error of a quantity that the user says is one, such as of the same flow meter. Everything else is independent
 between days, even where it might not be: the interval of a difference between days is then too wide rather than too
 narrow.
+
+A sum of products counts those below detection as nothing, which they need not be: each adds an error of its detection
+limit over sqrt(3), as of anything between nothing and that limit (JCGM 100:2008, 4.3.7). All runs of a catalyst share
+it, for a product that hides from one hides from the next.
 """
 
 from __future__ import annotations
@@ -13,6 +17,7 @@ import hashlib
 import math
 from collections.abc import Hashable, Mapping, Sequence
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -21,9 +26,13 @@ from coulombook.balance.settle import Settled
 from coulombook.balance.verdicts import closures
 from coulombook.book import Book
 from coulombook.book.entries import level_of
+from coulombook.compare.replicates import widened
 from coulombook.compare.stacking import share_errors, stack
 from coulombook.uncertainty.errors import DAY
-from coulombook.uncertainty.linearised import Linearised, Number, gather, linear_map, sparse_map
+from coulombook.uncertainty.linearised import Linearised, Number, gather, linear_map, nominal, sparse_map
+
+if TYPE_CHECKING:
+    from scipy.sparse import csr_array
 
 TOTALS = ("C2+", "C1", "H2")
 
@@ -127,8 +136,16 @@ def compared_runs(
         A catalyst of one day is another catalyst than that of the same name on another day.
     """
     days = [_settled(book) for book in books]
-    shared = share_errors([_keys(day, one_error) for day in days])
+    owners = [
+        [f"{run.catalyst} ({label})" if apart else run.catalyst for run in day.plan.runs]
+        for label, day in zip(labels, days, strict=True)
+    ]
+    hidden = [_below_detection(day, of_day) for day, of_day in zip(days, owners, strict=True)]
+    shared = share_errors(
+        [[*_keys(day, one_error), *more.keys] for day, more in zip(days, hidden, strict=True)]
+    )
     outcomes = [day.outcome for day in days]
+    sums = [_with_hidden(day, more) for day, more in zip(days, hidden, strict=True)]
 
     def number(of_day: Sequence[Number]) -> Linearised:
         return stack(of_day, shared)
@@ -138,7 +155,7 @@ def compared_runs(
     return ComparedRuns(
         tuple(label for label, _ in runs),
         tuple(run.name for _, run in runs),
-        tuple(f"{run.catalyst} ({label})" if apart else run.catalyst for label, run in runs),
+        tuple(owner for of_day in owners for owner in of_day),
         # a run that names no electrode had one of its own
         tuple((label, run.electrode or f"of run {run.name}") for label, run in runs),
         tuple(level_of(run) for _, run in runs),
@@ -146,11 +163,9 @@ def compared_runs(
         number([one.electrical.potential_rhe_volt for one in outcomes]),
         number([one.electrical.current_density_ampere_per_m2 for one in outcomes]),
         number([one.run_roughness_factor for one in outcomes]),
-        number([one.ratio for one in outcomes]),
+        number([_ratio(day, of_day) for day, of_day in zip(days, sums, strict=True)]),
         {
-            "C2+": number([one.c2_plus for one in outcomes]),
-            "C1": number([one.c1 for one in outcomes]),
-            "H2": number([one.hydrogen for one in outcomes]),
+            **{name: number([of_day[name] for of_day in sums]) for name in TOTALS},
             **{name: number([_of_product(day, name) for day in days]) for name in products},
         },
     )
@@ -160,6 +175,55 @@ def _settled(book: Book) -> Settled:
     if book.settled is None:
         raise ValueError(f"the book of {book.day} holds its tables alone; tally the day anew")
     return book.settled
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Hidden:
+    """Errors of what a day counts as nothing: ``keys`` of each, and its loadings (n_runs, n_errors) on the totals."""
+
+    keys: tuple[Hashable, ...]
+    loadings: Mapping[str, csr_array]
+
+
+def _below_detection(day: Settled, owner: Sequence[str]) -> _Hidden:
+    """One error for each product that was looked for and not detected, by owner of the runs."""
+    products = day.plan.products
+    rows = np.flatnonzero(~day.detection.detected)
+    run = products.run[rows]
+    named = [
+        (owner[one], products.species[row]) for one, row in zip(run.tolist(), rows.tolist(), strict=True)
+    ]
+    known = {key: place for place, key in enumerate(dict.fromkeys(named))}
+    error = np.array([known[key] for key in named], dtype=np.intp)
+    size = np.nan_to_num(day.detection.efficiency_limit[rows]) / math.sqrt(3.0)
+    carbon = products.carbon[rows]
+    loadings = {
+        name: sparse_map(run, error, size * counts, (len(day.plan.runs), len(known)))
+        for name, counts in (("C2+", carbon > 1), ("C1", carbon == 1), ("H2", carbon == 0))
+    }
+    return _Hidden(tuple(("below detection", *key) for key in known), loadings)
+
+
+def _with_hidden(day: Settled, hidden: _Hidden) -> dict[str, Number]:
+    """The totals of a day with the errors of what they count as nothing."""
+    outcome = day.outcome
+    totals = {"C2+": outcome.c2_plus, "C1": outcome.c1, "H2": outcome.hydrogen}
+    if not hidden.keys:
+        return totals
+    nothing = sparse_map([], [], [], (len(day.plan.runs), len(day.inputs.sources)))
+    return {
+        name: widened(
+            x if isinstance(x, Linearised) else Linearised(nominal(x), nothing), hidden.loadings[name]
+        )
+        for name, x in totals.items()
+    }
+
+
+def _ratio(day: Settled, totals: Mapping[str, Number]) -> Number:
+    """C2+/C1 of each run, (R,); NaN where no C1 product was found."""
+    found = np.where(np.isfinite(nominal(day.outcome.ratio)), 0.0, np.nan)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        return totals["C2+"] / (totals["C1"] + found)
 
 
 def _of_product(day: Settled, name: str) -> Number:
