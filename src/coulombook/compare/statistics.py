@@ -131,7 +131,8 @@ class Variance:
     @property
     def r_squared(self) -> float:
         """Share of the sum of squares that the groups explain."""
-        return self.between / (self.between + self.within)
+        whole = self.between + self.within
+        return self.between / whole if whole > 0 else math.nan
 
     @property
     def residual_deviation(self) -> float:
@@ -159,5 +160,7 @@ def one_way(groups: Sequence[FloatArray]) -> Variance:
     between = sum(len(group) * (mean - grand) ** 2 for group, mean in zip(shifted, means, strict=True))
     within = sum(float(np.sum((group - mean) ** 2)) for group, mean in zip(shifted, means, strict=True))
     a, b = len(groups) - 1, total - len(groups)
-    f = math.inf if within == 0 else (between / a) / (within / b)
+    # values that are all the same, such as of a product that nobody makes, do not differ
+    without_scatter = math.inf if between > 0 else 0.0
+    f = without_scatter if within == 0 else (between / a) / (within / b)
     return Variance(between, within, a, b, f, float(fdtrc(a, b, f)))
