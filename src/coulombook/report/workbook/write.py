@@ -250,7 +250,7 @@ def _draw_charts(workbook: Workbook, charts: Sequence[Chart], styles: Styles) ->
         )
     page.set_landscape()
     page.set_paper(9)
-    page.set_print_scale(62)
+    page.set_print_scale(54)
     # two rows of charts to a page, none of them cut
     page.set_h_pagebreaks(
         range(_CHARTS_FROM + 2 * _CHART_ROWS, _CHARTS_FROM + _CHART_ROWS * len(charts), 2 * _CHART_ROWS)
