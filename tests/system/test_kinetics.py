@@ -103,6 +103,15 @@ def test_tafel_slopes_of_a_day_are_those_it_was_made_with(plain: Book, product: 
     assert 0.0 < row["u(Tafel slope) / mV"] < 5.0
 
 
+def test_a_current_that_falls_has_neither_a_slope_nor_a_bound_of_one(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setitem(LAWS, "carbon monoxide", (-0.3, 2.0))
+    row = kinetics(tallied(tmp_path, series_day()))["carbon monoxide", "geometric"]
+    assert row["verdict"] == "no rise"
+    assert [row[f"Tafel slope{end} / mV"] for end in ("", " low", " high")] == [None, None, None]
+
+
 def test_a_straight_day_has_no_finding_about_transport(plain: Book) -> None:
     assert not kinds(plain) & {"transport-limit", "falls-away", "drifting-run"}
 

@@ -164,7 +164,7 @@ def _row(settled: Settled, series: _Series, number: int, slope: Tafel, start: On
         "to E vs RHE / V": float(potential.min()) if levels else None,
         "Tafel slope / mV": float(slope.slope_volt[number] * MILLIVOLT),
         "u(Tafel slope) / mV": float(slope.u_slope_volt[number] * MILLIVOLT),
-        "Tafel slope low / mV": float(slope.low_volt[number] * MILLIVOLT),
+        "Tafel slope low / mV": _finite(slope.low_volt[number] * MILLIVOLT),
         "Tafel slope high / mV": _finite(slope.high_volt[number] * MILLIVOLT),
         "p of bend": float(slope.bend_p[number]),
         "verdict": slope.verdict[number],
