@@ -29,10 +29,10 @@ ROOT = Path(__file__).parents[2]
 DOCUMENT = ROOT / "docs" / "reliability.md"
 FUZZED = ROOT / "tests" / "fuzz" / "log.csv"
 MUTATED = ROOT / "tests" / "mutation" / "log.csv"
-EVERY = 100_000  # more than there are calls of the system or touches of a file
+EVERY = 100_000  # more than a day has touches of files
 NUMBERS = {
     "moments": 200,
-    "calls": EVERY,
+    "calls": 400,
     "gone": EVERY,
     "flicker": EVERY,
     "looked-at": 100,
