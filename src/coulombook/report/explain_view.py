@@ -68,7 +68,11 @@ def verdict(book: Book) -> str:
     )
     if not blamed:
         return f"{opening}, and no single cause explains it better than chance would."
-    return f"{opening}: {in_words(ranked[0])} ({evidence_in_words(ranked[0])})."
+    alike = len(not_told_from(ranked[0], ranked))
+    causes = "one other cause" if alike == 1 else f"{alike} other causes"
+    # alone, the evidence against no cause would read as evidence against every other
+    also = f"; {causes} cannot be told apart from it" if alike else ""
+    return f"{opening}: {in_words(ranked[0])} ({evidence_in_words(ranked[0])}){also}."
 
 
 def _probability(p: float) -> str:
@@ -147,7 +151,7 @@ def _show_causes(ranked: Sequence[Record], console: Console) -> None:
     hanging("  ", _sentence(evidence_in_words(best)), console)
     if best["bench test"]:
         hanging("  to decide: ", str(best["bench test"]), console)
-    near = _cannot_be_told_from(best, ranked)
+    near = not_told_from(best, ranked)
     if not near:
         hanging("  ", "It can be told apart from every other cause.", console)
     else:
@@ -166,7 +170,7 @@ def _show_causes(ranked: Sequence[Record], console: Console) -> None:
         hanging("", _sentence(f"{causes} the day so much less well that they can be left aside."), console)
 
 
-def _cannot_be_told_from(best: Record, ranked: Sequence[Record]) -> list[Record]:
+def not_told_from(best: Record, ranked: Sequence[Record]) -> list[Record]:
     """Rows of the causes that the best one names as its like."""
     names = set(str(best["told apart"]).split("; "))
     return [row for row in ranked[1:] if _name(row) in names]

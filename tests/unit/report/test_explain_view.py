@@ -149,6 +149,24 @@ def test_causes_alike_stand_together_with_their_tests_and_the_rest_is_counted() 
     assert "The other cause explains the day so much less well" in beside
 
 
+@pytest.mark.parametrize(
+    ("apart", "ending"),
+    [
+        ("yes", "39.5)."),
+        ("gas-lost", "39.5); one other cause cannot be told apart from it."),
+        ("gas-lost; crossover (a1)", "39.5); 2 other causes cannot be told apart from it."),
+    ],
+)
+def test_the_sentence_of_a_day_says_how_many_causes_fit_as_well(apart: str, ending: str) -> None:
+    ranked = [
+        cause("outlet-flow", evidence=39.5, apart=apart),
+        cause("gas-lost", evidence=39.0),
+        cause("crossover", where="a1", evidence=38.0),
+        NONE,
+    ]
+    assert verdict(book(ranked, "open")).endswith(ending)
+
+
 def test_what_moves_no_efficiency_is_excluded_by_name() -> None:
     printed = " ".join(shown(book([NONE], "closed")).split())
     assert "Not to blame: the reference electrode, the pH and the resistance" in printed

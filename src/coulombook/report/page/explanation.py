@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from coulombook.book import Book
-from coulombook.report.explain_view import EXCLUDED, NO_CAUSE, Record, in_words
+from coulombook.report.explain_view import EXCLUDED, NO_CAUSE, Record, in_words, not_told_from
 from coulombook.report.page.html import Html, element, join
 from coulombook.report.page.tables import Column, book_table, number_datum, show_table, text_datum
 from coulombook.report.page.words import number_of, sentence
@@ -14,7 +14,7 @@ _WORTH_A_WORD = (
     2.0  # 2 ln of a Bayes factor; less is "not worth more than a bare mention" (Kass & Raftery 1995)
 )
 SHOWN = 6  # causes that stand open, below the best
-_TOLD_APART = "yes"
+ALIKE_SHOWN = 3  # causes named beside the best as its like
 
 
 def show_explanation(book: Book) -> Html | None:
@@ -29,7 +29,7 @@ def show_explanation(book: Book) -> Html | None:
     ]
     best, others = blamed[:1], blamed[1:]
     return join(
-        [_best(row) for row in best],
+        [_best(row, ranked) for row in best],
         _table(blamed[:SHOWN]) if others else None,
         element("p", EXCLUDED, class_="aside"),
         element(
@@ -42,14 +42,17 @@ def show_explanation(book: Book) -> Html | None:
     )
 
 
-def _best(row: Record) -> Html:
-    apart = str(row["told apart"] or _TOLD_APART)
+def _best(row: Record, ranked: Sequence[Record]) -> Html:
+    alike = not_told_from(row, ranked)
+    named = [in_words(one) for one in alike[:ALIKE_SHOWN]]
+    if len(alike) > ALIKE_SHOWN:
+        named.append(f"and {len(alike) - ALIKE_SHOWN} more")
     return element(
         "p",
         element("strong", _sentence(in_words(row))),
         " It can be told apart from every other cause."
-        if apart == _TOLD_APART
-        else f" It cannot be told apart from: {apart}.",
+        if not alike
+        else f" It cannot be told apart from: {'; '.join(named)}.",
         join(" ", element("span", "To decide: ", class_="lead"), f"{row['bench test']}.")
         if row["bench test"]
         else None,

@@ -6,7 +6,7 @@ from collections.abc import Mapping, Sequence
 
 from coulombook.book import Book, Cell
 from coulombook.report.page.html import Child, Html, element, join
-from coulombook.report.page.words import JOINED, bare, counted, listed, measured, number_of
+from coulombook.report.page.words import JOINED, bare, listed, measured, number_of
 
 Row = Mapping[str, Cell]
 HYDROGEN = "hydrogen"
@@ -127,5 +127,9 @@ def _closing(runs: Sequence[Row]) -> str:
     if len(open_runs) > _AT_MOST:
         told.append(f"{len(open_runs) - _AT_MOST} more are open")
     closed = len(judged) - len(open_runs)
+    if len(judged) == 1:
+        return f"Its run does not close; {listed(told)}."
+    if not closed:
+        return f"None of its {len(judged)} runs closes; {listed(told)}."
     verb = "closes" if closed == 1 else "close"
-    return f"Of its {counted(len(judged), 'run')} {closed or 'none'} {verb}; {listed(told)}."
+    return f"Of its {len(judged)} runs {closed} {verb}; {listed(told)}."
