@@ -80,7 +80,14 @@ def _locate(name: str, day: Folder, places: Sequence[Path], where: str, findings
     for place in places:
         if place.is_dir():
             known += sorted(one.name for one in place.iterdir() if one.is_dir())
-    looked = ", ".join("<day>/calibrations" if place == places[0] else str(place) for place in places)
+    looked = " or ".join(
+        "<day>/calibrations"
+        if place == places[0]
+        else str(place)
+        if place.is_absolute()
+        else f"./{place.as_posix()}"
+        for place in places
+    )
     findings.add(
         "missing-calibration",
         where,
@@ -96,7 +103,12 @@ def read_calibration(
     folder: Folder, name: str, species: SpeciesTable, findings: Findings
 ) -> Calibration | None:
     """One calibration folder, or None after a fault."""
-    settings = read_settings(folder, folder.root / "calibration.toml", findings)
+    settings = read_settings(
+        folder,
+        folder.root / "calibration.toml",
+        findings,
+        'add the file; the line kind = "gas" or kind = "liquid" is enough to begin with',
+    )
     table_path = next(
         (path for suffix in (".csv", ".tsv") if (path := folder.root / f"standards{suffix}").exists()),
         folder.root / "standards.csv",

@@ -186,7 +186,7 @@ def flows(
             table.table_origin,
             text,
             "add the column, or a default to [defaults], or choose another outlet_flow in [gas]",
-            found=", ".join(f"'{head}'" for head in table.heads.values())[:300],
+            found=", ".join(f"'{head}'" for head in (*table.heads.values(), *table.carried))[:300],
             expected=expected,
         )
         return
@@ -346,9 +346,9 @@ def assumed(
             value is None and run not in told
             for value, run in zip(table.numbers(quantity), table.words("run"), strict=True)
         )
-        if not missing or quantity in defaults:
+        if not missing or quantity in defaults or quantity in table.unread:
             continue
-        runs = f"{missing} of {total} runs" if missing < total else "all runs" if total > 1 else "the run"
+        runs = f"{missing} of {total} runs" if missing < total else "any run" if total > 1 else "the run"
         potential = ": potentials keep their ohmic drop" if quantity == "resistance" else ""
         findings.add(
             kind,

@@ -73,8 +73,10 @@ def report_outside(findings: Findings, where: object, found: str) -> None:
     )
 
 
-def read_bytes(folder: Folder, path: Path, limit_byte: int, findings: Findings) -> bytes | None:
-    """The content of a small file, or None after a fault."""
+def read_bytes(
+    folder: Folder, path: Path, limit_byte: int, findings: Findings, mend: str = "add the file"
+) -> bytes | None:
+    """The content of a small file, or None after a fault; ``mend`` says what would do where it is not there."""
     name = folder.name_of(path)
     if not folder.holds(path):
         report_outside(findings, name, name)
@@ -85,7 +87,7 @@ def read_bytes(folder: Folder, path: Path, limit_byte: int, findings: Findings) 
                 "missing-file",
                 name,
                 "there is no such file",
-                "add the file",
+                mend,
                 found="nothing there" if not path.exists() else "something that is no file",
                 expected=f"the file '{name}'",
             )

@@ -158,7 +158,7 @@ def _reference(part: Section, values: DaySettings) -> DaySettings:
             "unknown-name",
             part.where("electrode"),
             "the reference electrode is not in the table",
-            "give its potential against SHE at 25 degC as the key 'potential'"
+            "write a name of the table, or give the potential against SHE at 25 degC as the key 'potential'"
             + did_you_mean(name, reference_names()),
             found=f"'{name}'",
             expected=", ".join(f"'{one}'" for one in reference_names()),

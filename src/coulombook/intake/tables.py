@@ -147,10 +147,11 @@ def typed_table(
         _read_column(grid, column, grid.heads[place], cells, default, unused, decimal_comma, table, findings)
     if unused:
         rows = ", ".join(str(table.row_numbers[place]) for place in sorted(unused)[:10])
+        many = len(unused) > 1
         findings.add(
             "left-out",
             Origin(table.file, table.sheet),
-            f"{len(unused)} row{'s are' if len(unused) > 1 else ' is'} marked unused (row {rows}"
+            f"{len(unused)} {'rows are' if many else 'row is'} marked unused ({'rows' if many else 'row'} {rows}"
             f"{', ...' if len(unused) > 10 else ''}) and left out",
         )
     return table
@@ -216,11 +217,22 @@ def _nearest_head(head: str, names: Sequence[str], schema: Schema) -> str | None
     # "I/mA", "I [mA]" and "I (mA)" are how heads come from instruments
     quantity = re.split(r"\s*[/\[(]", head, maxsplit=1)[0] if head else ""
     for text in (parse_head(head).quantity, quantity.casefold()):
-        near = nearest(text, names, cutoff=0.7)
+        near = nearest(text, names, cutoff=0.7) or _longer_name(text, names, schema)
         if near:
             column = schema.by_name.get(parse_head(near).quantity)
             return column.head if column else near
     return None
+
+
+def _longer_name(text: str, names: Sequence[str], schema: Schema) -> str | None:
+    """The one head whose words hold all words of ``text``, as "electrode area" does those of "area"."""
+    words = set(text.split())
+    longer = {
+        column.head
+        for name in names
+        if (column := schema.by_name.get(parse_head(name).quantity)) and words <= set(column.quantity.split())
+    }
+    return longer.pop() if words and len(longer) == 1 else None
 
 
 def _report_missing_column(grid: Grid, schema: Schema, column: Column, findings: Findings) -> None:

@@ -52,9 +52,11 @@ class Settings:
         return ", ".join(parts)
 
 
-def read_settings(folder: Folder, path: Path, findings: Findings) -> Settings | None:
-    """A TOML file, or None after a fault."""
-    data = read_bytes(folder, path, LARGEST_SETTINGS_BYTE, findings)
+def read_settings(
+    folder: Folder, path: Path, findings: Findings, mend: str = "add the file"
+) -> Settings | None:
+    """A TOML file, or None after a fault; ``mend`` says what would do where it is not there."""
+    data = read_bytes(folder, path, LARGEST_SETTINGS_BYTE, findings, mend)
     if data is None:
         return None
     name = folder.name_of(path)
@@ -75,7 +77,7 @@ def read_settings(folder: Folder, path: Path, findings: Findings) -> Settings | 
             findings,
             Origin(name, None, row),
             f"{line}{re.sub(r' *[(]at .*[)]', '', message[:1].lower() + message[1:])}",
-            "correct the line; text stands in quotes, a key with blanks too",
+            "correct the line; text stands in quotes, a key with blanks too, and a date is written 2043-05-18",
         )
         return None
     except ValueError as error:  # Python turns a number of thousands of digits away

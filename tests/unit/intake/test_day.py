@@ -82,6 +82,21 @@ def test_defaults_taken_are_one_finding_a_column(open_changed: Open) -> None:
     assert [run.temperature_kelvin for run in opened.source.day.runs] == [298.15, 303.15, 298.15]
 
 
+def test_no_default_is_noted_for_a_column_whose_head_is_at_fault(open_changed: Open) -> None:
+    runs = "run,catalyst,electrode,electrode area / cm^2,pH,temperature / J,inlet flow / sccm\n"
+    rows = "a1,mesh,m1,1,7,22,20\na2,mesh,m1,1,7,22,20\n"
+    opened = open_changed({"runs.csv": runs + rows, "traces/a2.csv": MINIATURE["traces/a1.csv"]})
+    texts = [one.text for one in opened.findings]
+    assert not any("no temperature is given" in text for text in texts)
+    assert "no pressure is given for any run; 101.325 kPa was taken" in texts
+
+
+def test_a_missing_flow_is_told_beside_every_head_there_is(open_changed: Open) -> None:
+    opened = open_changed({"runs.csv": MINIATURE["runs.csv"].replace("inlet flow", "flow")})
+    (fault,) = [one for one in opened.findings if one.kind == "missing-column"]
+    assert "'flow / sccm'" in fault.found
+
+
 def test_the_species_of_the_day_are_found_by_name_formula_or_alias(open_changed: Open) -> None:
     gas = "run,injection,time / s,channel,analyte,peak area\n" + "".join(
         f"a1,{number},1,FID,{name},1\n"

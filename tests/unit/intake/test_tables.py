@@ -110,6 +110,19 @@ def test_a_missing_column_is_told_with_the_head_that_may_be_meant() -> None:
     assert "electrode area (cm^2)" in fault.mend
 
 
+@pytest.mark.parametrize(
+    ("head", "mend"),
+    [
+        ("area / cm2", "if 'electrode area / cm^2' is meant, write the head so"),
+        ("potential / V", "if 'set potential / V' is meant, write the head so"),
+        ("flow / sccm", ""),  # of the inlet, the outlet or a tracer: nobody can know
+    ],
+)
+def test_a_head_cut_short_is_told_with_the_one_head_it_may_stand_for(head: str, mend: str) -> None:
+    _, findings = _table(f"run,{head}\na,1\n", schema.RUNS)
+    assert [one.mend for one in findings if one.kind == "unread-column"] == [mend]
+
+
 def test_two_columns_of_one_quantity_are_a_fault() -> None:
     _, findings = _table(GAS.replace("uV s", "uV s,area") + "a1,1,2,FID,CO,5,6\n", schema.GAS)
     assert [one.kind for one in findings] == ["repeated-column"]
