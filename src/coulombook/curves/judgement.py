@@ -62,6 +62,12 @@ class Judgement:
         return self.most_outlying if self.outlier_p < 1.0 - self.level else None
 
     @property
+    def tested(self) -> bool:
+        """Whether the points allow any test of form, scatter or outlying points."""
+        tests = (self.lack_of_fit, self.mandel, self.homogeneity, self.goodness, self.chi_square_p)
+        return self.most_outlying is not None or any(test is not None for test in tests)
+
+    @property
     def fits(self) -> bool:
         """Whether neither the replicates, nor ISO 6143's measure, nor chi-square speak against the curve."""
         alpha = 1.0 - self.level

@@ -42,6 +42,7 @@ class Verdict(StrEnum):
     UNEVEN = "uneven"
     OUTLIER = "outlier"
     BORROWED = "borrowed"
+    UNTESTED = "untested"  # too few standards for any test
     SOUND = "sound"
 
 
@@ -107,7 +108,7 @@ class Entry:
             return Verdict.OUTLIER
         if judged.suggested_weights is not None:
             return Verdict.UNEVEN
-        return Verdict.SOUND
+        return Verdict.SOUND if judged.tested else Verdict.UNTESTED
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -49,6 +49,7 @@ _MEANING = {
     Verdict.UNEVEN: "other weights would suit the scatter better",
     Verdict.OUTLIER: "one standard does not belong to the others",
     Verdict.BORROWED: "made like another analyte's curve",
+    Verdict.UNTESTED: "too few standards for any test",
 }
 
 

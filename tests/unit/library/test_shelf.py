@@ -59,6 +59,8 @@ def library(tmp_path: Path, rows: list[str], curve: str = 'form = "line"\nweight
     [
         (gas_rows(), 'form = "line"\nweights = "1/x^2"', Verdict.SOUND),
         (gas_rows()[:1] + gas_rows()[2:3], 'form = "line"', Verdict.UNKNOWN),
+        # one degree of freedom, no repeats: no test has anything to go by
+        (gas_rows()[:1] + gas_rows()[2:3] + gas_rows()[4:5], 'form = "line"', Verdict.UNTESTED),
         (falling_rows(), 'form = "line"', Verdict.NO_CURVE),
         # a line through points of a square root: replicates within 0.1 %, levels off by much more
         (
