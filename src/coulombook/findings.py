@@ -140,7 +140,7 @@ KINDS: dict[str, tuple[Severity, str]] = {
     "resistance-missing": (Severity.WARN, "no solution resistance is given; 0 ohm was taken"),
     "flow-matters": (Severity.WARN, "inlet flow taken for outlet flow moves a total"),
     "no-products": (Severity.WARN, "a run has no gas peaks and no liquid readings"),
-    "balance-open": (Severity.WARN, "the total differs from 100 % by more than its u allows"),
+    "balance-open": (Severity.WARN, "the total lies off 100 % beyond its uncertainty"),
     "transport-limit": (Severity.WARN, "partial currents fall off as transport would limit them"),
     "log-gap": (Severity.WARN, "a log has no readings for a part of its run's window"),
     "negative-amount": (Severity.WARN, "a reading below blank or intercept gives an amount < 0"),

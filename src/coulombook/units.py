@@ -110,6 +110,7 @@ _SIGNS = str.maketrans(
 )
 _TERM = r"(?:1|[^\W\d]\w*(?:\^-?\d{1,2}(?:\.\d)?)?)"
 _UNIT = re.compile(rf"\(?\s*{_TERM}(?:[\s*/()]+{_TERM})*\s*\)?")
+_SYMBOLS = {one.casefold(): one for one in ("I", "E", "U", "pH", "T1", "CO2")}
 _POWER = re.compile(r"(?<=[A-Za-z])(-?\d{1,2})(?!\w)")
 _QUANTITY = re.compile(r"\s*([+\-−]?\s*(?:\d+\.?\d*|\.\d+)(?:[eE][+\-−]?\d+)?)\s*(.*?)\s*", re.DOTALL)
 _LONGEST_UNIT = 60  # characters; no unit of the trade comes near
@@ -229,6 +230,11 @@ def quantity_to_si(text: str, dimension: str, *, difference: bool = False) -> fl
     parsed = parse_quantity(text)
     how = conversion(parsed.unit or "1", dimension)
     return parsed.number * how.factor + (0.0 if difference else how.offset)
+
+
+def written(quantity: str) -> str:
+    """A quantity as people write it: its symbols in their own case, where heads are matched without regard to it."""
+    return " ".join(_SYMBOLS.get(word, word) for word in quantity.split())
 
 
 def nearest(text: str, known: Sequence[str], cutoff: float = 0.6) -> str | None:

@@ -50,7 +50,7 @@ def test_undeclared_uncertainties_are_assumed_and_told(tally: Tally) -> None:
         one.where.removeprefix("day.toml, ") for one in book.findings if one.kind == "assumed-uncertainty"
     }
     assert told == {
-        "inlet flow", "peak area", "integral", "standard amount", "compartment volume", "aliquot", "i",
+        "inlet flow", "peak area", "integral", "standard amount", "compartment volume", "aliquot", "I",
     }  # fmt: skip
     gas = row(book, "ledger", product="carbon monoxide")
     # 1 % of flow, 1 % of the area, 0.2 % of current; the curve runs through its standards
@@ -77,7 +77,7 @@ def test_what_one_group_declares_leaves_the_others_assumed(tally: Tally) -> None
     told = {
         one.where.removeprefix("day.toml, ") for one in book.findings if one.kind == "assumed-uncertainty"
     }
-    assert "i" in told
+    assert "I" in told
     assert not told & {"inlet flow", "peak area"}
     gas = row(book, "ledger", product="carbon monoxide")
     relative = math.sqrt(0.03**2 + 0.002**2)

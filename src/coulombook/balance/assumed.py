@@ -13,6 +13,7 @@ from dataclasses import dataclass
 from coulombook.balance.readings import DaySettings, OutletFlow
 from coulombook.findings import Findings
 from coulombook.uncertainty.errors import DAY, READING, Declaration
+from coulombook.units import written
 
 
 @dataclass(frozen=True, slots=True)
@@ -80,7 +81,7 @@ def report_assumed(settings: DaySettings, moved: Sequence[bool], findings: Findi
         if moves and one.relative is not None:
             findings.add(
                 "assumed-uncertainty",
-                f"day.toml, {one.quantity}",
+                f"day.toml, {written(one.quantity)}",
                 f"no uncertainty is declared for it or its kind; a relative standard uncertainty of "
                 f"{one.relative * 100:g} %, shared by the {one.shared}, was taken"
                 f"{_OR_SCATTER if one.quantity in ('peak area', 'integral') else ''}",

@@ -16,6 +16,7 @@ from coulombook.curves.nmr import signal_agreement
 from coulombook.findings import Findings
 from coulombook.prose.numbers import with_uncertainty
 from coulombook.uncertainty.linearised import nominal, standard_uncertainty
+from coulombook.units import written
 
 QUANTIFIED, ABOVE, BELOW = "quantified", "above calibration", "below calibration"
 UNDETECTED = "below detection"
@@ -230,7 +231,8 @@ def report_doubts(settled: Settled, status: list[str], closure: list[str], findi
             findings.add(
                 "uncertainty-not-used",
                 declared.origin,
-                f"the uncertainty of {declared.quantity} (shared: {declared.shared}) moves no result of this day",
+                f"the uncertainty of {written(declared.quantity)} (shared: {declared.shared}) moves no result of this "
+                "day",
                 "check the quantity and the sharing, or take the entry out",
             )
     total = nominal(outcome.total)
@@ -298,7 +300,8 @@ def report_checks(settled: Settled, findings: Findings) -> None:
                 findings.add(
                     "check-off",
                     check.origin,
-                    f"the check of {used.name} lies {score:+.1f} standard deviations off its curve; the drift "
+                    f"the check of {used.name} lies {abs(score):.1f} standard deviations "
+                    f"{'above' if score > 0.0 else 'below'} its curve; the drift "
                     "correction takes it for drift of the detector, linear in time between checks",
                     "if it is no drift (wrong cylinder, leak), take the check out; if it is, recalibrate",
                 )

@@ -48,7 +48,7 @@ def forecast(day: Day, settled: Settled | None) -> list[str]:
         else "no scans: no real area, currents on the geometric area alone"
     )
     if not day.settings.declared:
-        lines.append("no [[uncertainty]] declared: only scatter and curves enter the uncertainties")
+        lines.append("no [[uncertainty]] declared: usual values stand in for yours")
     if settled is not None:
         products = sorted(set(settled.plan.products.species))
         lines.append(f"{_count(len(products), 'product')} would be reported: {', '.join(products)}")

@@ -15,6 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from coulombook.uncertainty.linearised import FloatArray, IntArray, Linearised, Number, sparse_map
+from coulombook.units import written
 
 DAY, RUN, READING = "day", "run", "reading"
 
@@ -174,7 +175,7 @@ def _declare(columns: _Columns, blocks: Sequence[Block], declaration: Declaratio
             moving.append((block, sizes[held], held))
     if not moving:
         return False
-    source = Source(declaration.quantity, declaration.shared)
+    source = Source(written(declaration.quantity), declaration.shared)
     if declaration.shared == DAY:
         first = columns.open(source, 1)
         for block, sizes, held in moving:

@@ -67,5 +67,5 @@ def test_an_assumed_uncertainty_that_moves_nothing_is_not_told() -> None:
     settings = DaySettings(declared=declared("integral"))
     # of the declared one, then flow, areas and current: a day without gas
     report_assumed(settings, (True, False, False, True), findings)
-    assert [(one.kind, one.where) for one in findings] == [("assumed-uncertainty", "day.toml, i")]
+    assert [(one.kind, one.where) for one in findings] == [("assumed-uncertainty", "day.toml, I")]
     assert "0.2 %, shared by the day" in next(iter(findings)).text
