@@ -142,7 +142,7 @@ def test_uncertainty_of_t1_travels_into_the_amount(tmp_path: Path) -> None:
     declared = '[[uncertainty]]\nquantity = "T1"\nstandard = "10 %"\nshared = "reading"\n'
     rows = "v1,DMSO,CH3,6,600,,,\nv1,formate,CH,1,250,9,9,90\n"
     row = _liquid(tmp_path, rows, head, declared).tables["budget"].frame()
-    part = row[(row["output"] == "formate") & (row["source"] == "t1")].iloc[0]
+    part = row[(row["output"] == "formate") & (row["source"] == "T1")].iloc[0]
     # d ln f / d ln T1 at TR = T1, 90 degrees: -e^-1/(1 - e^-1) = -0.582; 10 % of T1 is 5.82 % of the amount
     whole = _liquid(tmp_path, rows, head, declared).ledger.iloc[0]["FE / %"]
     assert part["u / %"] / whole == pytest.approx(0.1 * math.exp(-1) / (1 - math.exp(-1)), rel=1e-9)
