@@ -147,10 +147,12 @@ name = "local"
 
 def _cosmic_ray(copy: Path, *arguments: str) -> None:
     environment = {**os.environ, "PYTHONPATH": f"{copy / 'src'}{os.pathsep}{copy}", "OMP_NUM_THREADS": "1"}
-    subprocess.run(
+    found = subprocess.run(
         [str(Path(sys.executable).with_name("cosmic-ray")), *arguments],
-        cwd=copy, env=environment, check=True, capture_output=True,
+        cwd=copy, env=environment, check=False, capture_output=True, text=True,
     )  # fmt: skip
+    if found.returncode:
+        raise SystemExit(f"cosmic-ray {arguments[0]} failed:\n{found.stdout[-4000:]}{found.stderr[-2000:]}")
 
 
 def _keep_sample(session: Path, sample: int, seed: int) -> int:
