@@ -198,3 +198,22 @@ def test_a_name_change_is_tried_again_where_programs_hold_new_files_for_a_moment
         with pytest.raises(PermissionError, match="in use"):
             replace_folder(target, FILES, anything)
         assert names(target.parent) == []
+
+
+def test_a_folder_that_is_being_removed_is_whole_no_longer(
+    target: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    lay(target)
+    left: list[list[str]] = []
+    monkeypatch.setattr(exchange.shutil, "rmtree", lambda folder, **_: left.append(names(folder)))
+    exchange._remove(target)
+    # a process killed from here on leaves nothing that would be brought back
+    assert left == [["a.csv"]]
+
+
+def test_the_manifest_is_the_last_file_that_is_written(target: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    fresh = target.parent / FRESH
+    seen: list[list[str]] = []
+    monkeypatch.setattr(exchange.os, "fsync", lambda _: seen.append(names(fresh)))
+    exchange._fill(fresh, FILES)
+    assert seen[:2] == [["a.csv"], ["a.csv", "manifest.json"]]
