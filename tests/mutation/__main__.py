@@ -132,7 +132,7 @@ def try_room(room: str, sample: int, seed: int) -> Score:
 
 def _settings(room: str, timeout_second: float) -> str:
     # the tests of the copy find the copy: its path comes before that of the installed package
-    command = f"{sys.executable} -m pytest -x -q -p no:cacheprovider {' '.join(TESTS[room].split())}"
+    command = f"{sys.executable} -m pytest -x -q -p no:cacheprovider -n 0 {' '.join(TESTS[room].split())}"
     return f"""\
 [cosmic-ray]
 module-path = "src/coulombook/{room}"
