@@ -6,8 +6,9 @@ estimated for one quantity over all catalysts and levels, beside what the stated
 runs scatter more than those of the others stands by itself, and so does a single group of replicates, by Cochran's test
 at 5 % (the level of a straggler in ISO 5725-2): setting apart too much costs resolution, too little costs the truth.
 
-Of two catalysts with replicates no others tell which of them scatters as usual, and a test between the two overlooks
-much: each is judged by its own scatter, as in Welch's test, and catalysts without replicates by the larger of the two.
+Of two catalysts that are left with replicates no others tell which of them scatters as usual, and a test between the
+two overlooks much: each is judged by its own scatter, as in Welch's test, and catalysts without replicates by the
+larger of the two.
 
 Sources: Welch, Biometrika 34 (1947) 28; Ruxton, Behav. Ecol. 17 (2006) 688 (Welch's test without a test before it);
 Patterson & Thompson, Biometrika 58 (1971) 545 (restricted likelihood, here solved by scoring); ISO 5725-2:1994, 7.3.3
@@ -74,15 +75,12 @@ def repeatability(groups: Groups) -> Repeatability:
     >>> found.relative.round(5), found.freedom.round(6)  # sqrt((0.02^2 + 0.04^2 + 0.02^2)/3), 3 x 2
     (array([0.02828]), array([6.]))
     """
-    usable = (groups.freedom > 0) & np.isfinite(groups.variance)
+    # a mean of nothing has no scatter that is a share of it, and tells nothing of that of others
+    usable = (groups.freedom > 0) & np.isfinite(groups.variance) & (groups.mean != 0)
     estimate = np.zeros(len(groups.mean), dtype=np.intp)
     apart = np.zeros(len(groups.mean), dtype=bool)
     last = 0
     by_owner = [np.flatnonzero(groups.owner == one) for one in np.unique(groups.owner)]
-    quieter = _quieter_of_two(groups, usable, by_owner)
-    if quieter is not None:
-        last += 1
-        estimate[quieter] = last
     while (found := _straggler(groups, usable & (estimate == 0), by_owner, whole=True)) is not None:
         last += 1
         estimate[found], apart[found] = last, True
@@ -91,6 +89,10 @@ def repeatability(groups: Groups) -> Repeatability:
         while (found := _straggler(groups, usable & (estimate == pool), by_itself, whole=False)) is not None:
             last += 1
             estimate[found], apart[found] = last, True
+    quieter = _quieter_of_two(groups, usable & (estimate == 0), by_owner)
+    if quieter is not None:
+        last += 1
+        estimate[quieter[estimate[quieter] == 0]] = last
     relative, freedom = np.zeros(last + 1), np.full(last + 1, math.inf)
     for pool in range(last + 1):
         held = usable & (estimate == pool)
@@ -103,9 +105,7 @@ def repeatability(groups: Groups) -> Repeatability:
 
 
 def _quieter_of_two(groups: Groups, usable: Mask, by_owner: list[IntArray]) -> IntArray | None:
-    """The groups of the catalyst that scatters less, if two have replicates and no more."""
-    # a mean of nothing has no scatter that is a share of it
-    usable = usable & (groups.mean != 0)
+    """The groups of the catalyst that scatters less, if two have replicates left and no more."""
     replicated = [one for one in by_owner if usable[one].any()]
     if len(replicated) != 2:
         return None
@@ -119,7 +119,6 @@ def _quieter_of_two(groups: Groups, usable: Mask, by_owner: list[IntArray]) -> I
 
 def _common(groups: Groups, held: Mask, freedom: FloatArray) -> tuple[float, float]:
     """Square of the relative scatter that groups have in common, and the information about it, 2/variance."""
-    held = held & (groups.mean != 0)
     m2 = groups.mean[held] ** 2
     s2, e, freedom = groups.variance[held], groups.explained[held], freedom[held]
     if not m2.size:
