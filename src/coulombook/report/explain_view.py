@@ -54,8 +54,9 @@ def verdict(book: Book) -> str:
     ranked = list(book.tables["explanations"].records())
     if day is None:
         return "Nothing is known by which the day as a whole could be judged."
+    freedom = f"{day['degrees of freedom']} degree{'' if day['degrees of freedom'] == 1 else 's'} of freedom"
     test = (
-        f"chi-square {plain(_float(day['chi-square']), 3)} with {day['degrees of freedom']} degrees of freedom, "
+        f"chi-square {plain(_float(day['chi-square']), 3)} with {freedom}, "
         f"{_probability(_float(day['p']) or 0.0)}"
     )
     blamed = bool(ranked) and ranked[0]["cause"] != NO_CAUSE
