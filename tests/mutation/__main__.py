@@ -59,11 +59,12 @@ TESTS = {
         tests/system/test_truth_returns.py
     """,
     "balance": """
-        tests/system/test_miniature_day.py tests/unit/balance tests/unit/test_frozen.py
-        tests/system/test_miniature_judgements.py tests/system/test_review.py
-        tests/system/test_curves_in_a_day.py tests/system/test_surface.py tests/system/test_truth_returns.py
-        tests/properties/test_whole_days.py tests/faults/test_gas.py tests/faults/test_liquid.py
-        tests/faults/test_scans.py
+        tests/system/test_miniature_day.py tests/unit/balance/test_explain.py tests/unit/balance/test_assumed.py
+        tests/system/test_miniature_judgements.py tests/system/test_review.py tests/system/test_curves_in_a_day.py
+        tests/unit/balance/test_draws.py tests/unit/balance/test_trace_picture.py tests/unit/balance/test_told.py
+        tests/unit/test_frozen.py tests/system/test_surface.py tests/system/test_truth_returns.py
+        tests/properties/test_whole_days.py tests/unit/balance/test_sources.py tests/faults/test_gas.py
+        tests/faults/test_liquid.py tests/faults/test_scans.py
     """,
 }
 
@@ -132,7 +133,9 @@ def try_room(room: str, sample: int, seed: int) -> Score:
 
 def _settings(room: str, timeout_second: float) -> str:
     # the tests of the copy find the copy: its path comes before that of the installed package
-    command = f"{sys.executable} -m pytest -x -q -p no:cacheprovider -n 0 {' '.join(TESTS[room].split())}"
+    command = (
+        f"{sys.executable} -m pytest -x -q -n 0 -p no:cacheprovider -n 0 {' '.join(TESTS[room].split())}"
+    )
     return f"""\
 [cosmic-ray]
 module-path = "src/coulombook/{room}"
