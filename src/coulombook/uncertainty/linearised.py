@@ -132,9 +132,9 @@ def _log(x: Linearised) -> Linearised:
 # numpy calls these when an array stands left of a Linearised
 _UFUNCS: dict[Any, Callable[..., Linearised]] = {
     np.add: lambda a, b: b + a if isinstance(b, Linearised) else a + b,
-    np.subtract: lambda a, b: b.__rsub__(a) if isinstance(b, Linearised) else a - b,
+    np.subtract: lambda a, b: a - b if isinstance(a, Linearised) else b.__rsub__(a),
     np.multiply: lambda a, b: b * a if isinstance(b, Linearised) else a * b,
-    np.true_divide: lambda a, b: b.__rtruediv__(a) if isinstance(b, Linearised) else a / b,
+    np.true_divide: lambda a, b: a / b if isinstance(a, Linearised) else b.__rtruediv__(a),
     np.negative: lambda a: -a,
     np.sqrt: _sqrt,
     np.exp: _exp,

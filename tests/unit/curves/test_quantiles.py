@@ -11,6 +11,7 @@ from scipy.optimize import brentq
 
 from coulombook.curves.adequacy import COMPARED_WEIGHTS, FTest, homogeneity, weights_aic, whiten
 from coulombook.curves.fit import fit_curve, fit_polynomial, scaled_design
+from coulombook.curves.interval import inverse_with_uncertainty
 from coulombook.curves.judgement import judge
 from coulombook.curves.quantiles import (
     chi2_tail,
@@ -159,3 +160,11 @@ def test_whitened_residuals_are_those_of_generalised_least_squares() -> None:
     assert found.square == pytest.approx(off @ inverse @ off, rel=1e-10)
     np.testing.assert_allclose(found.root @ found.residual, off, rtol=1e-9, atol=1e-12)
     assert 0.0 < found.rounding < 1e-20 * float(y @ inverse @ y)
+
+
+@pytest.mark.parametrize("level", [0.0, 1.0, 1.5, -0.1, math.nan])
+def test_a_level_of_confidence_lies_between_nothing_and_certainty(level: float) -> None:
+    curve = fit_curve([0.0, 1.0, 2.0, 3.0], [0.1, 1.0, 2.1, 2.9])
+    with pytest.raises(ValueError, match="must lie between 0 and 1"):
+        inverse_with_uncertainty(curve, 1.5, level=level)
+    assert float(inverse_with_uncertainty(curve, 1.5, level=0.999).high) > 1.5
