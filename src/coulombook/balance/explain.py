@@ -220,9 +220,9 @@ def covariance_of_totals(settled: Settled, runs: IntArray) -> SharedCovariance:
     columns.eliminate_zeros()
     alone = columns[:, np.diff(columns.indptr) == 1]
     own = allowed + squared_norms(alone.tocsr())
-    return SharedCovariance.of_errors(
-        jacobian, np.where(own < _LEAST_VARIANCE, allowed + _LEAST_VARIANCE, allowed)
-    )
+    # nor could one whose shared errors are larger than any number of digits holds
+    least = _LEAST_VARIANCE * np.maximum(1.0, squared_norms(jacobian.tocsr()))
+    return SharedCovariance.of_errors(jacobian, np.where(own < least, allowed + least, allowed))
 
 
 # causes that take a share of what was measured away

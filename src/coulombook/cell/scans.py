@@ -187,10 +187,11 @@ def transient_of(cycle: Cycle, scan_rate_volt_per_second: float) -> Transient:
     edges = np.linspace(low, high, bins + 1)
     raw = charging_profile_ampere(cycle, edges)
     even = 0.5 * (raw + raw[::-1])[: (bins + 1) // 2]
-    if not np.isfinite(even).all():
-        return Transient(math.nan, math.nan, sweep)
     count = even.size
     floor = count * (1e-9 * float(np.abs(even).max())) ** 2
+    # neither a number that is none nor a current of nothing tells of a lag
+    if not 0.0 < floor < math.inf:
+        return Transient(math.nan, math.nan, sweep)
     flat = float(np.sum((even - even.mean()) ** 2)) + floor
     edge = np.linspace(0.0, 1.0, bins + 1)
     ratio, lag, limit = _best_lag(even, edge[: count + 1], floor)

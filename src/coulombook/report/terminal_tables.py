@@ -129,8 +129,8 @@ def charge_bar(shares: Sequence[float | None], signs: str) -> str:
     bar, reached = "", 0.0
     for share, sign in zip(shares, signs, strict=True):
         reached += max(share or 0.0, 0.0)
-        bar += sign * (round(reached / 100.0 * BAR) - len(bar))
-    return bar[:BAR].ljust(BAR)
+        bar += sign * (round(min(reached / 100.0, 1.0) * BAR) - len(bar))
+    return bar.ljust(BAR)
 
 
 def _figures(runs: Sequence[Row], signs: str) -> list[_Figure]:
