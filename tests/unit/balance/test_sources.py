@@ -34,6 +34,7 @@ SILENT = (
 )
 
 AT = (MORNING.replace(hour=9, minute=0), MORNING.replace(hour=11, minute=30))
+RATES = (0.02, 0.05, 0.1)
 PLACES = (
     Compartment("catholyte", 0.9, (31e-6, 30e-6), (0.8e-6, 0.5e-6), (800.0, None)),
     Compartment("anolyte", 0.1, (25e-6,), (0.5e-6,), (None,)),
@@ -85,8 +86,8 @@ def _day(outlet_flow: str, **changes: Any) -> DayTruth:
             Resonance("acetate", "CH3", 3),
         ),
         surfaces={
-            "m1": Surface(1.7e-3, leakage_siemens=2e-5, samples=31),
-            "s1": Surface(0.4e-3, 0.72e-4, offset_ampere=1e-6, samples=31),
+            "m1": Surface(1.7e-3, leakage_siemens=2e-5, samples=21, rates_volt_per_second=RATES),
+            "s1": Surface(0.4e-3, 0.72e-4, offset_ampere=1e-6, samples=21, rates_volt_per_second=RATES),
         },
         specific_capacitance=0.28,
         feed_co2=0.9,
@@ -154,7 +155,7 @@ CASES = [
     ),
     ("balance", "carbonate uptake", "run"),
     ("electrode for smooth", "electrode area", "run"),
-    ("electrode for smooth", "scan rate", "reading"),
+    ("electrode for smooth", "scan rate", "run"),
 ]
 
 Key = tuple[str, ...]
