@@ -58,3 +58,18 @@ def test_results_are_whole_or_absent_and_inputs_as_they_were(
         pytest.skip(one["skipped"])
     assert one["tried"] >= NUMBERS[kind]
     assert one["failures"] == []
+
+
+def test_the_document_tells_of_every_kind_of_fault_and_of_nothing_lost(
+    told: dict[str, dict[str, Any]],
+) -> None:
+    document = (ROOT / "docs" / "reliability.md").read_text(encoding="utf-8")
+    rows = [
+        [cell.strip() for cell in line.strip("| ").split("|")]
+        for line in document.splitlines()
+        if line[:1] == "|"
+    ]
+    for kind, one in told.items():
+        (row,) = (row for row in rows if row[0] == one["what"])
+        assert row[1] == row[2], kind
+        assert int(row[1].replace(",", "")) >= NUMBERS[kind]
